@@ -1,0 +1,1 @@
+"""labbook: a group's bench notebook for artificial swimmers and its registry of dimensionless numbers."""

@@ -1,0 +1,1 @@
+"""pages: widgets, one call, a drawing; no rules."""

@@ -1,0 +1,1 @@
+"""the one place that reads and writes a book."""

@@ -1,0 +1,1 @@
+"""frames in, Altair charts out."""

@@ -1,0 +1,1 @@
+"""facts in bulk: sheets in, tables out."""

@@ -1,0 +1,1 @@
+"""the vocabulary: quantities, numbers, dialects, regimes, and how text becomes a value."""
