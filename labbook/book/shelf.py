@@ -61,12 +61,13 @@ def read_shelf(
     swimmers: Iterable[int] | None = None,
     fluids: Iterable[int] | None = None,
     rigs: Iterable[int] | None = None,
+    materials: Iterable[int] = (),
 ) -> Shelf:
-    """The shelf, or just the named records and the materials of the named swimmers."""
+    """The shelf, or just the named records, the materials of the named swimmers included."""
     found = _items(connection, swimmer, swimmers)
     wanted = None
     if swimmers is not None:
-        wanted = {i.texts["material_id"] for i in found.values()} - {None}
+        wanted = {i.texts["material_id"] for i in found.values()} - {None} | set(materials)
     return Shelf(
         fluids=_items(connection, fluid, fluids, _readings(connection, reading.c.fluid_id, fluids)),
         materials=_items(connection, material, wanted, _readings(connection, reading.c.material_id, wanted)),

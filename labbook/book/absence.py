@@ -1,0 +1,88 @@
+"""Why a value of a run is absent, in one sentence, and which marks a value carries from what it follows from."""
+
+import json
+import math
+from collections.abc import Mapping
+
+from labbook.registry.catalogue import NUMBERS
+from labbook.registry.quantities import QUANTITIES, RUN_KEYS, SWIMMER_KEYS
+
+_FOLLOWS = {
+    "omega": ("f",), "nu": ("mu", "rho"), "EI": ("E", "I_area"), "zeta_n": ("mu", "L_tail", "a"),
+    "zeta_t": ("mu", "L_tail", "a"), "A22": ("R_helix", "pitch", "L_tail", "a", "mu"),
+}  # fmt: skip
+_SENTENCE_OF = {"mu": "mu_from", "rho": "rho_from", "lam": "lam_from", "E": "E_from"}
+
+
+def why_absent(values: Mapping, sentences: Mapping[str, str], swimmer: str, drive: str) -> dict[str, str]:
+    """Key -> sentence for every resolved quantity and number that a run lacks.
+
+    values: key -> SI value or None/NaN, with u_U beside; sentences: mu_from, rho_from, lam_from, E_from.
+    """
+    found = {}
+    for key, row in NUMBERS.items():
+        if _absent(values.get(key)):
+            found[key] = _number(row, values, sentences, swimmer, drive)
+    for key in ("mu", "rho", "nu", "E", "EI", "I_area", "a", "zeta_n", "zeta_t"):
+        if _absent(values.get(key)):
+            found[key] = _needs(_roots((key,), values), sentences, swimmer)
+    return found
+
+
+def _absent(value) -> bool:
+    return value is None or math.isnan(value)
+
+
+def _number(row, values, sentences, swimmer, drive) -> str:
+    if row.only_drives and drive not in row.only_drives:
+        return f"only for a rotating drive, and this run's is {drive}"
+    missing = _roots(row.inputs, values)
+    if not missing and row.not_zero:
+        return f"not defined ({row.not_zero} consistent with 0)"
+    if not missing:
+        return "outside what its formula can take"
+    return _needs(missing, sentences, swimmer)
+
+
+def _roots(keys, values) -> list[str]:
+    """The keys at the bottom that are absent."""
+    found: dict[str, None] = {}
+    for key in keys:
+        if not _absent(values.get(key)):
+            continue
+        deeper = _roots(_FOLLOWS[key], values) if key in _FOLLOWS else []
+        found |= dict.fromkeys(deeper or [key])
+    return list(found)
+
+
+def _needs(missing, sentences, swimmer) -> str:
+    return "; ".join(f"needs {key}: {_cause(key, sentences, swimmer)}" for key in missing)
+
+
+def _cause(key, sentences, swimmer) -> str:
+    if key in _SENTENCE_OF:
+        said = sentences.get(_SENTENCE_OF[key]) or "absent: unknown"
+        return said.removeprefix("absent: ")
+    if key == "B":
+        return "neither B nor a coil current with the rig's constant was typed"
+    if key in RUN_KEYS:
+        return "it was not typed"
+    if key in ("I_area", "a"):
+        return f"the section of {swimmer} is not complete"
+    if key in SWIMMER_KEYS:
+        return f"{swimmer} has no {QUANTITIES[key].name}"
+    return "the drag model does not reach so stout a tail"
+
+
+def marks_of(stored: str | None, confirmed: str | None) -> dict[str, list[str]]:
+    """Key -> marks of one run; what follows from an extrapolated value is extrapolated too."""
+    marks: dict[str, list[str]] = json.loads(stored) if stored else {}
+    beyond = {k for k, m in marks.items() if "extrapolated" in m}
+    for key, inputs in {**_FOLLOWS, **{k: n.inputs for k, n in NUMBERS.items()}}.items():
+        if beyond & set(inputs):
+            beyond.add(key)
+            marks.setdefault(key, []).append("extrapolated")
+    for column, _ in json.loads(confirmed) if confirmed else []:
+        if "confirmed" not in marks.setdefault(column, []):
+            marks[column].append("confirmed")
+    return marks

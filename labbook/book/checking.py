@@ -1,0 +1,106 @@
+"""Is the book as it should be: the ledger's chain, every stored row's digest, every number derived again."""
+
+from collections.abc import Callable
+
+import numpy as np
+from sqlalchemy import Engine, delete, func, select, text, update
+
+from labbook.book import chain, stored_view
+from labbook.book.derive import derive
+from labbook.book.opening import reading, writing
+from labbook.book.run_rows import batches, derive_again, facts_of, shelf_for
+from labbook.book.stored_view import COLUMNS, COPIED, FLOAT_COLUMNS, KEYS, SENTENCES, digests, resolved
+from labbook.book.tables import book, run
+
+# exp and log differ in the last bits between machines
+SAME = 1e-9
+
+
+def check(engine: Engine, progress: Callable[[int], None] = lambda n: None) -> list[str]:
+    """Everything that is wrong with a book, one sentence each; an empty list is a clean book."""
+    found = []
+    with reading(engine) as connection:
+        if engine.dialect.name == "sqlite":
+            for line in connection.execute(text("PRAGMA integrity_check")).scalars():
+                if line != "ok":
+                    found.append(f"file: {line}")
+            for row in connection.execute(text("PRAGMA foreign_key_check")).all():
+                found.append(f"{row[0]} row {row[1]} refers to a record of {row[2]} that is not there")
+        broken = chain.first_broken(connection)
+        if broken is not None:
+            found.append(f"ledger line {broken} was changed or removed after it was written")
+        if not stored_view.built(connection):
+            found.append("the stored view does not have the registry's columns: open the book to rebuild it")
+            return found
+        runs = connection.scalar(select(func.count()).select_from(run))
+        rows = connection.scalar(select(func.count()).select_from(resolved))
+        if rows > runs:
+            found.append(f"the stored view has {rows} rows for {runs} runs")
+        for batch in batches(connection):
+            found += _batch(connection, batch)
+            progress(len(batch))
+    return found
+
+
+def _batch(connection, rows) -> list[str]:
+    stored = connection.execute(
+        select(*(resolved.c[c] for c in COLUMNS)).where(resolved.c.run_id.between(rows[0][0], rows[-1][0]))
+    ).fetchall()
+    by_id = {r[0]: r for r in stored}
+    derived = derive(facts_of(rows), shelf_for(connection, rows))
+    first = len(COLUMNS) - len(FLOAT_COLUMNS)
+    have = [by_id.get(r[0]) for r in rows]
+    found = [f"{r[1]}: has no stored numbers" for r, h in zip(rows, have, strict=True) if h is None]
+    held = [(i, h) for i, h in enumerate(have) if h is not None]
+    if not held:
+        return found
+    floats = np.array([h[first:] for _, h in held], dtype=float)
+    texts = [_told(h) for _, h in held]
+    told = digests([h[0] for _, h in held], floats, texts)
+    fresh = derived.floats[[i for i, _ in held]]
+    differs = ~(np.isclose(floats, fresh, rtol=SAME, atol=0.0) | (np.isnan(floats) & np.isnan(fresh)))
+    place = COLUMNS.index("digest")
+    for j, (i, row) in enumerate(held):
+        code = rows[i][1]
+        said = tuple(derived.sentences[s][i] for s in SENTENCES)
+        if told[j] != row[place]:
+            where = f" ({_frame_name(int(differs[j].argmax()))})" if differs[j].any() else ""
+            found.append(f"{code}: a stored number was changed by hand{where}")
+        elif differs[j].any():
+            found.append(f"{code}: {_frame_name(int(differs[j].argmax()))} is stale, deriving it again differs")
+        elif (row[1], row[2], row[3], row[4]) != (rows[i][5], rows[i][8], rows[i][2], rows[i][3]):
+            found.append(f"{code}: the stored view holds another time, state, swimmer or fluid than the run")
+        elif tuple(row[1 + len(COPIED) : 1 + len(COPIED) + len(SENTENCES)]) != said:
+            found.append(f"{code}: what it was resolved from is stale")
+    return found
+
+
+def _told(row) -> tuple:
+    """The texts that a stored row's digest covers, from the row itself."""
+    sentences = row[1 + len(COPIED) : 1 + len(COPIED) + len(SENTENCES)]
+    marks = row[COLUMNS.index("marks")]
+    return (row[1], row[2], str(row[3]), str(row[4]), *sentences, marks)
+
+
+def _frame_name(column: int) -> str:
+    return ("", "u_own_", "u_shared_")[column % 3] + KEYS[column // 3]
+
+
+def out_of_date(engine: Engine) -> bool:
+    """Whether the stored view was built from another registry than this one."""
+    with reading(engine) as connection:
+        stands = stored_view.built(connection)
+        return not stands or connection.scalar(select(book.c.registry)) != stored_view.registry_fingerprint()
+
+
+def rebuild(engine: Engine, by: str, why: str, progress: Callable[[int], None] = lambda n: None) -> int:
+    """Make the stored view anew from facts and registry, in one transaction; returns the number of runs."""
+    with writing(engine) as connection:
+        if stored_view.built(connection):
+            connection.execute(delete(resolved))
+        else:
+            stored_view.build(connection)
+        changed = derive_again(connection, progress=progress)
+        connection.execute(update(book).values(registry=stored_view.registry_fingerprint()))
+        chain.append(connection, by, "rebuild", "view", "stored view", after={"runs": len(changed)}, why=why)
+    return len(changed)

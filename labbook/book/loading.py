@@ -1,0 +1,220 @@
+"""Many records in one act: a sheet or a shelf folder, whole or not at all, and the same one twice adds nothing."""
+
+from collections import Counter
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+from sqlalchemy import Connection, Engine, select
+
+from labbook.book import chain
+from labbook.book.arrivals import Arrival, Findings, place_runs
+from labbook.book.drafts import Draft, read_draft
+from labbook.book.ledger import cells_of, handle, settle, uses
+from labbook.book.opening import writing
+from labbook.book.records import LOADING_ORDER
+from labbook.book.run_rows import derive_again
+from labbook.book.stocking import Batches, put, stocked_cells, write_reading
+from labbook.book.tables import SHELF, reading, run
+from labbook.errors import Refusal
+
+
+@dataclass(frozen=True)
+class SheetRow:
+    """One row of a sheet as read: its draft and where it stands ('runs.csv line 12')."""
+
+    draft: Draft
+    where: str
+
+
+@dataclass(frozen=True)
+class Loaded:
+    """What a load added, by kind, and how many rows stood in the book already."""
+
+    added: dict[str, int]
+    known: int
+    derived_again: int
+    warned: tuple[str, ...] = ()
+
+    def __str__(self) -> str:
+        parts = [f"{n} {kind}{'s' if n != 1 else ''}" for kind, n in self.added.items() if n]
+        text = f"added {', '.join(parts)}" if parts else "nothing new"
+        if self.known:
+            text += f"; {self.known} row{'s' if self.known != 1 else ''} stood in the book already"
+        return text
+
+
+Progress = Callable[[str, int], None]
+
+
+def load(
+    engine: Engine,
+    rows: Sequence[SheetRow],
+    by: str,
+    *,
+    subject: str,
+    refused: Sequence[Refusal] = (),
+    confirm: bool = False,
+    progress: Progress = lambda what, n: None,
+) -> Loaded:
+    """Write all rows in one transaction, or none; `refused` are the findings of reading the sheet.
+
+    Errors: Refusals with every bad row, Unconfirmed with every warning.
+    """
+    by = handle(by)
+    findings = Findings(refused=list(refused))
+    kinds = {name: [r for r in rows if r.draft.kind == name] for name in LOADING_ORDER}
+    with writing(engine) as connection:
+        added: dict[str, int] = {}
+        known = 0
+        for name in ("fluid", "material", "swimmer", "rig"):
+            fresh = _fresh_shelf(connection, name, kinds[name], findings)
+            added[name], known = len(fresh), known + len(kinds[name]) - len(fresh)
+            progress(f"{name}s", len(kinds[name]))
+        touched, added["reading"] = _readings(connection, kinds["reading"], findings)
+        known += len(kinds["reading"]) - added["reading"]
+        progress("readings", len(kinds["reading"]))
+        again = []
+        if not findings.refused:
+            for condition in touched:
+                again += derive_again(connection, condition)
+        arrivals = _arrivals(connection, kinds["run"], findings)
+        known += len(kinds["run"]) - len(arrivals)
+        progress("runs known already", len(kinds["run"]) - len(arrivals))
+        written = place_runs(
+            connection, arrivals, by, findings, confirm=confirm, progress=lambda n: progress("runs", n)
+        )
+        added["run"] = len(written)
+        settle(findings, confirm)
+        if any(added.values()):
+            chain.append(
+                connection, by, "load", "sheet", subject,
+                after={"added": {k: n for k, n in added.items() if n},
+                       "confirmed": [s for _, s in findings.warned]},
+                runs=[*again, *written],
+            )  # fmt: skip
+    return Loaded(added, known, len(again), tuple(s for _, s in findings.warned))
+
+
+def _fresh_shelf(connection, name, rows: list[SheetRow], findings: Findings) -> list[SheetRow]:
+    """Insert the shelf rows that the book does not hold; an equal one is passed over, another refused."""
+    table = SHELF[name]
+    fresh, here = [], {}
+    stored = {r["code"]: r for r in connection.execute(select(table)).mappings()}
+    for row in _parents_first(rows) if name == "swimmer" else rows:
+        code = row.draft.texts.get("code", "")
+        if code in here:
+            findings.refuse(row.where, Refusal("code", code, f"stands twice, first in {here[code]}"))
+            continue
+        here[code] = row.where
+        if code in stored:
+            before, _ = read_draft(name, stocked_cells(connection, name, stored[code]))
+            _refuse_difference(before.content(), row, code, findings)
+            continue
+        try:
+            put(connection, name, row.draft)
+        except Refusal as refusal:
+            findings.refuse(row.where, refusal)
+            continue
+        findings.warned += [(c, f"{row.where}, {s}") for c, s in row.draft.warned]
+        fresh.append(row)
+    return fresh
+
+
+def _parents_first(rows: list[SheetRow]) -> list[SheetRow]:
+    """Swimmers ordered so that a parent precedes those cut from it."""
+    waiting, codes, ordered = list(rows), {r.draft.texts.get("code") for r in rows}, []
+    placed: set = set()
+    while waiting:
+        ready = [r for r in waiting if (p := r.draft.texts.get("parent")) not in codes or p in placed]
+        ready = ready or waiting  # a circle: let the reference check name it
+        ordered += ready
+        placed |= {r.draft.texts.get("code") for r in ready}
+        waiting = [r for r in waiting if r not in ready]
+    return ordered
+
+
+def _refuse_difference(before: dict, row: SheetRow, code: str, findings: Findings) -> None:
+    after = row.draft.content()
+    differs = [k for k in {**before, **after} if before.get(k) != after.get(k)]
+    if differs:
+        findings.refuse(
+            row.where,
+            Refusal(row.draft.kind, code, f"differs from the book in {', '.join(differs)}", "amend it"),
+        )
+
+
+def _numbered(rows: list[SheetRow]) -> list[tuple[SheetRow, str]]:
+    """Each row with its fingerprint and which equal row of the sheet it is, so that honest repeats survive."""
+    seen: Counter = Counter()
+    numbered = []
+    for row in rows:
+        print_ = row.draft.fingerprint()
+        seen[print_] += 1
+        numbered.append((row, f"{print_}:{seen[print_]}"))
+    return numbered
+
+
+def _readings(connection: Connection, rows: list[SheetRow], findings: Findings):
+    """Insert new readings; returns the conditions of the runs they may touch, and how many are new."""
+    numbered = _numbered(rows)
+    stored = set(connection.scalars(select(reading.c.sheet_row).where(reading.c.sheet_row.is_not(None))))
+    batches = Batches(connection, [r.draft for r in rows])
+    targets, added = {}, 0
+    for row, sheet_row in numbered:
+        if sheet_row in stored:
+            continue
+        batch = batches.of(row.draft, row.where, findings)
+        if batch is None or "value" not in row.draft.typed:
+            continue
+        batches.watch(batch, row.draft, row.where, findings)
+        findings.warned += [(c, f"{row.where}, {s}") for c, s in row.draft.warned]
+        if not findings.refused:
+            write_reading(connection, row.draft, batch, sheet_row)
+        targets[tuple(batch.target().items())] = uses(**batch.target())
+        added += 1
+    return list(targets.values()), added
+
+
+def _arrivals(connection: Connection, rows: list[SheetRow], findings: Findings) -> list[Arrival]:
+    """The run rows that the book does not hold yet."""
+    numbered = _numbered(rows)
+    stored = _stored_rows(connection, [s for _, s in numbered])
+    coded = {r.draft.texts["code"] for r in rows if "code" in r.draft.texts}
+    in_book = _coded_runs(connection, coded)
+    fresh, here = [], {}
+    for row, sheet_row in numbered:
+        code = row.draft.texts.get("code")
+        if sheet_row in stored:
+            continue
+        if code is not None:
+            if code in here:
+                findings.refuse(row.where, Refusal("code", code, f"stands twice, first in {here[code]}"))
+                continue
+            here[code] = row.where
+            if code in in_book:
+                before, _ = read_draft("run", cells_of(connection, in_book[code]))
+                known = before.content()
+                # what the book filled in is no difference: who, and the default drive
+                told = {k: v for k, v in known.items() if k in row.draft.content() or k not in ("by", "drive", "state")}
+                told["code"] = code
+                _refuse_difference(told, row, code, findings)
+                continue
+        fresh.append(Arrival(row.draft, row.where, sheet_row))
+    return fresh
+
+
+def _stored_rows(connection, wanted: list[str]) -> set[str]:
+    found: set[str] = set()
+    for start in range(0, len(wanted), 900):
+        part = wanted[start : start + 900]
+        found |= set(connection.scalars(select(run.c.sheet_row).where(run.c.sheet_row.in_(part))))
+    return found
+
+
+def _coded_runs(connection, codes: set[str]) -> dict:
+    found = {}
+    ordered = sorted(codes)
+    for start in range(0, len(ordered), 900):
+        query = select(run).where(run.c.code.in_(ordered[start : start + 900]))
+        found |= {r["code"]: r for r in connection.execute(query).mappings()}
+    return found

@@ -1,0 +1,119 @@
+"""Warnings that compare with what the book already holds: a run with its swimmer's, a reading with its batch's."""
+
+from dataclasses import replace
+
+import numpy as np
+from sqlalchemy import Connection, func, select
+
+from labbook.book import resolve
+from labbook.book.sets import sets_of
+from labbook.book.shelf import Item, Reading
+from labbook.book.stored_view import resolved
+from labbook.registry.written import shown, written
+
+FACTOR = 5.0
+ENOUGH = 3
+SIMILAR_SP = 1.2
+READING_FACTOR = 10.0
+SAME_T = 10.0  # K: beyond it a lone reading that nothing carries says nothing about another temperature
+
+
+def enough_runs(connection: Connection, swimmer_ids, before: int) -> set[int]:
+    """The swimmers with three or more kept runs among the runs with ids below `before`."""
+    found = set()
+    for swimmer_id in set(swimmer_ids):
+        some = select(resolved.c.run_id).where(*_mine(swimmer_id, before)).limit(ENOUGH).subquery()
+        if connection.scalar(select(func.count()).select_from(some)) >= ENOUGH:
+            found.add(swimmer_id)
+    return found
+
+
+def _mine(swimmer_id: int, before: int):
+    return resolved.c.swimmer_id == swimmer_id, resolved.c.state == "kept", resolved.c.run_id < before
+
+
+def run_warnings(
+    connection: Connection, swimmer_id: int, values: dict, before: int, leave_out: int = 0
+) -> list[tuple[str, str]]:
+    """(column, sentence) where Sp, Re or U lies far outside this swimmer's kept runs.
+
+    values: Sp, Re, U, u_U of the new run in SI, NaN where absent; before: only runs with lower ids count;
+    leave_out: the id of the run that is being amended.
+    """
+    mine = (*_mine(swimmer_id, before), resolved.c.run_id != leave_out)
+    found = []
+    moving = abs(values["U"]) > 2 * values["u_U"] if np.isfinite(values["U"]) else False
+    for key, field in (("Sp", "f"), ("Re", "U")):
+        column = resolved.c[key]
+        span = _span(connection, column, *mine)
+        found += _outside(key, field, values[key], span, moving or key == "Sp", written)
+    Sp = values["Sp"]
+    if np.isfinite(Sp) and np.isfinite(values["U"]):
+        similar = resolved.c.Sp.between(Sp / SIMILAR_SP, Sp * SIMILAR_SP)
+        span = _span(connection, resolved.c.U_cap, *mine, similar)
+        found += _outside("U", "U", values["U"], span, moving, lambda v: shown("U", v))
+    return found
+
+
+def _span(connection, column, *where) -> tuple[float, float] | None:
+    """Smallest and largest size of the positive values, None where fewer than ENOUGH are there."""
+    query = select(func.min(column), func.max(column)).where(*where, column > 0)
+    some = select(column).where(*where, column > 0).limit(ENOUGH).subquery()
+    if connection.scalar(select(func.count()).select_from(some)) < ENOUGH:
+        return None
+    return tuple(connection.execute(query).one())
+
+
+def _outside(key, field, value, span, checks_low, say):
+    if span is None or not np.isfinite(value):
+        return []
+    low, high = span
+    size = abs(value)
+    if size > FACTOR * high:
+        return [(field, f"{key} = {say(value)} is {size / high:.3g} times the largest of this swimmer's runs: "
+                 f"{_guess(field)}")]  # fmt: skip
+    if checks_low and size < low / FACTOR:
+        return [(field, f"{key} = {say(value)} is {low / size:.3g} times below the smallest of this swimmer's "
+                 f"runs: {_guess(field)}")]  # fmt: skip
+    return []
+
+
+def _guess(field: str) -> str:
+    return {"U": "mm/s typed as m/s, or per minute as per second?", "f": "rpm typed as Hz, or another fluid?"}[
+        field
+    ]
+
+
+def reading_warning(item: Item, new: Reading) -> tuple[str, str] | None:
+    """(column, sentence) where a reading is ten times off its batch's last at that temperature."""
+    keys = ("mu", "nu") if new.key in ("mu", "nu") else (new.key,)
+    sets = sets_of(item.readings, keys, item.texts["made"])
+    if not sets:
+        return None
+    last = sets[-1]
+    before = _last_value(replace(item, readings=last.readings), new)
+    if before is None or not np.isfinite(before) or before <= 0:
+        return None
+    ratio = new.value / before
+    if 1 / READING_FACTOR < ratio < READING_FACTOR:
+        return None
+    times = f"{ratio:.3g} times" if ratio > 1 else f"{1 / ratio:.3g} times below"
+    hint = {"mu": "mPa.s typed as Pa.s", "nu": "cSt typed as m2/s", "E": "kPa typed as MPa",
+            "rho": "g/cm3 typed as kg/m3", "lam": "ms typed as s"}[new.key]  # fmt: skip
+    return "value", f"{times} this batch's last reading ({last.day}): {hint}, or the other way round?"
+
+
+def _last_value(item: Item, new: Reading) -> float | None:
+    day = np.zeros(1, np.int64)
+    if new.key in ("E", "lam"):
+        found = resolve.modulus(item, day) if new.key == "E" else resolve.relaxation_time(item, day)
+        return float(found.value[0])
+    T = np.array([new.T if new.T is not None else np.nan])
+    rho = resolve.density(item, day, T, np.zeros(1))
+    if new.key == "rho":
+        return float(rho.value[0])
+    if "constant" in (found := resolve.viscosity(item, day, T, np.zeros(1), rho)).said[0]:
+        if min(abs(r.T - new.T) for r in item.readings) > SAME_T:
+            return None
+    mu = float(found.value[0])
+    return mu if new.key == "mu" else mu / float(rho.value[0])

@@ -1,0 +1,112 @@
+"""Everything the book knows of single runs: what was typed, what was resolved and from what, numbers, marks."""
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import pandas as pd
+from sqlalchemy import Connection, select
+
+from labbook.book.absence import marks_of, why_absent
+from labbook.book.asking import Question
+from labbook.book.clock import local
+from labbook.book.queries import RUN_TEXTS, frame
+from labbook.book.stored_view import KEYS, SENTENCES
+from labbook.book.tables import run
+from labbook.errors import Refusal
+from labbook.registry.regimes import regimes_of
+
+
+@dataclass(frozen=True)
+class RunSheet:
+    """One run: text columns, typed documents, values (SI) with u, u_own, u_shared, and how they came about.
+
+    sentences: 'viscosity: fit of 3 readings of 2026-03-01' and the like, absent ones left out.
+    """
+
+    texts: dict[str, str | None]
+    typed: dict[str, list]
+    values: dict[str, float | None]
+    u: dict[str, float | None]
+    u_own: dict[str, float | None]
+    u_shared: dict[str, float | None]
+    sentences: dict[str, str]
+    regimes: list[str]
+    why_absent: dict[str, str]
+    marks: dict[str, list[str]]
+    logged: str | None = None
+
+    def row(self) -> dict:
+        """The run as one flat record, for JSON."""
+        flat: dict = dict(self.texts)
+        for key in KEYS:
+            flat[key] = self.values[key]
+            flat[f"u_{key}"], flat[f"u_own_{key}"] = self.u[key], self.u_own[key]
+            flat[f"u_shared_{key}"] = self.u_shared[key]
+        return flat | {
+            "resolved_from": list(self.sentences.values()),
+            "regimes": self.regimes,
+            "why_absent": self.why_absent,
+            "marks": self.marks,
+        }
+
+
+_TEXTS = (*RUN_TEXTS, *SENTENCES, "marks", "confirmed", "typed")
+
+
+def sheets(connection: Connection, question: Question, newest: int | None = None) -> Iterator[RunSheet]:
+    """The sheets of the runs that a question finds."""
+    found = frame(connection, question, texts=_TEXTS, newest=newest)
+    for row in found.to_dict("records"):
+        yield sheet_from(row)
+
+
+def run_sheet(connection: Connection, code: str) -> RunSheet:
+    """The sheet of one run; Refusal for an unknown code."""
+    stored = connection.execute(select(run.c.id, run.c.logged).where(run.c.code == code)).one_or_none()
+    if stored is None:
+        raise Refusal("run", code, "the book has no such run")
+    row = frame(connection, _Only(state="all", run_id=stored[0]), texts=_TEXTS).to_dict("records")[0]
+    return sheet_from(row, stored[1])
+
+
+@dataclass(frozen=True)
+class _Only(Question):
+    """The question for one run by its id."""
+
+    run_id: int = 0
+
+    def conditions(self, *, regimes: bool = True):
+        return [run.c.id == self.run_id]
+
+    def needs_run(self) -> bool:
+        return True
+
+
+def sheet_from(row: dict, logged: str | None = None) -> RunSheet:
+    """A sheet from one row of a frame with all columns."""
+    texts = {k: _plain(row[k]) for k in RUN_TEXTS}
+    values = {k: _number(row[k]) for k in KEYS}
+    u = {p: {k: _number(row[f"{p}{k}"]) for k in KEYS} for p in ("u_", "u_own_", "u_shared_")}
+    said = {s: row[s] for s in SENTENCES}
+    return RunSheet(
+        texts, row["typed"], values, u["u_"], u["u_own_"], u["u_shared_"],
+        {s: text for s, text in said.items() if text and not text.startswith("absent")},
+        regimes_of(values), why_absent(values, said, texts["swimmer"] or "", texts["drive"] or ""),
+        marks_of(row["marks"], row["confirmed"]), logged,
+    )  # fmt: skip
+
+
+def _plain(value):
+    if value is None or (isinstance(value, float) and math.isnan(value)):
+        return None
+    return value.isoformat(timespec="seconds") if isinstance(value, pd.Timestamp) else str(value)
+
+
+def _number(value: float) -> float | None:
+    return None if math.isnan(value) else float(value)
+
+
+def moment_in_words(text: str) -> str:
+    """'2026-03-01 14:32' of a stored or shown time, in local time."""
+    return local(text).strftime("%Y-%m-%d %H:%M")

@@ -1,0 +1,187 @@
+"""Sheets in: a shelf folder, a workbook or one CSV file read into drafts, with every bad cell's place."""
+
+import csv
+import io
+import re
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from datetime import date, datetime, time
+from pathlib import Path
+
+import openpyxl
+from openpyxl.utils.exceptions import InvalidFileException
+
+from labbook.book.drafts import read_draft
+from labbook.book.loading import SheetRow
+from labbook.book.records import KINDS, LOADING_ORDER, SHEETS, kind
+from labbook.book.arrivals import placed
+from labbook.errors import Refusal
+
+LARGEST_FILE = 512 * 1024 * 1024
+_HEADER = re.compile(r"\s*([A-Za-z_]\w*)\s*(?:\[([^\]]*)\]|\(([^)]*)\))?\s*")
+
+
+@dataclass(frozen=True)
+class Table:
+    """One sheet as text: its kind, its name for messages, header cells, and (line number, cells) rows."""
+
+    kind: str
+    name: str
+    header: list[str]
+    rows: list[tuple[int, list[str]]]
+    decimal_comma: bool = False
+
+
+def read_tables(path: str | Path) -> list[Table]:
+    """The sheets of a folder, a workbook or one CSV file, in the order in which they must be loaded."""
+    path = Path(path)
+    if path.is_dir():
+        files = {p.stem: p for p in sorted(path.iterdir()) if p.suffix.lower() == ".csv" and p.stem in SHEETS}
+        if not files:
+            raise Refusal("sheet", path.name, "this folder holds no sheet", f"name them {', '.join(SHEETS)}.csv")
+        tables = [_read_csv(p, SHEETS[stem]) for stem, p in files.items()]
+    elif not path.exists():
+        raise Refusal("sheet", str(path), "there is no such file or folder")
+    elif path.suffix.lower() in (".xlsx", ".xlsm"):
+        tables = _read_workbook(path)
+    else:
+        tables = [_read_csv(path, None)]
+    return sorted(tables, key=lambda t: LOADING_ORDER.index(t.kind))
+
+
+def _read_csv(path: Path, kind_name: str | None) -> Table:
+    if path.stat().st_size > LARGEST_FILE:
+        raise Refusal("sheet", path.name, "is larger than 512 MB", "split it")
+    try:
+        text = path.read_bytes().decode("utf-8-sig")
+    except UnicodeDecodeError:
+        raise Refusal("sheet", path.name, "is not UTF-8 text", "save it as CSV UTF-8") from None
+    return table_from_text(text, path.name, kind_name)
+
+
+def table_from_text(text: str, name: str, kind_name: str | None = None) -> Table:
+    """A sheet from CSV text; its kind follows from the file name or from the columns where none is given."""
+    if "\0" in text:
+        raise Refusal("sheet", name, "is not a text file", "save it as CSV UTF-8")
+    first = text.lstrip("\r\n").split("\n", 1)[0]
+    semicolon = first.count(";") > first.count(",")
+    delimiter = ";" if semicolon else "\t" if "\t" in first and "," not in first else ","
+    reader = csv.reader(io.StringIO(text), delimiter=delimiter)
+    try:
+        lines = [(reader.line_num, cells) for cells in reader if any(c.strip() for c in cells)]
+    except csv.Error as error:
+        raise Refusal("sheet", name, f"cannot be read as CSV ({error})") from None
+    if not lines:
+        raise Refusal("sheet", name, "is empty")
+    header = lines[0][1]
+    return Table(kind_name or _kind_of(name, header), name, header, lines[1:], semicolon)
+
+
+def _kind_of(name: str, header: list[str]) -> str:
+    stem = Path(name).stem
+    if stem in SHEETS:
+        return SHEETS[stem]
+    columns = {m[1] for cell in header if (m := _HEADER.fullmatch(cell))}
+    fits = [k.name for k in KINDS.values() if set(k.required) <= columns and columns <= set(k.columns)]
+    if len(fits) == 1:
+        return fits[0]
+    if {"swimmer", "fluid"} <= columns:
+        return "run"
+    raise Refusal("sheet", name, "does not tell what it holds", f"name it {', '.join(SHEETS)}.csv")
+
+
+def _read_workbook(path: Path) -> list[Table]:
+    try:
+        book = openpyxl.load_workbook(path, read_only=True, data_only=True)
+    except (InvalidFileException, KeyError, ValueError, OSError, EOFError) as error:
+        raise Refusal("sheet", path.name, f"is not a workbook that can be read ({error})") from None
+    except Exception as error:  # zip and XML faults have no common base
+        if type(error).__module__.startswith(("zipfile", "xml", "lxml")):
+            raise Refusal("sheet", path.name, "is not a workbook that can be read") from None
+        raise
+    tables = []
+    for sheet in book.worksheets:
+        if sheet.title not in SHEETS:
+            continue
+        lines = [
+            (n, [_cell(c) for c in row]) for n, row in enumerate(sheet.iter_rows(values_only=True), start=1)
+        ]
+        lines = [(n, cells) for n, cells in lines if any(cells)]
+        if lines:
+            tables.append(Table(SHEETS[sheet.title], f"{path.name} {sheet.title}", lines[0][1], lines[1:]))
+    book.close()
+    if not tables:
+        raise Refusal("sheet", path.name, "holds no sheet of a known name", f"name them {', '.join(SHEETS)}")
+    return tables
+
+
+def _cell(value) -> str:
+    if value is None:
+        return ""
+    if isinstance(value, datetime):
+        return value.date().isoformat() if value.time() == time() else value.isoformat()
+    if isinstance(value, date):
+        return value.isoformat()
+    if isinstance(value, float) and value.is_integer() and abs(value) < 1e15:
+        return str(int(value))
+    return str(value).strip()
+
+
+def read_rows(
+    tables: list[Table], progress: Callable[[str, int], None] = lambda what, n: None
+) -> tuple[list[SheetRow], list[Refusal]]:
+    """Drafts of every row, and everything refused, each with sheet, line and column."""
+    rows: list[SheetRow] = []
+    refused: list[Refusal] = []
+    for table in tables:
+        try:
+            columns, units = _columns(table)
+        except Refusal as refusal:
+            refused.append(placed(table.name, refusal))
+            continue
+        for count, (line, cells) in enumerate(table.rows, start=1):
+            where = f"{table.name} line {line}"
+            if len(cells) > len(columns) and any(c.strip() for c in cells[len(columns) :]):
+                refused.append(Refusal(where, None, f"has {len(cells)} cells for {len(columns)} columns"))
+                continue
+            draft, findings = read_draft(
+                table.kind, dict(zip(columns, cells, strict=False)), units, table.decimal_comma
+            )
+            refused += [placed(where, r) for r in findings]
+            rows.append(SheetRow(draft, where))
+            if count % 1000 == 0:
+                progress(f"reading {table.name}", 1000)
+        progress(f"reading {table.name}", len(table.rows) % 1000)
+    return rows, refused
+
+
+def _columns(table: Table) -> tuple[list[str], dict[str, str]]:
+    """Column keys and the header's units."""
+    columns, units = [], {}
+    spec = kind(table.kind)
+    for cell in table.header:
+        if not cell.strip():
+            columns.append("")
+            continue
+        match = _HEADER.fullmatch(cell)
+        if match is None:
+            raise Refusal("header", cell, "cannot be read", "write key [unit], e.g. U [mm/s]")
+        key, unit = match[1], (match[2] or match[3] or "").strip()
+        if key not in spec.columns:
+            raise Refusal("header", cell, f"{spec.sheet} has no such column", f"it has {', '.join(spec.columns)}")
+        if key in columns:
+            raise Refusal("header", cell, "stands twice")
+        if unit and key in spec.texts:
+            raise Refusal("header", cell, "a text column has no unit")
+        columns.append(key)
+        if unit:
+            units[key] = unit
+    missing = [c for c in spec.required if c not in columns]
+    if missing:
+        raise Refusal("header", None, f"lacks {', '.join(missing)}", f"every {spec.name} needs them")
+    return columns, units
+
+
+def counted(tables: list[Table]) -> Iterator[tuple[str, int]]:
+    """(sheet, number of rows) for each table."""
+    return ((t.name, len(t.rows)) for t in tables)
