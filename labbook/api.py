@@ -93,7 +93,7 @@ class Book:
         cells = _texts(cells) | ({"at": str(at)} if at is not None else {})
         return ledger.record(self.engine, cells, by or current_handle(), confirm=confirm, token=token)
 
-    def amend(self, code: str, *, why: str, by: str | None = None, confirm: bool = False, **changes) -> None:
+    def amend(self, code: str, /, *, why: str, by: str | None = None, confirm: bool = False, **changes) -> None:
         """Change cells of a run (None clears one); the old values stay in the ledger with the reason."""
         wanted = {k: None if v is None else str(v) for k, v in changes.items()}
         ledger.amend(self.engine, code, wanted, why, by or current_handle(), confirm=confirm)
@@ -103,7 +103,7 @@ class Book:
         ledger.void(self.engine, code, why, by or current_handle())
 
     def stock(
-        self, kind: str, *, by: str | None = None, why: str | None = None, confirm: bool = False, **cells: str
+        self, kind: str, /, *, by: str | None = None, why: str | None = None, confirm: bool = False, **cells: str
     ) -> str:
         """Add a fluid, material, swimmer, rig or reading, or amend one with a reason; returns its code."""
         return stocking.stock(
