@@ -195,3 +195,8 @@ def ledger_lines(
         for side in ("before", "after"):
             row[side] = json.loads(row[side]) if row[side] else {}
     return pd.DataFrame(rows, columns=list(ledger.c.keys()))
+
+
+def head(connection: Connection) -> str:
+    """Digest of the newest ledger line: it changes with every act."""
+    return connection.scalar(select(ledger.c.digest).order_by(ledger.c.id.desc()).limit(1)) or ""

@@ -1,0 +1,8 @@
+"""Page bench."""
+
+import streamlit as st
+
+
+def page() -> None:
+    """The page."""
+    st.write("bench")

@@ -1,0 +1,8 @@
+"""Page numbers."""
+
+import streamlit as st
+
+
+def page() -> None:
+    """The page."""
+    st.write("numbers")

@@ -1,0 +1,8 @@
+"""Page shelf."""
+
+import streamlit as st
+
+
+def page() -> None:
+    """The page."""
+    st.write("shelf")

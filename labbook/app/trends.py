@@ -1,0 +1,8 @@
+"""Page trends."""
+
+import streamlit as st
+
+
+def page() -> None:
+    """The page."""
+    st.write("trends")
