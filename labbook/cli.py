@@ -378,7 +378,7 @@ def draw(book: str, x: str, y: str, output: str, colour: str, bars: str, linear:
     for key in (x, y):
         check_key(key)
     with Book.open(book) as opened:
-        table = opened.frame(question, keys=tuple(dict.fromkeys((x, y))), texts=("code", "state", colour))
+        table = opened.frame(question, keys=tuple(dict.fromkeys((x, y))), texts=("code", colour))
         drawn = trend(table, x=x, y=y, group=colour, log_x=not linear, log_y=not linear, bars=bars, width=760,
                       height=520)  # fmt: skip
         if not drawn.drawn:
