@@ -1,0 +1,72 @@
+"""Bench's lower part: today's trials, newest first; pick one to open it or to start again with one change."""
+
+from datetime import datetime
+
+import pandas as pd
+import streamlit as st
+
+from labbook.app import session
+from labbook.book.asking import Question
+from labbook.book.bench_queries import cells_again
+from labbook.book.run_sheet import RunSheet
+from labbook.registry.written import shown, written
+
+SHOWN = 12
+NUMBERS = ("Sp", "Re_omega", "St")
+
+
+@st.cache_data(show_spinner=False, max_entries=20)
+def _sheets(state: str, since: str) -> list[RunSheet]:
+    book = session.book()
+    found = book.sheets(Question(since=since, state="all"), newest=60)
+    return found or book.sheets(Question(state="all"), newest=SHOWN)
+
+
+def table() -> None:
+    """The trials of today, or the latest ones where today has none."""
+    day = datetime.now().astimezone().date().isoformat()
+    found = _sheets(session.state_of_book(), day)
+    if not found:
+        return
+    is_today = found[0].texts["at"][:10] == day
+    void = sum(s.texts["state"] == "void" for s in found)
+    head = "Today" if is_today else "Latest trials"
+    st.markdown(f"**{head}** · {len(found)} trial{'s' if len(found) != 1 else ''}, {void} void")
+    frame = pd.DataFrame([_row(s, is_today) for s in found])
+    picked = st.dataframe(
+        frame, hide_index=True, on_select="rerun", selection_mode="single-row", key="bench:today",
+        height=min(38 + 36 * len(frame), 440), row_height=36,
+    )  # fmt: skip
+    rows = picked["selection"]["rows"]
+    if rows and rows[0] < len(found):
+        _acts(found[rows[0]])
+    else:
+        st.caption("Tick a line to open it, or to start again from it with one change.")
+
+
+def _row(sheet: RunSheet, is_today: bool) -> dict[str, str]:
+    texts = sheet.texts
+    at = texts["at"][11:16] if is_today else texts["at"][:16].replace("T", " ")
+    typed = {k: _as_typed(sheet, k) for k in ("f", "U")}
+    numbers = {k: written(sheet.values[k], sheet.u[k]) for k in NUMBERS}
+    return {
+        "run": texts["code"], "at": at, "by": texts["by"], "swimmer": texts["swimmer"], "fluid": texts["fluid"],
+        **typed, **numbers, "regime": ", ".join(sheet.regimes),
+        "note": (f"void: {texts['why']}" if texts["state"] == "void" else texts["note"]) or "",
+    }  # fmt: skip
+
+
+def _as_typed(sheet: RunSheet, key: str) -> str:
+    if key not in sheet.typed:
+        return ""
+    return shown(key, sheet.values[key], sheet.u[key], sheet.typed[key][1])
+
+
+def _acts(sheet: RunSheet) -> None:
+    code = sheet.texts["code"]
+    first, second, _ = st.columns([2, 3, 6])
+    if first.button(f"Open {code}", width="stretch"):
+        session.go("runs", run=code)
+    if second.button("Again, with one change", width="stretch"):
+        st.session_state["again"] = session.book().ask(cells_again, code)
+        st.rerun()
