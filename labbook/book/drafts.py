@@ -1,7 +1,7 @@
 """Drafts: one record as typed, read and checked as far as it can be without the book."""
 
 import hashlib
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 from labbook.book.clock import read_date, read_moment
@@ -19,34 +19,107 @@ LONGEST_CODE = 64
 class Draft:
     """A record read from cells.
 
-    texts: column -> text (dates and moments as stored); typed: column -> Typed; warned: (column, sentence)
-    pairs that want a confirmation.
+    texts: column -> text (dates and moments as stored); typed: column -> Typed; said: column -> the typed
+    quantity as a text that reads the same anywhere; warned: (column, sentence) pairs that want a confirmation.
     """
 
     kind: str
     texts: dict[str, str]
     typed: dict[str, Typed]
-    warned: tuple[tuple[str, str], ...] = field(default=())
+    said: dict[str, str] = field(default_factory=dict)
+    warned: tuple[tuple[str, str], ...] = ()
 
-    def document(self) -> dict[str, list]:
-        """The typed quantities as stored."""
-        return {k: t.row() for k, t in self.typed.items()}
+    def document(self) -> dict[str, Typed]:
+        """The typed quantities as stored: five fields each."""
+        return dict(self.typed)
 
     def content(self) -> dict[str, str]:
         """Column -> text that says the same wherever it is typed, for comparing records."""
-        keys = kind(self.kind).typed
-        of_key = self.texts.get("key", "")
-        cells = dict(self.texts)
-        for column, typed in self.typed.items():
-            key = keys.get(column) or of_key
-            stated = column not in keys
-            cells[column] = printed_uncertainty(typed) if stated else printed(key, typed)
-        return cells
+        return self.texts | self.said
 
     def fingerprint(self) -> str:
         """Digest of the content: equal for equal rows."""
-        told = "\x1f".join(f"{k}\x1e{v}" for k, v in sorted(self.content().items()))
+        told = "\x1f".join([f"{k}\x1e{v}" for k, v in sorted(self.content().items())])
         return hashlib.blake2b(told.encode(), digest_size=16).hexdigest()
+
+
+@dataclass(frozen=True)
+class _Cell:
+    """What one cell's text came to: a text or a Typed with its printed form and warning, or a refusal."""
+
+    value: str | Typed | None = None
+    said: str = ""
+    warning: str = ""
+    refusal: Refusal | None = None
+
+
+class DraftReader:
+    """Reads many records of one kind from the same columns; a text that comes again is not read again.
+
+    columns: the keys in the order of the cells ('' is passed over); units: column -> the header's unit.
+    """
+
+    def __init__(
+        self, name: str, columns: Sequence[str], units: Mapping[str, str] | None = None,
+        decimal_comma: bool = False,
+    ):  # fmt: skip
+        self.kind = kind(name)
+        self.units = units or {}
+        self.decimal_comma = decimal_comma
+        self.columns = [(i, c, c in self.kind.typed, {}) for i, c in enumerate(columns) if c]
+        self.required = self.kind.required
+        self.key_at = next((i for i, c in enumerate(columns) if c == "key"), None)
+
+    def read(self, cells: Sequence[str | None]) -> tuple[Draft, list[Refusal]]:
+        """A draft from one row's cells, and everything that is refused in it; empty cells are absent."""
+        texts: dict[str, str] = {}
+        typed: dict[str, Typed] = {}
+        said: dict[str, str] = {}
+        warned, findings = [], []
+        given: set[str] = set()
+        row_key = str(cells[self.key_at]).strip() if self.key_at is not None and self.key_at < len(cells) else ""
+        for i, column, quantity, cache in self.columns:
+            text = cells[i] if i < len(cells) else None
+            if not text or not (text := str(text).strip()):
+                continue
+            given.add(column)
+            known = (row_key, text) if column == "value" else text
+            cell = cache.get(known)
+            if cell is None:
+                cell = cache[known] = self._cell(column, text, row_key)
+            if cell.refusal is not None:
+                findings.append(cell.refusal)
+            elif not quantity and type(cell.value) is str:
+                texts[column] = cell.value
+            elif cell.value is not None:
+                typed[column] = cell.value
+                said[column] = cell.said
+                if cell.warning:
+                    warned.append((column, cell.warning))
+        for column in self.required:
+            if column not in given:
+                reason = f"is missing, and every {self.kind.name} needs it"
+                findings.append(Refusal(column, None, reason, _hint(self.kind, column)))
+        findings += _impossible(self.kind.name, texts, typed)
+        return Draft(self.kind.name, texts, typed, said, tuple(warned)), findings
+
+    def _cell(self, column: str, text: str, row_key: str) -> _Cell:
+        row = self.kind
+        try:
+            if column in row.typed:
+                key = row.typed[column] or row_key
+                if key not in QUANTITIES:
+                    return _Cell()  # the unknown key is refused at its own column
+                one = read(key, text, self.units.get(column), self.decimal_comma)
+                return _Cell(one, printed(key, one), _implausible(column, key, one))
+            if column in row.spreads:
+                one = read_uncertainty(row.spreads[column], text, self.units.get(column))
+                return _Cell(one, printed_uncertainty(one))
+            if column in row.texts:
+                return _Cell(_text(row, column, text))
+        except Refusal as refusal:
+            return _Cell(refusal=Refusal(column, refusal.typed, refusal.reason, refusal.remedy))
+        return _Cell(refusal=Refusal(column, None, f"a {row.name} has no such column", _columns(row)))
 
 
 def read_draft(
@@ -59,32 +132,7 @@ def read_draft(
 
     units: column -> the header's unit. Empty cells are absent.
     """
-    row, findings = kind(name), []
-    texts: dict[str, str] = {}
-    typed: dict[str, Typed] = {}
-    units = units or {}
-    given = {c: str(v).strip() for c, v in cells.items() if v is not None and str(v).strip()}
-    for column in given:
-        if column not in row.columns:
-            findings.append(Refusal(column, None, f"a {name} has no such column", _columns(row)))
-    for column in row.required:
-        if column not in given:
-            findings.append(Refusal(column, None, f"is missing, and every {name} needs it", _hint(row, column)))
-    for column, text in given.items():
-        try:
-            if column in row.typed:
-                key = row.typed[column] or given.get("key", "")
-                if key in QUANTITIES:
-                    typed[column] = read(key, text, units.get(column), decimal_comma)
-            elif column in row.spreads:
-                typed[column] = read_uncertainty(row.spreads[column], text, units.get(column))
-            elif column in row.texts:
-                texts[column] = _text(row, column, text)
-        except Refusal as refusal:
-            reason = Refusal(column, refusal.typed, refusal.reason, refusal.remedy)
-            findings.append(reason)
-    findings += _impossible(name, texts, typed)
-    return Draft(name, texts, typed, tuple(_implausible(row, texts, typed))), findings
+    return DraftReader(name, list(cells), units, decimal_comma).read(list(cells.values()))
 
 
 def whole(result: tuple[Draft, list[Refusal]]) -> Draft:
@@ -152,17 +200,13 @@ def _impossible(name, texts, typed) -> list[Refusal]:
     return found
 
 
-def _implausible(row: Kind, texts, typed):
-    """(column, sentence) for each value outside its quantity's plausible range."""
-    for column, one in typed.items():
-        key = row.typed.get(column, "") or texts.get("key", "")
-        if column in row.spreads or key not in QUANTITIES:
-            continue
-        quantity = QUANTITIES[key]
-        if not quantity.low <= one.value <= quantity.high:
-            low, high = (shown(key, v, None, one.unit) for v in (quantity.low, quantity.high))
-            yield (
-                column,
-                f"{column}: {one.text} lies outside the usual {low} to {high} for a "
-                f"{quantity.kind or quantity.name}: is the unit right?",
-            )
+def _implausible(column: str, key: str, one: Typed) -> str:
+    """The sentence for a value outside its quantity's plausible range, '' inside it."""
+    quantity = QUANTITIES[key]
+    if quantity.low <= one.value <= quantity.high:
+        return ""
+    low, high = (shown(key, v, None, one.unit) for v in (quantity.low, quantity.high))
+    return (
+        f"{column}: {one.text} lies outside the usual {low} to {high} for a "
+        f"{quantity.kind or quantity.name}: is the unit right?"
+    )
