@@ -1,4 +1,4 @@
-"""The group's numbers at birth, one row each: formula, what it compares, source, worked example and answer."""
+"""The group's numbers at birth, one row each: formula, what it compares, source, worked example, answer."""
 
 import math
 from collections.abc import Mapping
@@ -52,10 +52,14 @@ class Number:
             raise Refusal(self.key, None, f"the worked example lacks {', '.join(missing)}")
         if not 0 < self.tolerance <= 0.05:
             raise Refusal(self.key, self.tolerance, "the example's tolerance must lie in 0 to 5 %")
-        found = parsed.value(self.example)
+        try:
+            found = float(parsed.value(self.example))
+        except (ArithmeticError, TypeError, ValueError):
+            raise Refusal(self.key, self.formula, "has no value for the worked example") from None
         if not math.isclose(found, self.answer, rel_tol=self.tolerance):
             raise Refusal(
-                self.key, self.answer, f"the worked example gives {found:.6g}", "mend formula, example or answer"
+                self.key, self.answer, f"the worked example gives {found:.6g}",
+                "mend formula, example or answer",
             )
 
     @property
@@ -92,7 +96,8 @@ NUMBERS: dict[str, Number] = {
         Number(
             "Sp", "Sp", "sperm number", "L_tail * (zeta_n * omega / EI)**0.25",
             "viscous to elastic forces on a beating tail",
-            "Wiggins & Goldstein, Phys. Rev. Lett. 80:3879 (1998); Lowe, Phil. Trans. R. Soc. B 358:1543 (2003)",
+            "Wiggins & Goldstein, Phys. Rev. Lett. 80:3879 (1998); "
+            "Lowe, Phil. Trans. R. Soc. B 358:1543 (2003)",
             # L 20 mm, d 1 mm, E 1.5 MPa, mu 1 Pa.s, 2 Hz, spheroid coefficient; recomputed independently
             dict(L_tail=0.020, zeta_n=2.99994, omega=2 * math.pi * 2.0, EI=7.3631078e-8), 3.00847, 1e-5,
             dialect="length: L_tail; rate: omega; coefficient: zeta_n of the house drag model; power: 1/4",
@@ -133,7 +138,8 @@ NUMBERS: dict[str, Number] = {
         Number(
             "Mn", "Mn", "magnetoelastic number", "m_mag * B * L_tail / EI",
             "magnetic torque on the head to the tail's elastic torque",
-            "magnet-headed definition, after Dreyfus et al., Nature 437:862 (2005), whose filament is magnetic",
+            "magnet-headed definition, after Dreyfus et al., Nature 437:862 (2005), "
+            "whose filament is magnetic",
             # 1 mm sphere of 1.3 T in 5 mT: torque 2.70833e-6 N.m
             dict(m_mag=5.41667e-4, B=5e-3, L_tail=0.020, EI=7.3631078e-8), 2.70833e-6 * 0.020 / 7.3631078e-8,
             1e-5, dialect="length: L_tail",
@@ -143,8 +149,9 @@ NUMBERS: dict[str, Number] = {
             "2 * pi * f * (8 * pi * mu * b**3 + A22) / (m_mag * B)",
             "viscous torque of the rotating swimmer to the largest magnetic torque",
             "torque balance, e.g. Ishiyama et al., Sens. Actuators A 91:141 (2001)",
-            # a 1.3 T sphere in 5 mT and 1 Pa.s steps out at 137.206 Hz, whatever its size
-            dict(f=137.206, mu=1.0, b=0.5e-3, A22=0.0, m_mag=5.41667e-4, B=5e-3), 1.0, 1e-4,
+            # a 1.3 T sphere in 5 mT and 1 Pa.s steps out at 137.206 Hz, whatever its size: here at half of
+            # it, so that a stray square shows
+            dict(f=137.206 / 2, mu=1.0, b=0.5e-3, A22=0.0, m_mag=5.41667e-4, B=5e-3), 0.5, 1e-4,
             dialect="rotating drive", only_drives=ROTATING_DRIVES,
         ),
         Number(

@@ -1,4 +1,4 @@
-"""Formula text parsed once into a checked tree, and the tree's readings: values (real or complex) and dimensions."""
+"""Formula text parsed once into a checked tree, and the tree's readings: values, slopes and dimensions."""
 
 import ast
 import math
@@ -126,9 +126,11 @@ def _exponent(node, text) -> Fraction:
                 return Fraction(str(value))
             case ast.UnaryOp(op=ast.USub(), operand=operand):
                 return -number(operand)
-            case ast.BinOp(left=left, op=ast.Div(), right=right) if number(right) != 0:
-                return number(left) / number(right)
-        raise Refusal("formula", text, "an exponent must be a plain number", "write e.g. **2, **0.25 or **(1/4)")
+            case ast.BinOp(left=left, op=ast.Div(), right=right):
+                below = number(right)
+                if below != 0:
+                    return number(left) / below
+        raise Refusal("formula", text, "an exponent must be a plain number", "write e.g. **2 or **(1/4)")
 
     exponent = number(node)
     if abs(exponent) > LARGEST_EXPONENT:

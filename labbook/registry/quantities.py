@@ -1,4 +1,4 @@
-"""The vocabulary: every quantity with a unit, one row each; keys are the same in form, file, formula and axis."""
+"""The vocabulary: every quantity with a unit, one row each; one key from form to file, formula and axis."""
 
 import re
 from dataclasses import dataclass
@@ -63,6 +63,12 @@ class Quantity:
     @property
     def dimension(self) -> Dimension:
         return dimension(self.dim)
+
+    @property
+    def one(self) -> str:
+        """One of its kind with its article, for refusals: 'a speed', 'an angle'."""
+        noun = self.kind or self.name
+        return f"{'an' if noun[0] in 'aeiou' else 'a'} {noun}"
 
 
 LENGTHS = ("m", "mm", "cm", "um", "nm")

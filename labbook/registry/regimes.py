@@ -55,4 +55,5 @@ def regime(name: str) -> Regime:
 
 def regimes_of(values) -> list[str]:
     """The names of the regimes that a run's numbers (a mapping key to value or None) fall in."""
-    return [r.name for r in REGIMES.values() if values.get(r.number) is not None and r.holds(values[r.number])]
+    known = (r for r in REGIMES.values() if values.get(r.number) is not None)
+    return [r.name for r in known if r.holds(values[r.number])]

@@ -1,11 +1,9 @@
-"""Quantities as typed: '12.4(3) mm/min', '0.50 +- 0.02 Hz', '23,1 °C' read to SI value and standard uncertainty."""
+"""Quantities as typed: '12.4(3) mm/min', '0.50 +- 0.02 Hz', '23,1 °C' to SI value and uncertainty."""
 
 import math
 import re
-from dataclasses import dataclass
 from functools import lru_cache
-
-import uncertainties
+from typing import NamedTuple
 
 from labbook.errors import Refusal
 from labbook.registry.quantities import quantity
@@ -16,8 +14,7 @@ STATED = "stated"
 MOST_CHARACTERS = 80
 
 
-@dataclass(frozen=True)
-class Typed:
+class Typed(NamedTuple):
     """One quantity as typed.
 
     text: as written; unit: house spelling of the unit it was in; value and u: SI value and standard
@@ -30,21 +27,19 @@ class Typed:
     u: float
     origin: str
 
-    def row(self) -> list:
-        """The five fields as stored."""
-        return [self.text, self.unit, self.value, self.u, self.origin]
-
 
 _NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)"
 _EXP = r"[eE][+-]?\d+"
-_UNIT = r"[^\d\s+().,-][^+()]*?"
-_PLAIN = re.compile(rf"({_NUMBER})({_EXP})?\s*({_UNIT}|1/\w+|1)?")
-_SHORT = re.compile(rf"({_NUMBER})\((\d+(?:\.\d+)?)\)({_EXP})?\s*({_UNIT}|1/\w+)?")
+_UNIT = r"(?:[^\d\s+().,-][^+()]*?|(?<=\s)1(?:/\w+)?)"
+_PLAIN = re.compile(rf"({_NUMBER})({_EXP})?\s*({_UNIT})?")
+_SHORT = re.compile(rf"({_NUMBER})\((\d+(?:\.\d+)?)\)({_EXP})?\s*({_UNIT})?")
 _BOTH = re.compile(
     rf"(\(?)\s*({_NUMBER})({_EXP})?\s*({_UNIT})?\s*\+-\s*"
     rf"(\d+(?:\.\d*)?(?:{_EXP})?|\.\d+)\s*(\)?)({_EXP})?\s*({_UNIT})?"
 )
-_THOUSANDS = re.compile(r"[+-]?[1-9]\d{0,2}(,\d{3})+(?!\d)")
+_THOUSANDS = re.compile(r"(?<![\d.,])[1-9]\d{0,2}(,\d{3})+(?!\d)")
+_TIMES_TEN = re.compile(r"(?<=[\d.)])\s*[x×]\s*10(?:\^([+-]?\d+)|([+-]\d+)|([⁺⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+))")
+_RAISED = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻", "0123456789+-")
 
 
 def plain(key: str, text: str, decimal_comma: bool = False) -> str:
@@ -56,9 +51,11 @@ def plain(key: str, text: str, decimal_comma: bool = False) -> str:
     if len(text) > MOST_CHARACTERS:
         raise Refusal(key, text[:20] + "...", "is too long for one quantity", "write e.g. 12.4(3) mm/s")
     tidy = text.strip().replace("−", "-").replace("–", "-").replace("±", "+-").replace("+/-", "+-")
-    tidy = re.sub(r"(?<=[\d.)])\s*[x×]\s*10\^?([+-]?\d+)", r"e\1", tidy).replace("\u00a0", " ")
+    tidy = tidy.replace("\u00a0", " ")
+    if "10" in tidy:
+        tidy = _TIMES_TEN.sub(lambda m: "e" + (m[1] or m[2] or m[3].translate(_RAISED)), tidy)
     if "," in tidy:
-        if not decimal_comma and _THOUSANDS.match(tidy):
+        if not decimal_comma and _THOUSANDS.search(tidy):
             raise Refusal(
                 key, text, "may mean a thousand or a decimal comma", "write 1000 or 1.000, with a point"
             )
@@ -71,12 +68,12 @@ def plain(key: str, text: str, decimal_comma: bool = False) -> str:
 def printed(key: str, typed: Typed) -> str:
     """A text that reads as the same value, uncertainty and unit wherever it is typed again."""
     tidy = plain(key, typed.text, decimal_comma=True)
-    number = re.fullmatch(r"[\s\d.()+eE-]*(%?)\s*", tidy)
-    if number is None:
+    _, _, own_unit, _, relative = _parts(key, typed.text, True)
+    if own_unit is not None:
         return tidy
-    if number[1] and typed.unit != "%":  # a relative uncertainty; the unit goes to the value
+    if relative:  # the per cent sign stands last, so the unit goes to the value
         return re.sub(r"\s*\+-", f" {typed.unit} +-", tidy, count=1)
-    return tidy if number[1] else f"{tidy.strip()} {typed.unit}"
+    return f"{tidy} {typed.unit}"
 
 
 @lru_cache(maxsize=200_000)
@@ -97,14 +94,18 @@ def read(key: str, text: str, unit: str | None = None, decimal_comma: bool = Fal
         raise Refusal(
             key, text, f"{refusal.typed} {refusal.reason}", refusal.remedy
         ) from None
+    if relative and house in ("degC", "degF"):
+        raise Refusal(
+            key, text, f"a percentage in {house} depends on where the scale starts", f"write +- 0.5 {house}"
+        )
     si = to_si(key, value, house)
     spread = abs(si) * u if relative else spread_to_si(key, u, house)
     if not (math.isfinite(si) and math.isfinite(spread)):
         raise Refusal(key, text, "is not a finite number")
     if row.sign == "positive" and si <= 0:
-        raise Refusal(key, text, f"a {row.kind or row.name} must be greater than zero")
+        raise Refusal(key, text, f"{row.one} must be greater than zero")
     if row.sign == "not negative" and si < 0:
-        raise Refusal(key, text, f"a {row.kind or row.name} cannot be negative")
+        raise Refusal(key, text, f"{row.one} cannot be negative")
     if key == "glycerol" and si > 1:
         raise Refusal(key, text, "a mass fraction cannot exceed 100 wt%", "type it in wt%, e.g. 85 wt%")
     return Typed(text.strip(), house, si, spread, origin)
@@ -120,14 +121,15 @@ def _parts(key, text, decimal_comma):
         return float(digits + (exponent or "")), half / math.sqrt(3), unit, DIGITS, False
     if match := _SHORT.fullmatch(tidy):
         digits, u, exponent, unit = match.groups()
-        both = uncertainties.ufloat_fromstr(f"{digits}({u}){exponent or ''}")
-        return both.nominal_value, both.std_dev, unit, STATED, False
+        power = int((exponent or "e0")[1:])
+        places = 0 if "." in u else len(digits.partition(".")[2])  # 1.2(34) is 3.4, and so is 1.2(3.4)
+        return float(digits + (exponent or "")), float(f"{u}e{power - places}"), unit, STATED, False
     if match := _BOTH.fullmatch(tidy):
         return _value_and_spread(key, text, match)
     if re.match(r"[+-]?(nan|inf)", tidy.lower()):
         raise Refusal(key, text, "is not a finite number")
     row = quantity(key)
-    raise Refusal(key, text, f"cannot be read as a {row.kind or row.name}", f"write e.g. {_example(row)}")
+    raise Refusal(key, text, f"cannot be read as {row.one}", f"write e.g. {_example(row)}")
 
 
 def _example(row) -> str:
@@ -143,7 +145,7 @@ def _value_and_spread(key, text, match):
     u = float(spread) * float("1" + (outer_exponent or "e0"))
     inner, outer = (inner or "").strip() or None, (outer or "").strip() or None
     per_cent_is_its_unit = "%" in quantity(key).units
-    if outer and outer.startswith("%") and not (per_cent_is_its_unit and inner in (None, "%")):
+    if outer and outer.startswith("%") and not closed and not (per_cent_is_its_unit and inner in (None, "%")):
         if per_cent_is_its_unit:
             raise Refusal(key, text, "is a percentage of the value or of the whole", "write +- 0.5 wt%")
         rest = outer[1:].strip() or None
@@ -162,9 +164,16 @@ def read_uncertainty(key: str, text: str, unit: str | None = None) -> Typed:
     chosen = own_unit if own_unit is not None else unit
     if value < 0:
         raise Refusal(field, text, "an uncertainty cannot be negative")
+    if not math.isfinite(value):
+        raise Refusal(field, text, "is not a finite number")
     if chosen is None:
         raise Refusal(field, text, "has no unit", f"add % or one of {', '.join(quantity(key).units[:6])}")
     if chosen.strip() == "%":
         return Typed(text.strip(), "%", value / 100, 0.0, "relative")
     house = accepted(key, chosen)
     return Typed(text.strip(), house, spread_to_si(key, value, house), 0.0, "absolute")
+
+
+def printed_uncertainty(typed: Typed) -> str:
+    """A text that reads as the same stated uncertainty wherever it is typed again."""
+    return typed.text if not typed.text[-1:].isdigit() else f"{typed.text} {typed.unit}"

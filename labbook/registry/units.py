@@ -1,4 +1,4 @@
-"""The one file that knows pint: spellings of units, conversion to SI and back, and what a wrong unit measures."""
+"""The one file that knows pint: spellings of units, conversion to SI and back, what a wrong unit measures."""
 
 import re
 from functools import lru_cache
@@ -30,6 +30,9 @@ _ALIASES = {
     "Pas": "Pa.s", "mPas": "mPa.s", "mPa-s": "mPa.s", "Am2": "A.m2", "mAm2": "mA.m2", "wt-%": "wt%",
     "cst": "cSt", "kg/m^3": "kg/m3",
 }  # fmt: skip
+
+# what pint may be asked about: other text can raise anything in it, or keep it busy for ever (9**9**9)
+_ASKABLE = re.compile(r"(?:1|(?:[^\W\d_]|[°%])+-?\d?)(?:[./](?:[^\W\d_]|[°%])+-?\d?)*")
 
 _NOUNS = {
     "[mass]": "a mass", "[length]": "a length", "[time]": "a time", "[current]": "a current",
@@ -95,19 +98,21 @@ def accepted(key: str, unit: str) -> str:
 
 
 def _why_not(row: Quantity, unit: str) -> str:
-    kind = row.kind or row.name
     if row.key == "f" and unit in ("rad/s", "rad/min"):
         return "is an angular frequency, and f counts cycles: divide by 2 pi"
+    unknown = f"is no unit that labbook knows; {row.one} is needed"
+    if not _ASKABLE.fullmatch(unit):
+        return unknown
     try:
-        parsed = _pint_registry().Unit(_pint_text(unit))
-    except (pint.PintError, ValueError, TypeError, AttributeError, ArithmeticError, SyntaxError,
-            AssertionError):
-        return f"is no unit that labbook knows; a {kind} is needed"
-    measured = " ".join(str(parsed.dimensionality).split())
+        found = _pint_registry().Unit(_pint_text(unit)).dimensionality
+    except (pint.PintError, ValueError, TypeError, AttributeError, ArithmeticError, LookupError,
+            SyntaxError, AssertionError):
+        return unknown
+    measured = " ".join(str(found).split())
     noun = _NOUNS.get(measured, f"of dimension {measured}")
-    if parsed.dimensionality == _pint_registry().Unit(_pint_text(row.unit)).dimensionality:
-        return f"is not a unit used here for a {kind}"
-    return f"is {noun}, and a {kind} is needed"
+    if found == _pint_registry().Unit(_pint_text(row.unit)).dimensionality:
+        return f"is not a unit used here for {row.one}"
+    return f"is {noun}, and {row.one} is needed"
 
 
 def to_si(key: str, value: float, unit: str) -> float:

@@ -18,17 +18,21 @@ def written(value: float | None, u: float | None = None, unit: str = "") -> str:
         return _tidy(f"{value:.4g}") + tail
     if u < 1e-12 * abs(value):
         return _tidy(f"{value:.6g}") + tail
-    leading = float(f"{u:.0e}") / 10 ** math.floor(math.log10(float(f"{u:.0e}")))
-    digits = 2 if round(leading) == 1 else 1  # 0.0210(10) but 2.31(3)
+    mantissa, _, exponent = f"{u:.1e}".partition("e")
+    if float(mantissa) >= 9.5:  # one digit would say 10: 0.099 is (10), not (9) and not (99)
+        mantissa, exponent = "1.0", int(exponent) + 1
+        u = float(f"1e{exponent}")
+    digits = 2 if float(mantissa) < 2 else 1  # 0.0210(10) but 2.31(3)
     largest = max(abs(value), u)
     power = "e" if not 1e-3 <= largest < 1e5 else ""
     if not power and u >= 9.5:
         last = digits - 1 - math.floor(math.log10(u))
-        return f"{round(value, last):.0f}({round(u, last):.0f})" + tail
+        return f"{round(value, last) + 0.0:.0f}({round(u, last):.0f})" + tail
     return _tidy(f"{uncertainties.ufloat(value, u):.{digits}u{power}S}") + tail
 
 
 def _tidy(text: str) -> str:
+    text = re.sub(r"\((\d+)\.(\d+)\)", r"(\1\2)", text)  # 30.0(10), as 0.0210(10), and not 30.0(1.0)
     return re.sub(r"e([+-])0*(\d)", lambda m: f"e{'-' if m[1] == '-' else ''}{m[2]}", text)
 
 

@@ -1,0 +1,52 @@
+"""What the whole suite shares: the benchmarks' switch, the refusal of skips, a demo book, the order of rooms."""
+
+import os
+from pathlib import Path
+
+import pytest
+
+from labbook.api import make_demo
+
+TESTS = Path(__file__).parent
+
+
+def pytest_addoption(parser):
+    parser.addoption(
+        "--benchmarks", action="store_true", help="collect tests/benchmarks, which measure and take minutes"
+    )
+
+
+def pytest_ignore_collect(collection_path, config):
+    """Benchmarks are another command's business: without the flag they are not collected at all."""
+    if TESTS / "benchmarks" in (collection_path, *collection_path.parents) and not config.getoption("benchmarks"):
+        return True
+    return None
+
+
+def pytest_collection_modifyitems(items):
+    """The browser goes last: it is slow, and its event loop would be in the way of others."""
+    items.sort(key=lambda item: TESTS / "browser" in item.path.parents)
+
+
+def _unrun(config) -> list:
+    stats = config.pluginmanager.get_plugin("terminalreporter").stats
+    return stats.get("skipped", []) + stats.get("xfailed", [])
+
+
+def pytest_sessionfinish(session, exitstatus):
+    """With LABBOOK_NO_SKIPS=1 a test that did not run is a failure."""
+    if os.environ.get("LABBOOK_NO_SKIPS") == "1" and exitstatus == 0 and _unrun(session.config):
+        session.exitstatus = pytest.ExitCode.TESTS_FAILED
+
+
+def pytest_terminal_summary(terminalreporter, config):
+    if os.environ.get("LABBOOK_NO_SKIPS") == "1" and (unrun := _unrun(config)):
+        terminalreporter.write_line(f"LABBOOK_NO_SKIPS: {len(unrun)} skipped, which counts as failure", red=True)
+
+
+@pytest.fixture(scope="session")
+def demo_book(tmp_path_factory) -> Path:
+    """The demo book, made once: read it, or write to a copy."""
+    path = tmp_path_factory.mktemp("demo") / "demo.db"
+    make_demo(path).close()
+    return path
