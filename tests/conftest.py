@@ -1,13 +1,18 @@
-"""What the whole suite shares: the benchmarks' switch, the refusal of skips, a demo book, the order of rooms."""
+"""What the whole suite shares: the benchmarks' switch, no skips where CI says so, a demo book, the order."""
 
 import os
 from pathlib import Path
 
 import pytest
+from hypothesis import settings
 
 from labbook.api import make_demo
 
 TESTS = Path(__file__).parent
+
+# a busy machine is no reason for red, and CI tries the same examples each time
+settings.register_profile("labbook", deadline=None, derandomize=bool(os.environ.get("CI")))
+settings.load_profile("labbook")
 
 
 def pytest_addoption(parser):
@@ -18,9 +23,8 @@ def pytest_addoption(parser):
 
 def pytest_ignore_collect(collection_path, config):
     """Benchmarks are another command's business: without the flag they are not collected at all."""
-    if TESTS / "benchmarks" in (collection_path, *collection_path.parents) and not config.getoption("benchmarks"):
-        return True
-    return None
+    inside = TESTS / "benchmarks" in (collection_path, *collection_path.parents)
+    return True if inside and not config.getoption("benchmarks") else None
 
 
 def pytest_collection_modifyitems(items):
@@ -41,7 +45,8 @@ def pytest_sessionfinish(session, exitstatus):
 
 def pytest_terminal_summary(terminalreporter, config):
     if os.environ.get("LABBOOK_NO_SKIPS") == "1" and (unrun := _unrun(config)):
-        terminalreporter.write_line(f"LABBOOK_NO_SKIPS: {len(unrun)} skipped, which counts as failure", red=True)
+        line = f"LABBOOK_NO_SKIPS: {len(unrun)} did not run, which counts as failure"
+        terminalreporter.write_line(line, red=True)
 
 
 @pytest.fixture(scope="session")

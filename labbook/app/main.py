@@ -1,5 +1,7 @@
 """The app's entry: page set-up, navigation, and the line that says which book this is and who you are."""
 
+from pathlib import Path
+
 import streamlit as st
 
 from labbook.app import bench, ledger, numbers, runs, session, shelf, style, trends
@@ -17,7 +19,7 @@ LOOPBACK = ("127.0.0.1", "localhost", "::1")
 
 
 def main() -> None:
-    st.set_page_config(page_title="labbook", page_icon=":material/waves:", layout="wide")
+    st.set_page_config(page_title="labbook", page_icon=Path(__file__).with_name("icon.png"), layout="wide")
     style.apply()
     if st.get_option("server.address") not in LOOPBACK:
         st.error("labbook binds to this machine only: served to others it would need sign-in. "

@@ -137,7 +137,7 @@ def served(tmp_path_factory):
 
 @pytest.fixture
 def shot():
-    """shot(page, name) writes name.png into the folder that LABBOOK_SHOTS names, and nothing if it names none."""
+    """shot(page, name) writes name.png into the folder that LABBOOK_SHOTS names, if it names one."""
 
     def take(page, name: str, **options) -> Path | None:
         folder = os.environ.get("LABBOOK_SHOTS")
