@@ -3,8 +3,8 @@
 import streamlit as st
 
 from labbook.api import Book
-from labbook.app import live, series, session, today
-from labbook.book.bench_queries import counts_of_book, summary_of
+from labbook.app import cautions, live, series, session, today
+from labbook.book.bench_queries import counts_of_book, kinds_chosen, summary_of
 from labbook.book.queries import recent
 from labbook.book.records import DRIVES
 from labbook.registry.quantities import QUANTITIES
@@ -85,6 +85,7 @@ def _choices(book: Book) -> dict[str, str]:
             chosen[name] = st.selectbox(name.capitalize(), codes, key=key, placeholder="none") or ""
             _refusal(name)
     session.note(book.ask(summary_of, chosen["swimmer"], chosen["fluid"]))
+    cautions.fold(cautions.at_the_bench(*book.ask(kinds_chosen, chosen["fluid"], chosen["rig"])))
     return chosen
 
 

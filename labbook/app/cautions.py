@@ -67,6 +67,11 @@ def of_rig(cells) -> tuple[str, ...]:
     return (*(("magnets", "coils") if coils else ()), *(("drives",) if motor else ()), "light")
 
 
+def at_the_bench(fluid_kind: str, rig_cells) -> tuple[str, ...]:
+    """The cautions of a trial with this fluid and this rig ({} for none)."""
+    return tuple(dict.fromkeys((*(of_rig(rig_cells) if rig_cells else ()), *of_fluid(fluid_kind))))
+
+
 def of_record(kind: str, cells) -> tuple[str, ...]:
     """The cautions where a record of the shelf is opened."""
     if kind == "fluid":

@@ -1,4 +1,4 @@
-"""Bench's lower part: today's trials, newest first; pick one to open it or to start again with one change."""
+"""Bench's lower part: today's trials, newest first; pick one to open or to start again with one change."""
 
 from datetime import datetime
 
@@ -19,20 +19,20 @@ NUMBERS = ("Sp", "Re_omega", "St")
 def _sheets(state: str, since: str) -> list[RunSheet]:
     book = session.book()
     found = book.sheets(Question(since=since, state="all"), newest=60)
-    return found or book.sheets(Question(state="all"), newest=SHOWN)
+    return found if len(found) >= SHOWN else book.sheets(Question(state="all"), newest=SHOWN)
 
 
 def table() -> None:
-    """The trials of today, or the latest ones where today has none."""
+    """The trials of today, and the latest ones before where today has few."""
     day = datetime.now().astimezone().date().isoformat()
     found = _sheets(session.state_of_book(), day)
     if not found:
         return
-    is_today = found[0].texts["at"][:10] == day
-    void = sum(s.texts["state"] == "void" for s in found)
-    head = "Today" if is_today else "Latest trials"
-    st.markdown(f"**{head}** · {len(found)} trial{'s' if len(found) != 1 else ''}, {void} void")
-    frame = pd.DataFrame([_row(s, is_today) for s in found])
+    today = [s for s in found if s.texts["at"][:10] == day]
+    void = sum(s.texts["state"] == "void" for s in today)
+    trials = f"{len(today)} trial{'s' if len(today) != 1 else ''}, {void} void"
+    st.markdown(f"**Today** · {trials}" + (", and the latest before" if len(today) < len(found) else ""))
+    frame = pd.DataFrame([_row(s, day) for s in found])
     picked = st.dataframe(
         frame, hide_index=True, on_select="rerun", selection_mode="single-row", key="bench:today",
         height=min(38 + 36 * len(frame), 440), row_height=36,
@@ -44,9 +44,9 @@ def table() -> None:
         st.caption("Tick a line to open it, or to start again from it with one change.")
 
 
-def _row(sheet: RunSheet, is_today: bool) -> dict[str, str]:
+def _row(sheet: RunSheet, day: str) -> dict[str, str]:
     texts = sheet.texts
-    at = texts["at"][11:16] if is_today else texts["at"][:16].replace("T", " ")
+    at = texts["at"][11:16] if texts["at"][:10] == day else texts["at"][:16].replace("T", " ")
     typed = {k: _as_typed(sheet, k) for k in ("f", "U")}
     numbers = {k: written(sheet.values[k], sheet.u[k]) for k in NUMBERS}
     return {

@@ -9,8 +9,8 @@ from labbook.book import resolve
 from labbook.book.derive import section_of
 from labbook.book.ledger import cells_of, run_row
 from labbook.book.sets import sets_of
-from labbook.book.shelf import Item, read_shelf
-from labbook.book.tables import SHELF, fluid, run, swimmer
+from labbook.book.shelf import Item, document, read_shelf
+from labbook.book.tables import SHELF, fluid, rig, run, swimmer
 from labbook.registry.written import shown
 
 NOT_AGAIN = ("at", "by", "state", "why", "note", "video", "U", "A_tip", "T_end")
@@ -60,6 +60,13 @@ def summary_of(connection: Connection, swimmer_code: str, fluid_code: str) -> st
     parts = [_of_swimmer(s, shelf.materials.get(s.texts["material_id"])) for s in shelf.swimmers.values()]
     parts += [_of_fluid(f) for f in shelf.fluids.values()]
     return " · ".join(parts)
+
+
+def kinds_chosen(connection: Connection, fluid_code: str, rig_code: str) -> tuple[str, dict[str, str]]:
+    """The kind of a fluid, and a rig's cells ({} for none): what the cautions follow from."""
+    kind = connection.scalar(select(fluid.c.kind).where(fluid.c.code == fluid_code)) or ""
+    row = connection.execute(select(rig).where(rig.c.code == rig_code)).mappings().one_or_none()
+    return kind, {} if row is None else {"kind": row["kind"] or "", **document(row["typed"])}
 
 
 def _of_swimmer(item: Item, material: Item | None) -> str:
