@@ -100,10 +100,10 @@ def trend(
     if bands:
         layers += trend_layers.band_areas(plane, bands_of(x, *plane.x_domain, regimes),
                                           bands_of(y, *plane.y_domain, regimes))
-    if curve is not None and len(curve):
-        layers += trend_layers.curves(plane, curve)
     layers += trend_marks.marks(plane, shown, names=names, group=group, u_x=u_x, u_y=u_y,
                                 bars=bars != "none", numbers=numbers)
+    if curve is not None and len(curve):  # over the marks, which would hide it where there are many
+        layers += trend_layers.curves(plane, curve)
     if bands:
         layers += trend_layers.band_names(plane, bands_of(x, *plane.x_domain, regimes),
                                           bands_of(y, *plane.y_domain, regimes))
