@@ -63,7 +63,7 @@ def _table() -> Table:
     Index("ix_resolved_regimes", table.c.state, table.c.at, table.c.run_id, table.c.Re_omega, table.c.Sp,
           table.c.St)
     Index("ix_resolved_plot", table.c.swimmer_id, table.c.state, table.c.Sp, table.c.U_cap, table.c.stride,
-          table.c.fluid_id)
+          table.c.U_scaled, table.c.fluid_id)
     Index("ix_resolved_Re", table.c.swimmer_id, table.c.state, table.c.Re)
     return table
 
