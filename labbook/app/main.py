@@ -33,7 +33,8 @@ def main() -> None:
     try:
         with st.container(key="lb-who"):
             session.choose_handle()
-        session.show_message()
+        with st.container(key="lb-message"):  # always there, so that a message moves nothing
+            session.show_message()
         chosen.run()
     except LabbookError as error:
         st.error(str(error))

@@ -12,10 +12,13 @@ h1 { font-size: 1.35rem !important; padding: 0.1rem 0 !important; }
 h2 { font-size: 1.15rem !important; padding: 0.1rem 0 !important; }
 h3 { font-size: 1.0rem !important; padding: 0.1rem 0 !important; }
 .stButton button, .stDownloadButton button, .stLinkButton a { min-height: 40px; }
+[data-testid="stButtonGroup"] button { min-height: 40px; }
 [data-testid="stWidgetLabel"] p { font-size: 0.86rem; }
 [data-testid="stCaptionContainer"] p { font-size: 0.84rem; }
 .st-key-lb-who { position: fixed; top: 0.5rem; right: 1rem; z-index: 1000000; width: auto !important; }
 .st-key-lb-who button { border: none; background: transparent; min-height: 40px; }
+.st-key-lb-runs-table > div, .st-key-lb-runs-table [data-testid="stFullScreenFrame"] { height: 100%; }
+.st-key-lb-runs-table [data-testid="stElementToolbar"] { display: none; } /* it would lie over the buttons above */
 .lb-refused { color: light-dark(#B5452C, #E58468); font-size: 0.86rem; line-height: 1.25; margin: -0.2rem 0 0.1rem 0; }
 .lb-note { font-size: 0.88rem; opacity: 0.8; line-height: 1.35; }
 .lb-caution { font-size: 0.86rem; line-height: 1.4; border-left: 3px solid #E69F00; padding: 0.1rem 0 0.1rem 0.6rem; }

@@ -1,5 +1,6 @@
 """A question to the book: which runs, said in SQL, in words, and as options of the command line."""
 
+import shlex
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
@@ -91,7 +92,7 @@ class Question:
     def as_options(self) -> str:
         """The options of `labbook runs` that ask the same."""
         words = [f"--regime {_quoted(name)}" for name in self.regimes]
-        words += [f"--range {k} {low:g} {high:g}" for k, (low, high) in self.ranges.items()]
+        words += [f"--range {k} {low:.12g} {high:.12g}" for k, (low, high) in self.ranges.items()]
         for option, chosen in (("fluid", self.fluids), ("swimmer", self.swimmers), ("material", self.materials),
                                ("person", self.people), ("series", self.series)):  # fmt: skip
             words += [f"--{option} {_quoted(code)}" for code in chosen]
@@ -142,7 +143,8 @@ def _escaped(text: str) -> str:
 
 
 def _quoted(text: str) -> str:
-    return f"'{text}'" if " " in text else text
+    return shlex.quote(text)
+
 
 
 def _range_in_words(key: str, low: float, high: float) -> str:

@@ -9,9 +9,11 @@ from dateutil.tz import tzlocal
 from sqlalchemy import Connection, case, func, select
 
 from labbook.book.asking import Question, check_key, holds
-from labbook.book.shelf import document
+from labbook.book.derive import section_of
+from labbook.book.shelf import document, item_of
 from labbook.book.stored_view import KEYS, SENTENCES, column_of, resolved
 from labbook.book.tables import SHELF, fluid, ledger, ledger_run, material, reading, rig, run, swimmer
+from labbook.errors import Refusal
 from labbook.registry.quantities import QUANTITIES
 from labbook.registry.regimes import REGIMES
 
@@ -92,7 +94,7 @@ def _table(connection, rows, texts, keys, prefixes) -> pd.DataFrame:
 def _text_column(connection, name, values):
     if name in _BY_ID:
         table = _BY_ID[name][1]
-        codes = dict(connection.execute(select(table.c.id, table.c.code)).tuples().all())
+        codes = dict(connection.execute(select(table.c.id, table.c.code)).all())
         ids = np.array([v or 0 for v in values], dtype=np.int64)
         unique, which = np.unique(ids, return_inverse=True)
         named = np.array([codes.get(int(i)) for i in unique], dtype=object)
@@ -138,7 +140,7 @@ def shelf_table(connection: Connection, name: str) -> pd.DataFrame:
     frame_ = pd.DataFrame([{**r, "typed": document(r["typed"])} for r in rows], columns=list(table.c.keys()))
     column = {"fluid": run.c.fluid_id, "swimmer": run.c.swimmer_id, "rig": run.c.rig_id}.get(name)
     if column is not None:
-        used = dict(connection.execute(select(column, func.count()).group_by(column)).tuples().all())
+        used = dict(connection.execute(select(column, func.count()).group_by(column)).all())
         frame_["runs"] = [used.get(i, 0) for i in frame_["id"]]
     return frame_
 
@@ -157,7 +159,7 @@ def recent(connection: Connection, name: str, by: str | None = None) -> list[str
     codes = dict(
         connection.execute(
             select(table.c.id, table.c.code).where(table.c.retired.is_(False)).order_by(table.c.id.desc())
-        ).tuples().all()
+        ).all()
     )  # fmt: skip
     column = run.c[f"{name}_id"]
     query = select(column).order_by(run.c.id.desc()).limit(300)
@@ -175,6 +177,24 @@ def people(connection: Connection) -> list[str]:
 def series_labels(connection: Connection) -> list[str]:
     """Every series label."""
     return list(connection.scalars(select(run.c.series).where(run.c.series.is_not(None)).distinct().order_by(run.c.series)))
+
+
+def choices(connection: Connection) -> dict[str, list[str]]:
+    """What a question may name: fluids, swimmers and materials (retired ones last), people, series labels."""
+    found = {}
+    for name in ("fluid", "swimmer", "material"):
+        table = SHELF[name]
+        found[name] = list(connection.scalars(select(table.c.code).order_by(table.c.retired, table.c.id.desc())))
+    return found | {"person": people(connection), "series": series_labels(connection)}
+
+
+def swimmer_shape(connection: Connection, code: str) -> dict:
+    """A swimmer as charts.drawings takes it: form, section, and its typed sizes in SI."""
+    row = connection.execute(select(swimmer).where(swimmer.c.code == code)).mappings().one_or_none()
+    if row is None:
+        raise Refusal("swimmer", code, "the book has no such swimmer")
+    item = item_of(row)
+    return {"form": row["form"], "section": section_of(item), **{k: item.value(k) for k in item.typed}}
 
 
 def ledger_lines(

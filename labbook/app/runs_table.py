@@ -1,0 +1,202 @@
+"""The table of runs: as typed on the left, numbers on the right, sorted by value however it is written."""
+
+import math
+
+import pandas as pd
+import streamlit as st
+from pandas.io.formats.style import Styler
+
+from labbook.app import session
+from labbook.app.record_parts import as_typed, symbol
+from labbook.book import queries
+from labbook.book.asking import Question
+from labbook.book.stored_view import KEYS
+from labbook.charts.palette import paper
+from labbook.registry.catalogue import NUMBERS
+from labbook.registry.quantities import QUANTITIES, RUN_KEYS
+from labbook.registry.regimes import regimes_of
+from labbook.registry.written import SHOWN, shown, written
+
+TEXTS = ("at", "by", "swimmer", "fluid", "material", "rig", "drive", "series", "video", "note")
+FOLLOWING = tuple(k for k in KEYS if k not in NUMBERS and k not in RUN_KEYS)
+OFFERED = (*TEXTS, *RUN_KEYS, *FOLLOWING, *NUMBERS, "regime")
+USUAL = (
+    "at",
+    "by",
+    "swimmer",
+    "fluid",
+    "f",
+    "theta0",
+    "T",
+    "U",
+    "Sp",
+    "Re_omega",
+    "U_scaled",
+    "St",
+    "regime",
+    "note",
+)
+ROW = 40
+TALL, FOLDED = 11, 4  # rows in sight: alone, and above an open sheet
+REST_OF_SCREEN = "flex: none !important; height: max(483px, calc(100vh - 310px));"
+BANDED = ("Re_omega", "Sp", "St")  # numbers that the regimes stand on
+
+
+def chosen() -> tuple[str, ...]:
+    """The columns in the page's address, in the table's order; the usual ones where it names none."""
+    named = [c for c in session.address("columns").split(",") if c in OFFERED]
+    return tuple(c for c in OFFERED if c in named) if named else USUAL
+
+
+def keys_of(columns: tuple[str, ...]) -> tuple[str, ...]:
+    """The quantities and numbers among some columns."""
+    return tuple(c for c in columns if c in KEYS)
+
+
+def choose() -> None:
+    """The popover that chooses columns and keeps them in the address."""
+    with st.popover("Columns", icon=":material/view_column:"):
+        have = chosen()
+        picked = st.multiselect(
+            "Columns", OFFERED, have, format_func=_label, key="runs:columns", width=640, on_change=_keep
+        )
+        if tuple(picked) and set(picked) != set(USUAL):
+            st.button("The usual ones", key="runs:usual", on_click=_usual)
+
+
+def _keep() -> None:
+    picked = st.session_state["runs:columns"]
+    session.set_address(columns=",".join(picked) if picked and set(picked) != set(USUAL) else None)
+
+
+def _usual() -> None:
+    st.session_state["runs:columns"] = list(USUAL)
+    session.set_address(columns=None)
+
+
+def _label(column: str) -> str:
+    row = NUMBERS.get(column) or QUANTITIES.get(column)
+    return column if row is None else f"{row.symbol}  {row.name}"
+
+
+def show(state: str, asked: Question, told: str, columns: tuple[str, ...], newest: int, folded: bool) -> None:
+    """The newest runs of a question; a line touched opens its run through the address."""
+    frame, written_cells, void, config = _cells(state, told, columns, newest, asked)
+    codes = frame["code"].tolist()
+    key = f"runs:table:{hash((told, columns, newest))}"
+    st.session_state["runs:key"], st.session_state["runs:codes"] = key, codes
+    rows = min(len(codes), FOLDED if folded else TALL)
+    tall = len(codes) > TALL and not folded
+    # a rule and not a second container: a table that moves to another one forgets how it was sorted
+    st.html(f"<style>.st-key-lb-runs-table {{ {REST_OF_SCREEN if tall else ''} }}</style>")
+    with st.container(key="lb-runs-table"):
+        st.dataframe(
+            _style(frame, written_cells, void, session.address("run")),
+            hide_index=True,
+            column_config=config,
+            row_height=ROW,
+            height="stretch" if tall else ROW * (rows + 1) + 3,
+            key=key,
+            placeholder="",
+            on_select=_open,
+            selection_mode="single-row",  # a touch on a heading, which sorts, would count as a cell
+        )
+
+
+def _open() -> None:
+    selected = st.session_state[st.session_state["runs:key"]]["selection"]["rows"]
+    codes = st.session_state["runs:codes"]
+    session.set_address(run=codes[selected[0]] if selected and selected[0] < len(codes) else None)
+
+
+def forget_selection() -> None:
+    """No line is marked any more."""
+    st.session_state.pop(st.session_state.get("runs:key", ""), None)
+
+
+@st.cache_data(max_entries=24, show_spinner="Reading the runs")
+def _cells(state: str, told: str, columns: tuple[str, ...], newest: int, _asked: Question):
+    """(frame, column -> {value: text}, which are void, column settings) of the newest runs."""
+    keys = tuple(dict.fromkeys((*keys_of(columns), *(BANDED if "regime" in columns else ()))))
+    found = session.book().frame(_asked, keys=keys, texts=(*queries.RUN_TEXTS, "typed"), newest=newest)
+    frame = pd.DataFrame({"code": found["code"]})
+    config: dict = {"code": st.column_config.TextColumn("run", pinned=True)}
+    written_cells: dict[str, dict] = {}
+    for column in columns:
+        if column in KEYS:
+            label, frame[column], written_cells[column] = _numeric(found, column)
+            config[column] = st.column_config.NumberColumn(label, help=_label(column))
+        else:
+            frame[column] = _text(found, column)
+            config[column] = st.column_config.TextColumn(column)
+    void = (found["state"] == "void").to_numpy()
+    if void.any():
+        frame.insert(
+            1,
+            "state",
+            ["void: " + (why or "") if v else "" for v, why in zip(void, found["why"], strict=True)],
+        )
+        config["state"] = st.column_config.TextColumn("void")
+    return frame, written_cells, void, config
+
+
+def _style(frame: pd.DataFrame, written_cells: dict[str, dict], void, opened: str) -> Styler:
+    """The frame with its cells as written, void runs grey, the open one in rust; the SI value sorts."""
+    styler = frame.style.format({c: texts.get for c, texts in written_cells.items()}, na_rep="")
+    looks = ["color: #8B9195; font-style: italic" if v else "" for v in void]
+    if opened in frame["code"].values:
+        looks[frame["code"].tolist().index(opened)] = (
+            f"color: {paper(session.is_dark()).rust}; font-weight: bold"
+        )
+    return styler.apply(lambda column: looks) if any(looks) else styler
+
+
+def _text(found: pd.DataFrame, column: str) -> list[str]:
+    if column == "at":
+        return [t.strftime("%Y-%m-%d %H:%M") for t in found["at"]]
+    if column == "regime":
+        return [
+            ", ".join(regimes_of(dict(zip(BANDED, row, strict=True))))
+            for row in found[list(BANDED)].itertuples(index=False, name=None)
+        ]
+    return ["" if pd.isna(v) else str(v) for v in found[column]]
+
+
+def _numeric(found: pd.DataFrame, key: str) -> tuple[str, list[float], dict[float, str]]:
+    """(header, SI values, value -> text) of a column; the header has the unit where the column has one.
+
+    Two equal values that are written differently are told apart by the last bit, which no sorting sees.
+    """
+    values, texts = found[key].tolist(), []
+    units = _units(found, key)
+    unit = next(iter(units)) if len(units) == 1 else ""
+    for value, u, typed in zip(values, found[f"u_{key}"], found["typed"], strict=True):
+        if math.isnan(value):
+            texts.append("")
+        elif key in RUN_KEYS and key in typed:
+            texts.append(as_typed(typed[key]).removesuffix(f" {unit}") if unit else as_typed(typed[key]))
+        elif key in QUANTITIES:
+            texts.append(shown(key, value, u).removesuffix(f" {unit}"))
+        else:
+            texts.append(written(value, u))
+    known: dict[float, str] = {}
+    for i, text in enumerate(texts):
+        while known.get(values[i], text) != text:
+            values[i] = math.nextafter(values[i], math.inf)
+        if text:
+            known[values[i]] = text
+    return f"{symbol(key)} ({unit})" if unit else symbol(key), values, known
+
+
+def _units(found: pd.DataFrame, key: str) -> set[str]:
+    """The units that a column is written in."""
+    if key in NUMBERS:
+        return set()
+    usual = SHOWN.get(key, QUANTITIES[key].unit)
+    if key not in RUN_KEYS:
+        return {usual} - {"1"}
+    return {
+        typed[key][1] if key in typed else usual
+        for typed, value in zip(found["typed"], found[key], strict=True)
+        if not math.isnan(value)
+    } - {"1"}
