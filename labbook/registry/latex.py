@@ -20,10 +20,10 @@ _LOWERED = str.maketrans("₀₁₂₃₄₅₆₇₈₉", "0123456789")
 def symbol_latex(symbol: str) -> str:
     r"""A symbol as LaTeX: 'θ₀' is \theta_{0}, 'L_tail' has its subscript upright, 'Re' is one italic word.
 
-    Characteristic numbers stand in italics, descriptive subscripts upright (ISO 80000-1:2022, 7.1).
+    Characteristic numbers stand in italics, descriptive subscripts upright (ISO 80000-1, from memory).
     Errors: Refusal for what is not one symbol, such as 'U/(f L_body)'.
     """
-    match = re.fullmatch(r"([^\W\d_]+)([₀-₉]*)(?:_(\w+))?", symbol)
+    match = re.fullmatch(r"([^\W\d_₀-₉]+)([₀-₉]*)(?:_(\w+))?", symbol)
     if match is None:
         raise Refusal("symbol", symbol, "is not one symbol")
     stem, digits, word = match.groups()
@@ -86,15 +86,16 @@ def _power(base, exponent: Fraction) -> str:
     # a word such as EI raised bare would read as E times I squared
     if not isinstance(base, Leaf) or r"\mathit" in inner or r"\cdot" in inner or inner.startswith("-"):
         inner = _round(inner)
-    raised = str(exponent.numerator) if exponent.denominator == 1 else f"{exponent.numerator}/{exponent.denominator}"
-    return f"{inner}^{{{raised}}}"
+    return f"{inner}^{{{exponent}}}"
 
 
 def _product(left, right) -> str:
     if isinstance(left, Leaf) and left.number == -1.0 and not left.key:
         lower = formula_latex(right)
         return f"-{_round(lower) if isinstance(right, Sum) or lower.startswith('-') else lower}"
-    first, second = (_round(formula_latex(n)) if isinstance(n, Sum) else formula_latex(n) for n in (left, right))
+    first, second = (
+        _round(formula_latex(n)) if isinstance(n, Sum) else formula_latex(n) for n in (left, right)
+    )
     if second.startswith("-"):
         second = _round(second)
     return first + (rf" \cdot {second}" if second[0].isdigit() else rf" \, {second}")
