@@ -13,7 +13,7 @@ from labbook.book import preview as previewing
 from labbook.book.asking import Question
 from labbook.book.loading import Loaded, Progress
 from labbook.book.stored_view import KEYS
-from labbook.errors import BookProblem, Refusal
+from labbook.errors import LabbookError
 from labbook.exchange import sheets
 
 DEMO = "demo.db"
@@ -32,7 +32,10 @@ def default_book() -> str:
 
 def current_handle() -> str:
     """Who acts when nobody is named: LABBOOK_BY, else the system user."""
-    return os.environ.get("LABBOOK_BY") or getpass.getuser()
+    try:
+        return os.environ.get("LABBOOK_BY") or getpass.getuser()
+    except (KeyError, OSError, ImportError):
+        return ""  # a user without a name, as in a container: the act then asks for --by
 
 
 def demo_folder() -> Path:
@@ -207,7 +210,7 @@ def make_demo(target: Path, progress: Progress = lambda what, n: None) -> Book:
     try:
         book.load(demo_folder(), by="sable", progress=progress)
         _amend_demo(book)
-    except (Refusal, BookProblem):
+    except LabbookError:
         book.close()
         raise
     book.copy(target)

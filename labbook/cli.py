@@ -2,15 +2,20 @@
 
 import json
 import os
+import subprocess
 import sys
 from pathlib import Path
 
 import click
+import pandas as pd
 
-from labbook.api import DEMO, Book, data_folder, default_book, make_demo
+from labbook.api import DEMO, Book, current_handle, data_folder, default_book, make_demo
 from labbook.book.asking import Question, check_key
+from labbook.book.ledger import amend as amend_run
+from labbook.book.ledger import record
 from labbook.book.queries import key_counts, regime_counts
 from labbook.book.records import KINDS
+from labbook.book.stocking import stock
 from labbook.charts.files import save
 from labbook.charts.trend import trend
 from labbook.errors import LabbookError, Refusal, Unconfirmed
@@ -40,7 +45,7 @@ class _Group(click.Group):
 
 
 @click.group(cls=_Group, context_settings={"help_option_names": ["-h", "--help"]})
-@click.version_option(package_name="labbook")
+@click.version_option(package_name="labbook", prog_name="labbook")
 def main() -> None:
     """The group's bench notebook for artificial swimmers, and its registry of dimensionless numbers."""
 
@@ -114,8 +119,6 @@ def _serve(target: str, port: int, no_browser: bool) -> None:
     os.environ["LABBOOK_OPEN"] = target
     os.environ["PYTHONUNBUFFERED"] = "1"
     if sys.platform == "win32":
-        import subprocess
-
         sys.exit(subprocess.call(command))
     os.execv(sys.executable, command)
 
@@ -157,7 +160,7 @@ def log(book: str, cells: tuple[str, ...], by: str | None, confirm: bool) -> Non
     wanted = _cells(cells)
     who = by or wanted.pop("by", None)
     with Book.open(book) as opened:
-        click.echo(opened.record(by=who, confirm=confirm, **wanted))
+        click.echo(record(opened.engine, wanted, who or current_handle(), confirm=confirm))
 
 
 @main.command()
@@ -170,7 +173,7 @@ def log(book: str, cells: tuple[str, ...], by: str | None, confirm: bool) -> Non
 def amend(book: str, run: str, cells: tuple[str, ...], why: str, by: str | None, confirm: bool) -> None:
     """Change cells of a run; the old values stay in the ledger. An empty value clears a cell."""
     with Book.open(book) as opened:
-        opened.amend(run, why=why, by=by, confirm=confirm, **_cells(cells))
+        amend_run(opened.engine, run, _cells(cells), why, by or current_handle(), confirm=confirm)
     click.echo(f"amended {run}")
 
 
@@ -208,7 +211,7 @@ def _shelf_command(kind: str) -> click.Command:
                 opened.retire(kind, wanted.get("code", ""), why=why or "", by=by, back=back)
                 click.echo(f"{wanted.get('code')} is {'back in use' if back else 'retired'}")
             else:
-                click.echo(opened.stock(kind, by=by, why=why, confirm=confirm, **wanted))
+                click.echo(stock(opened.engine, kind, wanted, by or current_handle(), why=why, confirm=confirm))
 
     command.__doc__ = (
         f"Add a {kind} to the shelf, or amend one with --why. E.g. {example}\n\nColumns: {', '.join(row.columns)}."
@@ -353,8 +356,6 @@ def numbers(book: str | None, form: str) -> None:
     if form == "json":
         click.echo(json.dumps(rows, ensure_ascii=False, indent=1))
     elif form == "csv":
-        import pandas as pd
-
         click.echo(frame_as_csv(pd.DataFrame([{**r, "regimes": "; ".join(r["regimes"])} for r in rows])), nl=False)
     else:
         lines = [["key", "formula", "house dialect", "regimes", "runs"]]
@@ -383,7 +384,10 @@ def draw(book: str, x: str, y: str, output: str, colour: str, bars: str, linear:
                       height=520)  # fmt: skip
         if not drawn.drawn:
             raise Refusal("draw", f"{x} {y}", "no run that was found has both", "look at `labbook runs`")
-        save(drawn.chart, output, caption=f"{question.in_words()}. {drawn.caption} Book: {opened.name}.")
+        try:
+            save(drawn.chart, output, caption=f"{question.in_words()}. {drawn.caption} Book: {opened.name}.")
+        except OSError as error:
+            raise Refusal("output", output, f"cannot be written ({error.strerror})") from None
     click.echo(f"{drawn.drawn} runs drawn into {output}")
     for why, n in drawn.left_out.items():
         click.echo(f"{n} not drawn: {why}")

@@ -74,12 +74,12 @@ def _cause(key, sentences, swimmer) -> str:
     return "the drag model does not reach so stout a tail"
 
 
-def marks_of(stored: str | None, confirmed: str | None) -> dict[str, list[str]]:
-    """Key -> marks of one run; what follows from an extrapolated value is extrapolated too."""
+def marks_of(stored: str | None, confirmed: str | None, values: Mapping) -> dict[str, list[str]]:
+    """Key -> marks of one run; what follows from an extrapolated value is extrapolated too, unless it is absent."""
     marks: dict[str, list[str]] = json.loads(stored) if stored else {}
     beyond = {k for k, m in marks.items() if "extrapolated" in m}
     for key, inputs in {**_FOLLOWS, **{k: n.inputs for k, n in NUMBERS.items()}}.items():
-        if beyond & set(inputs):
+        if beyond & set(inputs) and not _absent(values.get(key)):
             beyond.add(key)
             marks.setdefault(key, []).append("extrapolated")
     for column, _ in json.loads(confirmed) if confirmed else []:

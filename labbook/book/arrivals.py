@@ -11,7 +11,7 @@ from labbook.book.bulk import write_many
 from labbook.book.clock import now
 from labbook.book.derive import BATCH, derive, facts_from
 from labbook.book.drafts import Draft
-from labbook.book.plausibility import enough_runs, run_warnings
+from labbook.book.plausibility import KnownRuns, enough_runs, run_warnings
 from labbook.book.run_rows import stored_rows, write_stored
 from labbook.book.shelf import Item, Shelf, read_shelf
 from labbook.book.stored_view import KEYS
@@ -23,6 +23,8 @@ RUN_COLUMNS = (
     "state", "why", "typed", "confirmed", "logged", "token", "sheet_row",
 )  # fmt: skip
 _REFERS = {"swimmer": swimmer, "fluid": fluid, "rig": rig}
+FEW = 20  # runs that are compared by a query each; more are compared with a swimmer's runs read at once
+LAST_SERIAL = 900_000_000  # the codes that the book gives itself never reach it
 PLACE = {k: 3 * i for i, k in enumerate(KEYS)}
 
 
@@ -61,14 +63,14 @@ def ids_of(connection: Connection, table: Table, codes: Iterable[str]) -> dict[s
     query = select(table.c.code, table.c.id)
     if len(codes) <= 500:
         query = query.where(table.c.code.in_(codes))
-    return {code: id_ for code, id_ in connection.execute(query).tuples() if code in codes}
+    return {code: id_ for code, id_ in connection.execute(query) if code in codes}
 
 
 def unknown(connection: Connection, table: Table, column: str, code: str) -> Refusal:
     """The refusal of a code that the shelf does not hold, naming what it does."""
     known = connection.scalars(select(table.c.code).order_by(table.c.id.desc()).limit(8)).all()
-    remedy = f"the book has {', '.join(known)}" if known else f"add the {column} to the shelf first"
-    return Refusal(column, code, f"no {column} has this code", remedy)
+    remedy = f"the book has {', '.join(known)}" if known else f"add the {table.name} to the shelf first"
+    return Refusal(column, code, f"no {table.name} has this code", remedy)
 
 
 def place_runs(
@@ -99,7 +101,8 @@ def place_runs(
     codes = _codes(connection, fit)
     next_id = (connection.scalar(select(func.max(run.c.id))) or 0) + 1
     enough = enough_runs(connection, (found["swimmer"][a.draft.texts["swimmer"]] for a in fit), next_id)
-    write = _Writer(connection, found, shelf, by, findings, confirm, next_id, enough)
+    known = KnownRuns(connection, next_id) if len(fit) > FEW else None
+    write = _Writer(connection, found, shelf, by, findings, confirm, next_id, enough, known)
     written = []
     for start in range(0, len(fit), BATCH):
         part = fit[start : start + BATCH]
@@ -158,7 +161,9 @@ def _codes(connection, arrivals: list[Arrival]) -> list[str]:
 def serial_of(code: str) -> int | None:
     """The 12 of 'R-0012', None for another code."""
     stem, _, number = code.partition("-")
-    return int(number) if stem == "R" and number.isdecimal() and len(number) < 10 else None
+    if stem != "R" or not number.isdecimal() or len(number) > 9:
+        return None
+    return int(number) if int(number) <= LAST_SERIAL else None
 
 
 @dataclass
@@ -173,6 +178,7 @@ class _Writer:
     confirm: bool
     first_id: int
     enough: set[int]
+    known: KnownRuns | None
     logged: str = field(default_factory=now)
 
     def batch(self, arrivals, ids, codes) -> list[tuple[int, str]]:
@@ -214,7 +220,7 @@ class _Writer:
         for i, (arrival, row) in enumerate(zip(arrivals, rows, strict=True)):
             mine = list(arrival.draft.warned)
             if row[8] == "kept" and row[2] in self.enough:
-                mine += run_warnings(self.connection, row[2], watched(floats[i]), self.first_id)
+                mine += run_warnings(self.connection, row[2], watched(floats[i]), self.first_id, known=self.known)
             if mine:
                 told[i] = json.dumps(mine, ensure_ascii=False)
                 lead = f"{arrival.where}, " if arrival.where else ""

@@ -1,8 +1,16 @@
 """Many rows at once through the driver: the one place that bypasses SQLAlchemy's per-row work."""
 
 from collections.abc import Sequence
+from functools import lru_cache
 
-from sqlalchemy import Connection, Table, insert
+from sqlalchemy import Connection, Dialect, Table, insert
+
+
+@lru_cache(maxsize=32)
+def _statement(table: Table, columns: tuple[str, ...], dialect: Dialect) -> str:
+    # compiling a statement of 150 columns takes as long as all the rest of logging a run
+    statement = insert(table).values({c: None for c in columns})
+    return str(statement.compile(dialect=dialect, column_keys=list(columns)))
 
 
 def write_many(connection: Connection, table: Table, columns: Sequence[str], rows: Sequence[Sequence]) -> None:
@@ -10,8 +18,7 @@ def write_many(connection: Connection, table: Table, columns: Sequence[str], row
     if not rows:
         return
     dialect = connection.dialect
-    statement = insert(table).values({c: None for c in columns})
-    compiled = str(statement.compile(dialect=dialect, column_keys=list(columns)))
+    compiled = _statement(table, tuple(columns), dialect)
     order = [c.name for c in table.columns if c.name in columns]
     if dialect.positional:
         if order != list(columns):

@@ -54,7 +54,7 @@ def _batch(connection, rows) -> list[str]:
     held = [(i, h) for i, h in enumerate(have) if h is not None]
     if not held:
         return found
-    floats = np.array([h[first:] for _, h in held], dtype=float)
+    floats = _floats([h[first:] for _, h in held])
     texts = [_told(h) for _, h in held]
     told = digests([h[0] for _, h in held], floats, texts)
     fresh = derived.floats[[i for i, _ in held]]
@@ -68,11 +68,20 @@ def _batch(connection, rows) -> list[str]:
             found.append(f"{code}: a stored number was changed by hand{where}")
         elif differs[j].any():
             found.append(f"{code}: {_frame_name(int(differs[j].argmax()))} is stale, deriving it again differs")
-        elif (row[1], row[2], row[3], row[4]) != (rows[i][5], rows[i][8], rows[i][2], rows[i][3]):
-            found.append(f"{code}: the stored view holds another time, state, swimmer or fluid than the run")
+        elif tuple(row[1:6]) != (*(rows[i][n] for n in (5, 8, 2, 3)), int(derived.material[i]) or None):
+            found.append(f"{code}: the stored view holds another time, state, swimmer, fluid or material than the run")
         elif tuple(row[1 + len(COPIED) : 1 + len(COPIED) + len(SENTENCES)]) != said:
             found.append(f"{code}: what it was resolved from is stale")
+        elif row[place - 1] != derived.marks[i]:
+            found.append(f"{code}: its marks are stale")
     return found
+
+
+def _floats(rows) -> np.ndarray:
+    try:
+        return np.array(rows, dtype=float)
+    except (TypeError, ValueError):  # SQLite keeps a text that was put there by hand
+        return np.array([[v if isinstance(v, int | float) else np.nan for v in row] for row in rows], dtype=float)
 
 
 def _told(row) -> tuple:

@@ -4,6 +4,9 @@ from datetime import UTC, date, datetime
 
 from labbook.errors import Refusal
 
+# nobody logs beyond them, and within them a time can be shown in any zone
+FIRST_YEAR, LAST_YEAR = "1000", "9000"
+
 
 def now() -> str:
     """This moment, as stored."""
@@ -12,17 +15,20 @@ def now() -> str:
 
 def stored(moment: datetime) -> str:
     """A datetime as stored; one without offset is local time."""
-    return moment.astimezone(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
+    return moment.astimezone(UTC).replace(tzinfo=None).isoformat(timespec="seconds") + "Z"
 
 
 def read_moment(field: str, text: str) -> str:
     """An ISO 8601 date and time as stored; Refusal for anything else."""
     try:
-        return stored(datetime.fromisoformat(text.strip()))
+        moment = stored(datetime.fromisoformat(text.strip()))
     except ValueError:
         raise Refusal(field, text, "is not a date and time", "write e.g. 2026-03-01T14:32") from None
     except OverflowError:
-        raise Refusal(field, text, "lies outside the calendar", "write e.g. 2026-03-01T14:32") from None
+        moment = ""
+    if not FIRST_YEAR <= moment[:4] < LAST_YEAR:
+        raise Refusal(field, text, "lies outside the calendar", "write e.g. 2026-03-01T14:32")
+    return moment
 
 
 def read_date(field: str, text: str) -> str:

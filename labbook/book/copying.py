@@ -2,6 +2,7 @@
 
 import os
 import sqlite3
+from contextlib import closing
 from pathlib import Path
 
 from sqlalchemy import Engine
@@ -19,15 +20,12 @@ def copy(engine: Engine, target: str | Path) -> None:
     if not path.absolute().parent.is_dir():
         raise BookProblem(f"{path.absolute().parent} is no folder: make it first.")
     part = path.with_name(path.name + ".part")
-    source = sqlite3.connect(engine.url.database)
     try:
-        with sqlite3.connect(part) as destination:
-            source.backup(destination, pages=4096)
+        with closing(sqlite3.connect(engine.url.database)) as source, closing(sqlite3.connect(part)) as destination:
+            source.backup(destination)  # in one step: between steps a writer would make it begin again
             destination.execute("PRAGMA journal_mode=WAL")
-        destination.close()
         os.replace(part, path)
     except (sqlite3.Error, OSError) as error:
-        part.unlink(missing_ok=True)
+        for name in (part, Path(f"{part}-wal"), Path(f"{part}-shm")):
+            name.unlink(missing_ok=True)
         raise BookProblem(f"{path} could not be written: {error}.") from error
-    finally:
-        source.close()

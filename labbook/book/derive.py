@@ -103,7 +103,7 @@ def derive(facts: RunFacts, shelf: Shelf) -> Derived:
                 _fill(floats, block, _spread(block, group, facts, shelf, values, u, batch, swimmers, rigs))
     material = swimmers.pick(slice(None), lambda s: (s.texts["material_id"] or 0, 0.0))[0].astype(np.int64)
     sentences = {f"{k}_from": batch[k].said for k in ("mu", "rho", "lam", "E")}
-    return Derived(floats, sentences, _marks(facts, batch), material)
+    return Derived(floats, sentences, _marks(facts, shelf, batch), material)
 
 
 ABSENT = (np.nan, 0.0)
@@ -137,7 +137,7 @@ def _rig_uncertainties(facts, shelf, values, u) -> None:
             u[key][rows] = stated[2] * size
             if key == "T":
                 rows = here & facts.digits["T_end"]
-                u["T_end"][rows] = stated[2]
+                u["T_end"][rows] = stated[2] * (values["T_end"][rows] if stated[4] == "relative" else 1.0)
 
 
 def _mean_temperature(values, u) -> None:
@@ -346,10 +346,13 @@ def _fill(floats, block, spread) -> None:
     floats[block] = columns.T
 
 
-def _marks(facts, batch) -> list[str]:
+def _marks(facts, shelf, batch) -> list[str]:
     """One small JSON text a run: key to list of marks."""
     flags = [("mu", batch["mu"].beyond, "extrapolated"), ("rho", batch["rho"].beyond, "extrapolated")]
-    flags += [(k, facts.digits[k], "from digits") for k in RUN_KEYS]
+    by_rig = {k: [i for i, rig in shelf.rigs.items() if f"u_{k}" in rig.typed] for k in STATED_BY_RIG}
+    for key in RUN_KEYS:
+        digits = facts.digits[key]
+        flags.append((key, digits & ~np.isin(facts.rig, by_rig[key]) if by_rig.get(key) else digits, "from digits"))
     codes = sum(array.astype(np.int64) << i for i, (_, array, _) in enumerate(flags))
     unique, which = np.unique(codes, return_inverse=True)
     texts = [json.dumps({k: [m] for i, (k, _, m) in enumerate(flags) if code >> i & 1}) for code in unique]

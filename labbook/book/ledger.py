@@ -7,7 +7,7 @@ from datetime import UTC, datetime, timedelta
 from sqlalchemy import Connection, Engine, select, update
 
 from labbook.book import chain
-from labbook.book.arrivals import Arrival, Findings, ids_of, place_runs, unknown, watched
+from labbook.book.arrivals import Arrival, Findings, default_drive, ids_of, place_runs, unknown, watched
 from labbook.book.clock import now
 from labbook.book.derive import derive
 from labbook.book.drafts import Draft, all_of, read_draft, whole
@@ -15,7 +15,7 @@ from labbook.book.opening import writing
 from labbook.book.plausibility import run_warnings
 from labbook.book.records import KINDS
 from labbook.book.run_rows import derive_again, facts_of, shelf_for
-from labbook.book.shelf import document
+from labbook.book.shelf import document, read_shelf
 from labbook.book.tables import fluid, reading, rig, run, swimmer
 from labbook.errors import Refusal, Unconfirmed
 from labbook.registry.typed import Typed, printed
@@ -111,22 +111,21 @@ def amend(
         row = run_row(connection, code)
         before = cells_of(connection, row)
         wanted = {**before, **{k: (str(v).strip() if v is not None else "") for k, v in changes.items()}}
-        if wanted.get("state") == "kept" and row["state"] == "void":
-            wanted["why"] = ""
+        _fill_in(connection, row, wanted, why)
         draft = whole(read_draft("run", wanted))
         after = draft.content()
         touched = [k for k in {**before, **after} if before.get(k) != after.get(k)]
         if not touched:
             raise Refusal("amend", code, "nothing would change", "type a value that differs")
         old = document(row["typed"])
-        typed = {k: (t.row() if k in touched or k not in old else old[k]) for k, t in draft.typed.items()}
+        typed = {k: (t if k in touched or k not in old else old[k]) for k, t in draft.typed.items()}
         warned = [(c, s) for c, s in draft.warned if c in touched]
         values = _columns(connection, draft, typed)
         warned += _warned_again(connection, row, values, touched)
-        findings = Findings(warned=warned)
-        settle(findings, confirm)
-        if warned:
-            values["confirmed"] = json.dumps(warned, ensure_ascii=False)
+        settle(Findings(warned=warned), confirm)
+        # a confirmation belongs to the cell that was confirmed, and goes with it
+        warned = [w for w in json.loads(row["confirmed"] or "[]") if w[0] not in touched] + warned
+        values["confirmed"] = json.dumps(warned, ensure_ascii=False) if warned else None
         connection.execute(update(run).where(run.c.id == row["id"]).values(**values))
         changed = derive_again(connection, run.c.id == row["id"])
         chain.append(
@@ -134,6 +133,20 @@ def amend(
             before={k: before.get(k) for k in touched}, after={k: after.get(k) for k in touched}, why=why,
             runs=changed or [(row["id"], code)],
         )  # fmt: skip
+
+
+def _fill_in(connection, row, wanted: dict[str, str], why: str) -> None:
+    """What an amended run cannot be without: who, a drive, a state; and a void run says why."""
+    if not wanted["by"]:
+        raise Refusal("by", None, "is missing: a run was made by somebody")
+    if not wanted["drive"]:
+        of = read_shelf(connection, [row["swimmer_id"]], (), ()).swimmers[row["swimmer_id"]]
+        wanted["drive"] = default_drive(of)
+    wanted["state"] = wanted["state"] or "kept"
+    if wanted["state"] == "kept":
+        wanted["why"] = ""
+    elif not wanted.get("why"):
+        wanted["why"] = why
 
 
 def _columns(connection, draft: Draft, typed) -> dict:

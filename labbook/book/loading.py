@@ -2,7 +2,7 @@
 
 from collections import Counter
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from sqlalchemy import Connection, Engine, select
 
@@ -77,6 +77,7 @@ def load(
         if not findings.refused:
             for condition in touched:
                 again += derive_again(connection, condition)
+            again = sorted(set(again))
         arrivals = _arrivals(connection, kinds["run"], findings)
         known += len(kinds["run"]) - len(arrivals)
         progress("runs known already", len(kinds["run"]) - len(arrivals))
@@ -102,6 +103,8 @@ def _fresh_shelf(connection, name, rows: list[SheetRow], findings: Findings) -> 
     stored = {r["code"]: r for r in connection.execute(select(table)).mappings()}
     for row in _parents_first(rows) if name == "swimmer" else rows:
         code = row.draft.texts.get("code", "")
+        if not code:  # refused when the sheet was read
+            continue
         if code in here:
             findings.refuse(row.where, Refusal("code", code, f"stands twice, first in {here[code]}"))
             continue
@@ -110,8 +113,12 @@ def _fresh_shelf(connection, name, rows: list[SheetRow], findings: Findings) -> 
             before, _ = read_draft(name, stocked_cells(connection, name, stored[code]))
             _refuse_difference(before.content(), row, code, findings)
             continue
+        draft = row.draft
+        if findings.refused:
+            # put all the same, so that rows which name it are not refused too: nothing of it will stay
+            draft = replace(draft, texts={"kind": "", "form": "", **draft.texts})
         try:
-            put(connection, name, row.draft)
+            put(connection, name, draft)
         except Refusal as refusal:
             findings.refuse(row.where, refusal)
             continue
@@ -129,7 +136,8 @@ def _parents_first(rows: list[SheetRow]) -> list[SheetRow]:
         ready = ready or waiting  # a circle: let the reference check name it
         ordered += ready
         placed |= {r.draft.texts.get("code") for r in ready}
-        waiting = [r for r in waiting if r not in ready]
+        done = {id(r) for r in ready}
+        waiting = [r for r in waiting if id(r) not in done]
     return ordered
 
 
@@ -166,9 +174,9 @@ def _readings(connection: Connection, rows: list[SheetRow], findings: Findings):
         batch = batches.of(row.draft, row.where, findings)
         if batch is None or "value" not in row.draft.typed:
             continue
-        batches.watch(batch, row.draft, row.where, findings)
-        findings.warned += [(c, f"{row.where}, {s}") for c, s in row.draft.warned]
         if not findings.refused:
+            batches.watch(batch, row.draft, row.where, findings)
+            findings.warned += [(c, f"{row.where}, {s}") for c, s in row.draft.warned]
             write_reading(connection, row.draft, batch, sheet_row)
         targets[tuple(batch.target().items())] = uses(**batch.target())
         added += 1

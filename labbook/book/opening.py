@@ -9,7 +9,7 @@ from alembic import command
 from alembic.config import Config
 from alembic.runtime.migration import MigrationContext
 from alembic.script import ScriptDirectory
-from sqlalchemy import Connection, Engine, create_engine, event, insert, inspect
+from sqlalchemy import URL, Connection, Engine, create_engine, event, insert, inspect
 from sqlalchemy.engine import make_url
 from sqlalchemy.exc import ArgumentError, DatabaseError, OperationalError
 from sqlalchemy.pool import NullPool
@@ -49,14 +49,11 @@ def newest_revision() -> str:
 
 def engine_for(target: str | Path) -> Engine:
     """An engine on a file path or database URL, with the settings that a shared book needs."""
-    text = str(target)
-    try:
-        url = make_url(text) if is_url(text) else make_url(f"sqlite:///{Path(text).absolute()}")
-    except ArgumentError:
-        raise BookProblem(f"{text!r} is neither a file nor a database URL.") from None
-    if url.get_backend_name() != "sqlite":
-        return create_engine(url, pool_pre_ping=True)
-    _refuse_network_disk(Path(url.database))
+    path = file_of(target)
+    if path is None:
+        return _server_engine(str(target))
+    url = URL.create("sqlite", database=str(path.absolute()))
+    _refuse_network_disk(path)
     engine = create_engine(url, poolclass=NullPool, connect_args={"timeout": BUSY_SECONDS})
 
     @event.listens_for(engine, "connect")
@@ -73,6 +70,28 @@ def engine_for(target: str | Path) -> Engine:
         connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
 
     return engine
+
+
+def _server_engine(text: str) -> Engine:
+    try:
+        return create_engine(make_url(text), pool_pre_ping=True)
+    except ArgumentError:
+        raise BookProblem(f"{text!r} is neither a file nor a database URL that labbook knows.") from None
+    except ImportError as error:
+        raise BookProblem(f"{text!r} needs the Python package {error.name}: install it.") from None
+
+
+def file_of(target: str | Path) -> Path | None:
+    """The file of a path or sqlite URL, None where the URL names a server."""
+    text = str(target)
+    if not is_url(text):
+        return Path(text)
+    if text.partition(":")[0].partition("+")[0] != "sqlite":
+        return None
+    database = make_url(text).database
+    if not database or database == ":memory:":
+        raise BookProblem(f"{text!r} names no file, and a book must last: give a path.")
+    return Path(database)
 
 
 def _refuse_network_disk(path: Path) -> None:
@@ -130,19 +149,18 @@ def _problem(text: str, name: str) -> str | None:
         "not a database": "is not a book.",
         "malformed": "is damaged: restore a copy made with `labbook copy`.",
         "unable to open": "cannot be opened: look at the path and its permissions.",
+        "disk I/O error": "cannot be read or written, the disk reports an error: nothing was changed.",
+        "refused": "cannot be reached: is the database server running, and is the URL right?",
     }
     return next((f"{name} {tail}" for key, tail in said.items() if key in text), None)
 
 
 def create(target: str | Path) -> Engine:
     """Make an empty book at a new file or in an empty database; BookProblem where something stands."""
-    if not is_url(str(target)):
-        path = Path(target)
-        if path.exists():
-            raise BookProblem(f"{path} exists already: open it, or choose another name.")
-        if not path.absolute().parent.is_dir():
-            raise BookProblem(f"{path.absolute().parent} is no folder: make it first.")
+    path = file_of(target)
     engine = engine_for(target)
+    if path is not None:
+        _claim(path)
     try:
         with _said_plainly(engine):
             if engine.dialect.name == "sqlite":
@@ -152,28 +170,37 @@ def create(target: str | Path) -> Engine:
                 if inspect(connection).get_table_names():
                     raise BookProblem(f"{engine.url.database} is not empty: open it, or choose another.")
                 connection.rollback()
-                command.upgrade(_config(connection), "head")
+                command.upgrade(_config(connection.execution_options(writes=True)), "head")
             with writing(engine) as connection:
                 stored_view.build(connection)
                 fingerprint = stored_view.registry_fingerprint()
                 connection.execute(insert(book).values(made=now(), registry=fingerprint))
     except BaseException:
         engine.dispose()
+        if path is not None:  # ours since _claim, and no book yet
+            for name in (path, Path(f"{path}-wal"), Path(f"{path}-shm")):
+                name.unlink(missing_ok=True)
         raise
     return engine
 
 
+def _claim(path: Path) -> None:
+    """Make the empty file, so that nobody else makes a book there; BookProblem where that cannot be."""
+    try:
+        path.open("xb").close()
+    except FileExistsError:
+        raise BookProblem(f"{path} exists already: open it, or choose another name.") from None
+    except (FileNotFoundError, NotADirectoryError):
+        raise BookProblem(f"{path.absolute().parent} is no folder: make it first.") from None
+    except OSError as error:
+        raise BookProblem(f"{path} cannot be made: {error.strerror}.") from None
+
+
 def open_existing(target: str | Path) -> Engine:
     """Open a book, migrating an older one; BookProblem where it is missing, foreign or newer."""
-    if not is_url(str(target)):
-        path = Path(target)
-        if not path.exists():
-            raise BookProblem(f"{path} does not exist: make it with `labbook new {path}`.")
-        if path.is_dir():
-            raise BookProblem(f"{path} is a folder, not a book.")
-        with path.open("rb") as file:
-            if file.read(16) != b"SQLite format 3\0":
-                raise BookProblem(f"{path} is not a book.")
+    path = file_of(target)
+    if path is not None:
+        _look_at(path)
     engine = engine_for(target)
     try:
         with _said_plainly(engine), engine.connect() as connection:
@@ -183,11 +210,25 @@ def open_existing(target: str | Path) -> Engine:
             revision = MigrationContext.configure(connection).get_current_revision()
             connection.rollback()
             if revision != newest_revision():
-                _migrate(connection, revision, engine.url.database)
+                _migrate(connection.execution_options(writes=True), revision, engine.url.database)
     except BaseException:
         engine.dispose()
         raise
     return engine
+
+
+def _look_at(path: Path) -> None:
+    """BookProblem where a path holds no SQLite file."""
+    try:
+        with path.open("rb") as file:
+            if file.read(16) != b"SQLite format 3\0":
+                raise BookProblem(f"{path} is not a book.")
+    except FileNotFoundError:
+        raise BookProblem(f"{path} does not exist: make it with `labbook new {path}`.") from None
+    except IsADirectoryError:
+        raise BookProblem(f"{path} is a folder, not a book.") from None
+    except OSError as error:
+        raise BookProblem(f"{path} cannot be opened: {error.strerror}.") from None
 
 
 def _migrate(connection: Connection, revision: str, name: str) -> None:

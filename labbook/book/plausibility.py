@@ -32,36 +32,62 @@ def _mine(swimmer_id: int, before: int):
     return resolved.c.swimmer_id == swimmer_id, resolved.c.state == "kept", resolved.c.run_id < before
 
 
+class KnownRuns:
+    """Each swimmer's kept runs with ids below `before`, read once: for a sheet, where a query a row would take long."""
+
+    def __init__(self, connection: Connection, before: int):
+        self.connection, self.before = connection, before
+        self._columns: dict[int, np.ndarray] = {}
+
+    def span(self, swimmer_id: int, key: str, Sp: float | None = None) -> tuple[float, float] | None:
+        """As _span: smallest and largest positive value, among the runs of similar Sp where Sp is given."""
+        if swimmer_id not in self._columns:
+            query = select(resolved.c.Sp, resolved.c.Re, resolved.c.U_cap)
+            rows = self.connection.execute(query.where(*_mine(swimmer_id, self.before))).fetchall()
+            read = np.array([tuple(r) for r in rows], dtype=float).reshape(-1, 3).T
+            self._columns[swimmer_id] = read[:, np.argsort(read[0])]  # by Sp, absent last
+        columns = self._columns[swimmer_id]
+        values = columns[("Sp", "Re", "U").index(key)]
+        if Sp is not None:
+            first = np.searchsorted(columns[0], Sp / SIMILAR_SP, "left")
+            values = values[first : np.searchsorted(columns[0], Sp * SIMILAR_SP, "right")]
+        values = values[values > 0]
+        return (float(values.min()), float(values.max())) if len(values) >= ENOUGH else None
+
+
 def run_warnings(
-    connection: Connection, swimmer_id: int, values: dict, before: int, leave_out: int = 0
-) -> list[tuple[str, str]]:
+    connection: Connection, swimmer_id: int, values: dict, before: int, leave_out: int = 0,
+    known: KnownRuns | None = None,
+) -> list[tuple[str, str]]:  # fmt: skip
     """(column, sentence) where Sp, Re or U lies far outside this swimmer's kept runs.
 
     values: Sp, Re, U, u_U of the new run in SI, NaN where absent; before: only runs with lower ids count;
-    leave_out: the id of the run that is being amended.
+    leave_out: the id of the run that is being amended; known: the swimmer's runs if they are read already.
     """
     mine = (*_mine(swimmer_id, before), resolved.c.run_id != leave_out)
     found = []
     moving = abs(values["U"]) > 2 * values["u_U"] if np.isfinite(values["U"]) else False
     for key, field in (("Sp", "f"), ("Re", "U")):
-        column = resolved.c[key]
-        span = _span(connection, column, *mine)
+        span = known.span(swimmer_id, key) if known else _span(connection, resolved.c[key], *mine)
         found += _outside(key, field, values[key], span, moving or key == "Sp", written)
     Sp = values["Sp"]
     if np.isfinite(Sp) and np.isfinite(values["U"]):
         similar = resolved.c.Sp.between(Sp / SIMILAR_SP, Sp * SIMILAR_SP)
-        span = _span(connection, resolved.c.U_cap, *mine, similar)
+        span = (
+            known.span(swimmer_id, "U", Sp) if known else _span(connection, resolved.c.U_cap, *mine, similar)
+        )
         found += _outside("U", "U", values["U"], span, moving, lambda v: shown("U", v))
     return found
 
 
 def _span(connection, column, *where) -> tuple[float, float] | None:
     """Smallest and largest size of the positive values, None where fewer than ENOUGH are there."""
-    query = select(func.min(column), func.max(column)).where(*where, column > 0)
+    # asked one by one, each is the first entry of an index; together they would read all of it
+    low, high = (select(f(column)).where(*where, column > 0).scalar_subquery() for f in (func.min, func.max))
     some = select(column).where(*where, column > 0).limit(ENOUGH).subquery()
     if connection.scalar(select(func.count()).select_from(some)) < ENOUGH:
         return None
-    return tuple(connection.execute(query).one())
+    return tuple(connection.execute(select(low, high)).one())
 
 
 def _outside(key, field, value, span, checks_low, say):
@@ -91,7 +117,8 @@ def reading_warning(item: Item, new: Reading) -> tuple[str, str] | None:
     if not sets:
         return None
     last = sets[-1]
-    before = _last_value(replace(item, readings=last.readings), new)
+    of_density = () if new.key == "rho" else tuple(r for r in item.readings if r.key == "rho")
+    before = _last_value(replace(item, readings=(*last.readings, *of_density)), new)
     if before is None or not np.isfinite(before) or before <= 0:
         return None
     ratio = new.value / before
@@ -112,8 +139,11 @@ def _last_value(item: Item, new: Reading) -> float | None:
     rho = resolve.density(item, day, T, np.zeros(1))
     if new.key == "rho":
         return float(rho.value[0])
+    viscous = [r for r in item.readings if r.key != "rho"]
+    if new.key == "nu" and all(r.key == "nu" for r in viscous):
+        rho = resolve.Resolved(np.ones(1))  # nu against nu needs no density
     if "constant" in (found := resolve.viscosity(item, day, T, np.zeros(1), rho)).said[0]:
-        if min(abs(r.T - new.T) for r in item.readings) > SAME_T:
+        if min(abs(r.T - new.T) for r in viscous) > SAME_T:
             return None
     mu = float(found.value[0])
     return mu if new.key == "mu" else mu / float(rho.value[0])

@@ -68,7 +68,7 @@ def preview(connection: Connection, cells: Mapping[str, str]) -> Preview:
         warned += run_warnings(connection, ids["swimmer"], watched(row), 2**62)
     return Preview(
         values, u, {k: s for k, s in said.items() if not s.startswith("absent")}, regimes_of(values),
-        why_absent(values, said, of.code, drive), marks_of(derived.marks[0], None), refused, warned,
+        why_absent(values, said, of.code, drive), marks_of(derived.marks[0], None, values), refused, warned,
     )  # fmt: skip
 
 

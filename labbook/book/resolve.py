@@ -1,6 +1,7 @@
 """What a run's fluid and material were on its day: viscosity, density, relaxation time, modulus, and from what."""
 
 from dataclasses import dataclass, field
+from datetime import date
 from functools import partial
 
 import numpy as np
@@ -117,7 +118,7 @@ def _along(function, T, u_T, item: Item, composition: str | None):
 
 
 def _composition_slope(function, w, u_w, T):
-    """Slope over the composition: complex step inside, one-sided over u(w) at the ends, where it is singular."""
+    """Slope over the composition across w +- u(w), one-sided at the ends, where the derivative is singular."""
     if 0.0 < w < 1.0:
         low, high = max(0.0, w - u_w), min(1.0, w + u_w)
     else:
@@ -150,7 +151,7 @@ def viscosity(item: Item, days: np.ndarray, T: np.ndarray, u_T: np.ndarray, rho:
 
 def _viscosity_from_set(item, group, rows, T, u_T, rho, result) -> None:
     kinematic = all(r.key == "nu" for r in group.readings)
-    entries = group.readings if kinematic else [_as_dynamic(item, r) for r in group.readings]
+    entries = group.readings if kinematic else [_as_dynamic(item, r, group.on) for r in group.readings]
     if any(r is None for r in entries):
         result.said[rows] = f"absent: a nu reading of {item.code} needs a density to become mu"
         return
@@ -188,15 +189,18 @@ def _viscosity_from_set(item, group, rows, T, u_T, rho, result) -> None:
     parts = {"T": slope * u_T[rows], "mu_readings": u}
     if kinematic:
         value, parts = _times_density(value, parts, rows, rho)
-    result.put(rows, value, parts, said, beyond)
+    lacking = "needs a density to become mu" if kinematic else "gives no value at this T"
+    said = np.where(np.isnan(value), f"absent: the {'nu' if kinematic else 'mu'} of {item.code} {lacking}", said)
+    result.put(rows, value, parts, said.astype(object), beyond)
 
 
-def _as_dynamic(item: Item, reading):
-    """A reading of mu as it is; one of nu times the density at its own temperature; None without density."""
+def _as_dynamic(item: Item, reading, on: str | None):
+    """A reading of mu as it is; one of nu times the density at its own T and day; None without density."""
     if reading.key == "mu":
         return reading
     at = np.array([reading.T])
-    rho = density(item, np.array([0]), at, np.zeros(1)).value[0]
+    day = date.fromisoformat(on).toordinal() if on else 0
+    rho = density(item, np.array([day]), at, np.zeros(1)).value[0]
     if not np.isfinite(rho):
         return None
     return type(reading)(

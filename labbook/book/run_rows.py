@@ -87,4 +87,4 @@ def derive_again(
 
 def _digests_between(connection, first, last) -> dict[int, str]:
     query = select(resolved.c.run_id, resolved.c.digest).where(resolved.c.run_id.between(first, last))
-    return dict(connection.execute(query).tuples().all())
+    return dict(connection.execute(query).all())

@@ -93,7 +93,7 @@ def sheet_from(row: dict, logged: str | None = None) -> RunSheet:
         texts, row["typed"], values, u["u_"], u["u_own_"], u["u_shared_"],
         {s: text for s, text in said.items() if text and not text.startswith("absent")},
         regimes_of(values), why_absent(values, said, texts["swimmer"] or "", texts["drive"] or ""),
-        marks_of(row["marks"], row["confirmed"]), logged,
+        marks_of(row["marks"], row["confirmed"], values), logged,
     )  # fmt: skip
 
 

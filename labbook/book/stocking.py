@@ -33,6 +33,8 @@ def stock(
     """
     by = handle(by)
     why = reason(why) if why is not None else None
+    if name != "reading":
+        on_shelf(name)
     with writing(engine) as connection:
         if name == "reading":
             return _one_reading(connection, whole(read_draft(name, cells)), by, confirm)
@@ -44,6 +46,13 @@ def stock(
             chain.append(connection, by, "add", name, draft.texts["code"], after=draft.content())
             return draft.texts["code"]
         return _amended(connection, name, row, cells, by, why, confirm)
+
+
+def on_shelf(name: str) -> str:
+    """The name of a kind that has codes on the shelf; Refusal for another."""
+    if name not in SHELF:
+        raise Refusal("kind", name, "does not stand on the shelf", f"one of {', '.join(SHELF)}")
+    return name
 
 
 def _row(connection: Connection, name: str, code: str):
@@ -100,7 +109,7 @@ def _amended(connection, name, row, cells, by, why, confirm) -> str:
     settle(Findings(warned=[(c, s) for c, s in draft.warned if c in touched]), confirm)
     old = document(row["typed"])
     put(connection, name, draft, row["id"])
-    typed = {k: (old[k] if k in old and k not in touched else t.row()) for k, t in draft.typed.items()}
+    typed = {k: (old[k] if k in old and k not in touched else t) for k, t in draft.typed.items()}
     connection.execute(update(SHELF[name]).where(SHELF[name].c.id == row["id"]).values(typed=typed))
     changed = derive_again(connection, _users(name, row["id"]))
     chain.append(
@@ -123,7 +132,7 @@ def _users(name: str, row_id: int):
 
 def retire(engine: Engine, name: str, code: str, why: str, by: str, *, back: bool = False) -> None:
     """Retire a fluid, material, swimmer or rig (kept, no longer offered first), or take it back."""
-    by, why = handle(by), reason(why)
+    by, why, name = handle(by), reason(why), on_shelf(name)
     with writing(engine) as connection:
         row = _row(connection, name, code)
         if row is None:

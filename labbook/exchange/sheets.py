@@ -7,11 +7,12 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from datetime import date, datetime, time
 from pathlib import Path
+from zipfile import BadZipFile
 
 import openpyxl
 from openpyxl.utils.exceptions import InvalidFileException
 
-from labbook.book.drafts import read_draft
+from labbook.book.drafts import DraftReader
 from labbook.book.loading import SheetRow
 from labbook.book.records import KINDS, LOADING_ORDER, SHEETS, kind
 from labbook.book.arrivals import placed
@@ -36,7 +37,11 @@ def read_tables(path: str | Path) -> list[Table]:
     """The sheets of a folder, a workbook or one CSV file, in the order in which they must be loaded."""
     path = Path(path)
     if path.is_dir():
-        files = {p.stem: p for p in sorted(path.iterdir()) if p.suffix.lower() == ".csv" and p.stem in SHEETS}
+        files = {
+            p.stem.lower(): p
+            for p in sorted(path.iterdir())
+            if p.suffix.lower() == ".csv" and p.stem.lower() in SHEETS
+        }
         if not files:
             raise Refusal("sheet", path.name, "this folder holds no sheet", f"name them {', '.join(SHEETS)}.csv")
         tables = [_read_csv(p, SHEETS[stem]) for stem, p in files.items()]
@@ -78,7 +83,7 @@ def table_from_text(text: str, name: str, kind_name: str | None = None) -> Table
 
 
 def _kind_of(name: str, header: list[str]) -> str:
-    stem = Path(name).stem
+    stem = Path(name).stem.lower()
     if stem in SHEETS:
         return SHEETS[stem]
     columns = {m[1] for cell in header if (m := _HEADER.fullmatch(cell))}
@@ -93,26 +98,24 @@ def _kind_of(name: str, header: list[str]) -> str:
 def _read_workbook(path: Path) -> list[Table]:
     try:
         book = openpyxl.load_workbook(path, read_only=True, data_only=True)
-    except (InvalidFileException, KeyError, ValueError, OSError, EOFError) as error:
+        tables = [table for sheet in book.worksheets for table in _workbook_table(path.name, sheet)]
+    # BadZipFile has no base of its own, and XML faults are SyntaxErrors
+    except (InvalidFileException, BadZipFile, KeyError, ValueError, OSError, EOFError, SyntaxError) as error:
         raise Refusal("sheet", path.name, f"is not a workbook that can be read ({error})") from None
-    except Exception as error:  # zip and XML faults have no common base
-        if type(error).__module__.startswith(("zipfile", "xml", "lxml")):
-            raise Refusal("sheet", path.name, "is not a workbook that can be read") from None
-        raise
-    tables = []
-    for sheet in book.worksheets:
-        if sheet.title not in SHEETS:
-            continue
-        lines = [
-            (n, [_cell(c) for c in row]) for n, row in enumerate(sheet.iter_rows(values_only=True), start=1)
-        ]
-        lines = [(n, cells) for n, cells in lines if any(cells)]
-        if lines:
-            tables.append(Table(SHEETS[sheet.title], f"{path.name} {sheet.title}", lines[0][1], lines[1:]))
     book.close()
     if not tables:
         raise Refusal("sheet", path.name, "holds no sheet of a known name", f"name them {', '.join(SHEETS)}")
     return tables
+
+
+def _workbook_table(name: str, sheet) -> Iterator[Table]:
+    kind_name = SHEETS.get(sheet.title.strip().lower())
+    if kind_name is None:
+        return
+    lines = [(n, [_cell(c) for c in row]) for n, row in enumerate(sheet.iter_rows(values_only=True), start=1)]
+    lines = [(n, cells) for n, cells in lines if any(cells)]
+    if lines:
+        yield Table(kind_name, f"{name} {sheet.title}", lines[0][1], lines[1:])
 
 
 def _cell(value) -> str:
@@ -139,14 +142,13 @@ def read_rows(
         except Refusal as refusal:
             refused.append(placed(table.name, refusal))
             continue
+        reader = DraftReader(table.kind, columns, units, table.decimal_comma)
         for count, (line, cells) in enumerate(table.rows, start=1):
             where = f"{table.name} line {line}"
             if len(cells) > len(columns) and any(c.strip() for c in cells[len(columns) :]):
                 refused.append(Refusal(where, None, f"has {len(cells)} cells for {len(columns)} columns"))
                 continue
-            draft, findings = read_draft(
-                table.kind, dict(zip(columns, cells, strict=False)), units, table.decimal_comma
-            )
+            draft, findings = reader.read(cells)
             refused += [placed(where, r) for r in findings]
             rows.append(SheetRow(draft, where))
             if count % 1000 == 0:

@@ -135,6 +135,8 @@ def upgrade() -> None:
 
 
 def downgrade() -> None:
+    # the stored view is no fact, but it refers to the runs
+    op.execute("DROP TABLE IF EXISTS resolved")
     # SQLite and PostgreSQL drop a table's triggers with it
     for table in ("ledger_run", "ledger", "run", "reading", "rig", "swimmer", "fluid", "material", "book"):
         op.drop_table(table)
