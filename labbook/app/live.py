@@ -6,8 +6,8 @@ import streamlit as st
 
 from labbook.app import session
 from labbook.book.asking import Question
-from labbook.book.preview import Preview
 from labbook.book.bench_queries import siblings
+from labbook.book.preview import Preview
 from labbook.charts.strips import strips
 from labbook.charts.trend import trend
 from labbook.registry.written import written

@@ -9,9 +9,10 @@ from sqlalchemy import Connection, Table, func, select
 
 from labbook.book.bulk import write_many
 from labbook.book.clock import now
-from labbook.book.derive import BATCH, derive, facts_from
+from labbook.book.derive import BATCH, derive
 from labbook.book.drafts import Draft
 from labbook.book.plausibility import KnownRuns, enough_runs, run_warnings
+from labbook.book.run_facts import facts_from
 from labbook.book.run_rows import stored_rows, write_stored
 from labbook.book.shelf import Item, Shelf, read_shelf
 from labbook.book.stored_view import KEYS

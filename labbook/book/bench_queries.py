@@ -5,8 +5,8 @@ from datetime import date
 import numpy as np
 from sqlalchemy import Connection, func, select
 
-from labbook.book import resolve
-from labbook.book.derive import section_of
+from labbook.book.batch_means import modulus
+from labbook.book.block_spread import section_of
 from labbook.book.ledger import cells_of, run_row
 from labbook.book.sets import sets_of
 from labbook.book.shelf import Item, document, read_shelf
@@ -80,7 +80,7 @@ def _of_swimmer(item: Item, material: Item | None) -> str:
     if not sets:
         return f"{text}, batch {material.code}, E not measured"
     today = np.array([date.today().toordinal()])
-    E = resolve.modulus(material, today)
+    E = modulus(material, today)
     return f"{text}, batch {material.code}, E {shown('E', E.value[0], E.parts['E'][0])}"
 
 

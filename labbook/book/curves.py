@@ -7,10 +7,11 @@ import numpy as np
 import pandas as pd
 from sqlalchemy import Connection, select
 
-from labbook.book import resolve
+from labbook.book.densities import density
 from labbook.book.sets import ReadingSet, sets_of
 from labbook.book.shelf import Item, read_shelf
 from labbook.book.tables import fluid
+from labbook.book.viscosities import SINGLE_READING_REACH, viscosity
 from labbook.errors import Refusal
 
 POINTS = 61
@@ -22,7 +23,7 @@ FROM_COMPOSITION = "from its composition"
 def viscosity_frames(connection: Connection, fluid_code: str) -> tuple[pd.DataFrame, pd.DataFrame]:
     """Readings (T, value, u, on, key, rho) and curves (T, mu, low, high, set) of one fluid, in SI.
 
-    Void readings are left out. Each set's curve comes from the rule that serves runs, book.resolve.viscosity,
+    Void readings are left out. Each set's curve comes from the rule that serves runs, book.viscosities.viscosity,
     with that set alone, over the temperatures it was measured at; low and high are one standard uncertainty
     of the curve away. A fluid without readings has the curve of its composition, where there is one.
     Errors: Refusal for an unknown fluid.
@@ -61,16 +62,16 @@ def _curve(item: Item, group: ReadingSet) -> pd.DataFrame:
     alone = replace(item, readings=(*others, *group.readings))
     T = np.array([r.T for r in group.readings])
     low, high = T.min(), T.max()
-    if high - low < resolve.SINGLE_READING_REACH:
-        carried = resolve.viscosity(
+    if high - low < SINGLE_READING_REACH:
+        carried = viscosity(
             alone,
             _day(group),
             np.array([low + REACH]),
             np.zeros(1),
-            resolve.density(alone, _day(group), np.array([low + REACH]), np.zeros(1)),
+            density(alone, _day(group), np.array([low + REACH]), np.zeros(1)),
         )
         reach = (
-            REACH if carried.beyond is not None and not carried.beyond[0] else resolve.SINGLE_READING_REACH
+            REACH if carried.beyond is not None and not carried.beyond[0] else SINGLE_READING_REACH
         )
         low, high = low - reach, high + reach
     return _resolved(alone, _day(group), np.linspace(low, high, POINTS), group.on)
@@ -78,7 +79,7 @@ def _curve(item: Item, group: ReadingSet) -> pd.DataFrame:
 
 def _resolved(item: Item, day: np.ndarray, T: np.ndarray, label: str | None) -> pd.DataFrame:
     days, exact = np.full(len(T), day[0]), np.zeros(len(T))
-    found = resolve.viscosity(item, days, T, exact, resolve.density(item, days, T, exact))
+    found = viscosity(item, days, T, exact, density(item, days, T, exact))
     u = np.sqrt(sum((np.asarray(p) ** 2 for p in found.parts.values()), np.zeros(len(T))))
     table = pd.DataFrame(
         {"T": T, "mu": found.value, "low": found.value - u, "high": found.value + u, "set": label}
@@ -87,7 +88,7 @@ def _resolved(item: Item, day: np.ndarray, T: np.ndarray, label: str | None) -> 
 
 
 def _density(item: Item, group: ReadingSet, T: np.ndarray) -> np.ndarray:
-    return resolve.density(item, _day(group), T, np.zeros(1)).value
+    return density(item, _day(group), T, np.zeros(1)).value
 
 
 def _day(group: ReadingSet) -> np.ndarray:

@@ -1,7 +1,7 @@
 """Making, finding and opening a book: engines, migrations, and what cannot serve as a book."""
 
-import sqlite3
 import os
+import sqlite3
 from contextlib import contextmanager
 from pathlib import Path
 
@@ -11,7 +11,7 @@ from alembic.runtime.migration import MigrationContext
 from alembic.script import ScriptDirectory
 from sqlalchemy import URL, Connection, Engine, create_engine, event, insert, inspect
 from sqlalchemy.engine import make_url
-from sqlalchemy.exc import ArgumentError, DatabaseError, OperationalError
+from sqlalchemy.exc import ArgumentError, DatabaseError
 from sqlalchemy.pool import NullPool
 
 from labbook.book import stored_view

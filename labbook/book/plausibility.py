@@ -5,10 +5,13 @@ from dataclasses import replace
 import numpy as np
 from sqlalchemy import Connection, func, select
 
-from labbook.book import resolve
+from labbook.book.batch_means import modulus, relaxation_time
+from labbook.book.densities import density
+from labbook.book.resolved import Resolved
 from labbook.book.sets import sets_of
 from labbook.book.shelf import Item, Reading
 from labbook.book.stored_view import resolved
+from labbook.book.viscosities import viscosity
 from labbook.registry.written import shown, written
 
 FACTOR = 5.0
@@ -96,10 +99,10 @@ def _outside(key, field, value, span, checks_low, say):
     low, high = span
     size = abs(value)
     if size > FACTOR * high:
-        return [(field, f"{key} = {say(value)} is {size / high:.3g} times the largest of this swimmer's runs: "
+        return [(field, f"{key} = {say(value)} is {_factor(size / high)} times the largest of this swimmer's runs: "
                  f"{_guess(field)}")]  # fmt: skip
     if checks_low and size < low / FACTOR:
-        return [(field, f"{key} = {say(value)} is {low / size:.3g} times below the smallest of this swimmer's "
+        return [(field, f"{key} = {say(value)} is {_factor(low / size)} times below the smallest of this swimmer's "
                  f"runs: {_guess(field)}")]  # fmt: skip
     return []
 
@@ -124,7 +127,7 @@ def reading_warning(item: Item, new: Reading) -> tuple[str, str] | None:
     ratio = new.value / before
     if 1 / READING_FACTOR < ratio < READING_FACTOR:
         return None
-    times = f"{ratio:.3g} times" if ratio > 1 else f"{1 / ratio:.3g} times below"
+    times = f"{_factor(ratio)} times" if ratio > 1 else f"{_factor(1 / ratio)} times below"
     hint = {"mu": "mPa.s typed as Pa.s", "nu": "cSt typed as m2/s", "E": "kPa typed as MPa",
             "rho": "g/cm3 typed as kg/m3", "lam": "ms typed as s"}[new.key]  # fmt: skip
     return "value", f"{times} this batch's last reading ({last.day}): {hint}, or the other way round?"
@@ -133,17 +136,22 @@ def reading_warning(item: Item, new: Reading) -> tuple[str, str] | None:
 def _last_value(item: Item, new: Reading) -> float | None:
     day = np.zeros(1, np.int64)
     if new.key in ("E", "lam"):
-        found = resolve.modulus(item, day) if new.key == "E" else resolve.relaxation_time(item, day)
+        found = modulus(item, day) if new.key == "E" else relaxation_time(item, day)
         return float(found.value[0])
     T = np.array([new.T if new.T is not None else np.nan])
-    rho = resolve.density(item, day, T, np.zeros(1))
+    rho = density(item, day, T, np.zeros(1))
     if new.key == "rho":
         return float(rho.value[0])
     viscous = [r for r in item.readings if r.key != "rho"]
     if new.key == "nu" and all(r.key == "nu" for r in viscous):
-        rho = resolve.Resolved(np.ones(1))  # nu against nu needs no density
-    if "constant" in (found := resolve.viscosity(item, day, T, np.zeros(1), rho)).said[0]:
+        rho = Resolved(np.ones(1))  # nu against nu needs no density
+    if "constant" in (found := viscosity(item, day, T, np.zeros(1), rho)).said[0]:
         if min(abs(r.T - new.T) for r in viscous) > SAME_T:
             return None
     mu = float(found.value[0])
     return mu if new.key == "mu" else mu / float(rho.value[0])
+
+
+def _factor(ratio: float) -> str:
+    """'5.3', '47' or '1020', never a power of ten: people read it at the bench."""
+    return f"{ratio:.2g}" if ratio < 100 else f"{float(f'{ratio:.3g}'):.0f}"

@@ -7,11 +7,12 @@ import numpy as np
 from sqlalchemy import Connection, select
 
 from labbook.book.absence import marks_of, why_absent
-from labbook.book.arrivals import Arrival, Findings, fits_swimmer, default_drive, watched
+from labbook.book.arrivals import Arrival, Findings, default_drive, fits_swimmer, watched
 from labbook.book.clock import now
-from labbook.book.derive import derive, facts_from
+from labbook.book.derive import derive
 from labbook.book.drafts import read_draft
 from labbook.book.plausibility import enough_runs, run_warnings
+from labbook.book.run_facts import facts_from
 from labbook.book.shelf import read_shelf
 from labbook.book.stored_view import KEYS, SENTENCES
 from labbook.book.tables import fluid, rig, swimmer

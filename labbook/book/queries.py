@@ -9,7 +9,7 @@ from dateutil.tz import tzlocal
 from sqlalchemy import Connection, case, func, select
 
 from labbook.book.asking import Question, check_key, holds
-from labbook.book.derive import section_of
+from labbook.book.block_spread import section_of
 from labbook.book.shelf import document, item_of
 from labbook.book.stored_view import KEYS, SENTENCES, column_of, resolved
 from labbook.book.tables import SHELF, fluid, ledger, ledger_run, material, reading, rig, run, swimmer

@@ -6,7 +6,8 @@ import numpy as np
 from sqlalchemy import Connection, bindparam, delete, select
 
 from labbook.book.bulk import write_many
-from labbook.book.derive import BATCH, Derived, RunFacts, derive, facts_from
+from labbook.book.derive import BATCH, Derived, derive
+from labbook.book.run_facts import RunFacts, facts_from
 from labbook.book.shelf import Shelf, document, read_shelf
 from labbook.book.stored_view import COLUMNS, SENTENCES, digests, resolved
 from labbook.book.tables import run

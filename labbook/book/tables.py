@@ -1,7 +1,16 @@
 """The facts: tables of the shelf, the readings, the runs and the ledger, as Alembic migrates them."""
 
 from sqlalchemy import (
-    JSON, Boolean, CheckConstraint, Column, ForeignKey, Integer, MetaData, String, Table, Text,
+    JSON,
+    Boolean,
+    CheckConstraint,
+    Column,
+    ForeignKey,
+    Integer,
+    MetaData,
+    String,
+    Table,
+    Text,
 )  # fmt: skip
 
 NAMING = {

@@ -12,10 +12,10 @@ from zipfile import BadZipFile
 import openpyxl
 from openpyxl.utils.exceptions import InvalidFileException
 
+from labbook.book.arrivals import placed
 from labbook.book.drafts import DraftReader
 from labbook.book.loading import SheetRow
 from labbook.book.records import KINDS, LOADING_ORDER, SHEETS, kind
-from labbook.book.arrivals import placed
 from labbook.errors import Refusal
 
 LARGEST_FILE = 512 * 1024 * 1024

@@ -9,8 +9,9 @@ from labbook import Book
 from labbook.book import opening
 from labbook.book.arrivals import RUN_COLUMNS
 from labbook.book.bulk import write_many
-from labbook.book.derive import BATCH, RunFacts, derive
+from labbook.book.derive import BATCH, derive
 from labbook.book.queries import shelf_table
+from labbook.book.run_facts import RunFacts
 from labbook.book.run_rows import stored_rows, write_stored
 from labbook.book.shelf import read_shelf
 from labbook.book.tables import run

@@ -1,134 +1,18 @@
-"""What a run's fluid and material were on its day: viscosity, density, relaxation time, modulus, and from what."""
+"""A fluid's viscosity on a run's day: the nearest set of readings, or the composition's correlation."""
 
-from dataclasses import dataclass, field
 from datetime import date
 from functools import partial
 
 import numpy as np
 
-from labbook.book.sets import ReadingSet, nearest, sets_of
+from labbook.book.densities import along, density
+from labbook.book.resolved import Resolved, kind
+from labbook.book.sets import nearest, sets_of
 from labbook.book.shelf import Item
 from labbook.physics import fluids, readings
 
-KELVIN = 273.15
 SINGLE_READING_REACH = 1.0  # K around a lone reading without a correlation to carry it
 NOMINAL_GRADE = 0.05 / np.sqrt(3)  # a grade on a label: 5 %, rectangular
-
-
-@dataclass
-class Resolved:
-    """One property for a block of runs: values, their parts by source, sentences, extrapolation marks.
-
-    value: SI array, NaN where absent; parts: source -> array; said: sentence of each run; beyond: bool array.
-    """
-
-    value: np.ndarray
-    parts: dict[str, np.ndarray] = field(default_factory=dict)
-    said: np.ndarray | None = None
-    beyond: np.ndarray | None = None
-
-    @classmethod
-    def empty(cls, n: int, why: str) -> "Resolved":
-        return cls(np.full(n, np.nan), {}, np.full(n, f"absent: {why}", dtype=object), np.zeros(n, bool))
-
-    def put(self, rows, value, parts, said, beyond) -> None:
-        """Write a group of rows; sources that the group lacks stay zero there."""
-        self.value[rows] = value
-        for source, part in parts.items():
-            if source not in self.parts:
-                self.parts[source] = np.zeros(len(self.value))
-            self.parts[source][rows] = part
-        self.said[rows] = said
-        self.beyond[rows] = beyond
-
-
-# ---- density
-
-
-def density(item: Item, days: np.ndarray, T: np.ndarray, u_T: np.ndarray) -> Resolved:
-    """Density (kg/m3) of a fluid: the nearest reading, then the batch's constant, then the correlation."""
-    result = Resolved.empty(len(days), f"no density of {item.code}, and no correlation for {kind(item)}")
-    sets = sets_of(item.readings, ("rho",), item.texts["made"])
-    if sets:
-        chosen = nearest(sets, days)
-        for i, group in enumerate(sets):
-            rows = np.flatnonzero(chosen == i)
-            for one in _nearest_in_T(group, T, rows):
-                reading, own_rows = one
-                result.put(own_rows, reading.value, {"rho_reading": reading.u},
-                           f"density: reading {group.day}", False)
-        return result
-    if item.value("rho") is not None:
-        result.put(slice(None), item.value("rho"), {"rho_batch": item.u("rho")},
-                   f"density: stated for {item.code}", False)
-        return result
-    correlation = _density_correlation(item)
-    if correlation is None:
-        return result
-    row, function, u_rel, composition = correlation
-    known = np.flatnonzero(np.isfinite(T))
-    result.said[:] = "absent: T was not typed, and the density follows from it"
-    if len(known):
-        value, parts = _along(function, T[known], u_T[known], item, composition)
-        parts["rho_model"] = u_rel * value
-        result.put(known, value, parts, f"density: correlation, {row.name}", ~row.covers(T=T[known]))
-    return result
-
-
-def _nearest_in_T(group: ReadingSet, T, rows):
-    """(reading, rows) for each reading of a set that is nearest in temperature to some of the rows."""
-    if len(group.readings) == 1 or not len(rows):
-        return [(group.readings[0], rows)]
-    at = np.array([r.T if r.T is not None else np.nan for r in group.readings])
-    distance = np.abs(T[rows][:, None] - at[None, :])
-    which = np.where(np.isnan(distance), np.inf, distance).argmin(axis=1)
-    return [(r, rows[which == i]) for i, r in enumerate(group.readings)]
-
-
-def _density_correlation(item: Item):
-    match item.texts["kind"]:
-        case "water":
-            return fluids.WATER_DENSITY, lambda T: fluids.water_density(T=T), fluids.WATER_DENSITY.u_rel, None
-        case "glycerol-water" if item.value("glycerol") is not None:
-            return (
-                fluids.GLYCEROL_WATER_DENSITY,
-                lambda w, T: fluids.glycerol_water_density(w=w, T=T),
-                fluids.GLYCEROL_WATER_DENSITY.u_rel,
-                "glycerol",
-            )
-        case "silicone-oil":
-            return (
-                fluids.SILICONE_OIL_DENSITY,
-                lambda T: fluids.silicone_oil_density(T=T),
-                fluids.SILICONE_OIL_DENSITY.u_rel,
-                None,
-            )
-    return None
-
-
-def _along(function, T, u_T, item: Item, composition: str | None):
-    """Value of a correlation and its parts from T and from the typed composition."""
-    if composition is None:
-        stepped = function(T + 1e-30j)
-        return stepped.real, {"T": stepped.imag / 1e-30 * u_T}
-    w, u_w = item.value(composition), item.u(composition)
-    stepped = function(w, T + 1e-30j)
-    value = stepped.real
-    return value, {"T": stepped.imag / 1e-30 * u_T, composition: _composition_slope(function, w, u_w, T) * u_w}
-
-
-def _composition_slope(function, w, u_w, T):
-    """Slope over the composition across w +- u(w), one-sided at the ends, where the derivative is singular."""
-    if 0.0 < w < 1.0:
-        low, high = max(0.0, w - u_w), min(1.0, w + u_w)
-    else:
-        low, high = (0.0, max(u_w, 1e-6)) if w <= 0 else (1.0 - max(u_w, 1e-6), 1.0)
-    if high == low:
-        return np.zeros_like(T)
-    return (function(high, T) - function(low, T)) / (high - low)
-
-
-# ---- viscosity
 
 
 def viscosity(item: Item, days: np.ndarray, T: np.ndarray, u_T: np.ndarray, rho: Resolved) -> Resolved:
@@ -246,12 +130,12 @@ def _viscosity_from_composition(item, known, T, u_T, rho, result) -> None:
     match item.texts["kind"]:
         case "water":
             row = fluids.WATER_VISCOSITY
-            value, parts = _along(lambda T: fluids.water_viscosity(T=T), at, spread, item, None)
+            value, parts = along(lambda T: fluids.water_viscosity(T=T), at, spread, item, None)
             parts["mu_model"] = row.u_rel * value
             said = f"viscosity: correlation, {row.name}"
         case "glycerol-water" if item.value("glycerol") is not None:
             row = fluids.GLYCEROL_WATER_VISCOSITY
-            value, parts = _along(
+            value, parts = along(
                 lambda w, T: fluids.glycerol_water_viscosity(w=w, T=T), at, spread, item, "glycerol"
             )
             parts["mu_model"] = fluids.glycerol_water_viscosity_u(w=item.value("glycerol")) * value
@@ -263,7 +147,7 @@ def _viscosity_from_composition(item, known, T, u_T, rho, result) -> None:
                 result.said[known] = f"absent: {item.code} is thinner than 100 cSt and needs readings"
                 return
             function = partial(fluids.silicone_oil_kinematic_viscosity, nu25=grade)
-            nu, parts = _along(lambda T: function(T=T), at, spread, item, None)
+            nu, parts = along(lambda T: function(T=T), at, spread, item, None)
             nominal = item.typed["grade"][4] == "digits"
             parts["grade"] = nu * (NOMINAL_GRADE if nominal else item.u("grade") / grade)
             value, parts = _times_density(nu, parts, known, rho)
@@ -278,43 +162,3 @@ def _viscosity_from_composition(item, known, T, u_T, rho, result) -> None:
             result.said[known] = f"absent: {item.code} has no viscosity reading, and {kind(item)} needs one"
             return
     result.put(known, value, parts, said, ~row.covers(T=at))
-
-
-def kind(item: Item) -> str:
-    """The fluid's kind as a sentence needs it."""
-    return {"measured": "a measured fluid"}.get(item.texts["kind"], str(item.texts["kind"]))
-
-
-# ---- relaxation time, modulus
-
-
-def relaxation_time(item: Item, days: np.ndarray) -> Resolved:
-    """Relaxation time (s): the nearest reading, then the batch's constant."""
-    result = Resolved.empty(len(days), f"{item.code} has no relaxation time")
-    sets = sets_of(item.readings, ("lam",), item.texts["made"])
-    if not sets and item.value("lam") is not None:
-        result.put(slice(None), item.value("lam"), {"lam": item.u("lam")},
-                   f"relaxation time: stated for {item.code}", False)
-    _weighted_means(sets, days, "lam", "relaxation time", result)
-    return result
-
-
-def modulus(item: Item, days: np.ndarray) -> Resolved:
-    """Young's modulus (Pa): the weighted mean of the set nearest in time."""
-    result = Resolved.empty(len(days), f"material {item.code} has no reading of E")
-    _weighted_means(sets_of(item.readings, ("E",), item.texts["made"]), days, "E", "modulus", result)
-    return result
-
-
-def _weighted_means(sets, days, source, name, result) -> None:
-    chosen = nearest(sets, days)
-    for i, group in enumerate(sets):
-        rows = np.flatnonzero(chosen == i)
-        n = len(group.readings)
-        value = np.array([r.value for r in group.readings])
-        u = np.array([r.u for r in group.readings])
-        weight = 1.0 / u**2 if np.all(u > 0) else np.ones(n)
-        mean = float(weight @ value / weight.sum())
-        spread = float(weight.sum() ** -0.5) if np.all(u > 0) else float(u.max())
-        what = f"mean of {n} readings {group.day}" if n > 1 else f"reading {group.day}"
-        result.put(rows, mean, {source: spread}, f"{name}: {what}", False)
