@@ -64,7 +64,8 @@ def _table() -> Table:
           table.c.St)
     Index("ix_resolved_plot", table.c.swimmer_id, table.c.state, table.c.Sp, table.c.U_cap, table.c.stride,
           table.c.U_scaled, table.c.fluid_id)
-    Index("ix_resolved_Re", table.c.swimmer_id, table.c.state, table.c.Re)
+    # the state comes last, or SQLite would at times take this index for the plot's query
+    Index("ix_resolved_Re", table.c.swimmer_id, table.c.Re, table.c.state)
     return table
 
 

@@ -236,7 +236,7 @@ def test_a_reading_a_thousand_times_off(stocked, counts):
                    book=stocked)  # fmt: skip
     assert found.fields == ["value"]
     assert found.warnings[0].startswith(
-        "syrup: 1e+03 times below this batch's last reading (of 2026-03-01): mPa.s typed as Pa.s"
+        "syrup: 1000 times below this batch's last reading (of 2026-03-01): mPa.s typed as Pa.s"
     )
     cells["value"] = "4100(40) Pa.s"
     found = warned(lambda: stocked.stock("reading", **cells), "reading", *pairs(cells), path=stocked.target, counts=counts,
