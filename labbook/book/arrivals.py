@@ -212,7 +212,7 @@ class _Writer:
         return (
             *facts[:2], serial_of(facts[1]), *facts[2:6], texts.get("by", self.by), facts[6],
             texts.get("series"), texts.get("video"), texts.get("note"), facts[8], texts.get("why"),
-            json.dumps(facts[7], ensure_ascii=False), warned, self.logged, arrival.token, arrival.sheet_row,
+            arrival.draft.stored(), warned, self.logged, arrival.token, arrival.sheet_row,
         )  # fmt: skip
 
     def _warnings(self, arrivals, rows, floats) -> dict[int, str]:

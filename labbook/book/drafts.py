@@ -1,8 +1,10 @@
 """Drafts: one record as typed, read and checked as far as it can be without the book."""
 
 import hashlib
+import json
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 from labbook.book.clock import read_date, read_moment
 from labbook.book.records import Kind, kind
@@ -28,6 +30,11 @@ class Draft:
     typed: dict[str, Typed]
     said: dict[str, str] = field(default_factory=dict)
     warned: tuple[tuple[str, str], ...] = ()
+    entries: tuple[str, ...] = ()
+
+    def stored(self) -> str:
+        """The typed quantities as the book stores them, in JSON."""
+        return "{" + ", ".join(self.entries) + "}"
 
     def document(self) -> dict[str, Typed]:
         """The typed quantities as stored: five fields each."""
@@ -43,14 +50,18 @@ class Draft:
         return hashlib.blake2b(told.encode(), digest_size=16).hexdigest()
 
 
-@dataclass(frozen=True)
-class _Cell:
-    """What one cell's text came to: a text or a Typed with its printed form and warning, or a refusal."""
+class _Cell(NamedTuple):
+    """What one cell's text came to: a text, a Typed with its printed form and warning, or a refusal."""
 
-    value: str | Typed | None = None
+    text: str | None = None
+    typed: Typed | None = None
     said: str = ""
     warning: str = ""
+    entry: str = ""
     refusal: Refusal | None = None
+
+
+_EMPTY = _Cell()
 
 
 class DraftReader:
@@ -66,8 +77,8 @@ class DraftReader:
         self.kind = kind(name)
         self.units = units or {}
         self.decimal_comma = decimal_comma
-        self.columns = [(i, c, c in self.kind.typed, {}) for i, c in enumerate(columns) if c]
-        self.required = self.kind.required
+        self.columns = [(i, c, {}) for i, c in enumerate(columns) if c]
+        self.in_order = all(i == place for place, (i, _, _) in enumerate(self.columns))
         self.key_at = next((i for i, c in enumerate(columns) if c == "key"), None)
 
     def read(self, cells: Sequence[str | None]) -> tuple[Draft, list[Refusal]]:
@@ -75,51 +86,59 @@ class DraftReader:
         texts: dict[str, str] = {}
         typed: dict[str, Typed] = {}
         said: dict[str, str] = {}
-        warned, findings = [], []
-        given: set[str] = set()
-        row_key = str(cells[self.key_at]).strip() if self.key_at is not None and self.key_at < len(cells) else ""
-        for i, column, quantity, cache in self.columns:
-            text = cells[i] if i < len(cells) else None
-            if not text or not (text := str(text).strip()):
-                continue
-            given.add(column)
-            known = (row_key, text) if column == "value" else text
+        warned, entries, refused = [], [], {}
+        has_key = self.key_at is not None and self.key_at < len(cells)
+        row_key = str(cells[self.key_at] or "").strip() if has_key else ""
+        given = cells if self.in_order else [cells[i] for i, _, _ in self.columns if i < len(cells)]
+        for (_, column, cache), written in zip(self.columns, given, strict=False):  # a short row ends early
+            known = written if column != "value" else (row_key, written)
             cell = cache.get(known)
             if cell is None:
-                cell = cache[known] = self._cell(column, text, row_key)
-            if cell.refusal is not None:
-                findings.append(cell.refusal)
-            elif not quantity and type(cell.value) is str:
-                texts[column] = cell.value
-            elif cell.value is not None:
-                typed[column] = cell.value
-                said[column] = cell.said
-                if cell.warning:
-                    warned.append((column, cell.warning))
-        for column in self.required:
-            if column not in given:
+                cell = cache[known] = self._cell(column, written, row_key)
+            text, one, printed_, warning, entry, refusal = cell
+            if text is not None:
+                texts[column] = text
+            elif one is not None:
+                typed[column] = one
+                said[column] = printed_
+                entries.append(entry)
+                if warning:
+                    warned.append((column, warning))
+            elif refusal is not None:
+                refused[column] = refusal
+        findings = list(refused.values())
+        for column in self.kind.required:
+            if column not in texts and column not in typed and column not in refused:
+                if column == "value" and "key" in refused:
+                    continue  # what a value is follows from its key
                 reason = f"is missing, and every {self.kind.name} needs it"
                 findings.append(Refusal(column, None, reason, _hint(self.kind, column)))
         findings += _impossible(self.kind.name, texts, typed)
-        return Draft(self.kind.name, texts, typed, said, tuple(warned)), findings
+        return Draft(self.kind.name, texts, typed, said, tuple(warned), tuple(entries)), findings
 
-    def _cell(self, column: str, text: str, row_key: str) -> _Cell:
-        row = self.kind
+    def _cell(self, column: str, written: str | None, row_key: str) -> _Cell:
+        row, text = self.kind, "" if written is None else str(written).strip()
+        if not text:
+            return _EMPTY
         try:
             if column in row.typed:
                 key = row.typed[column] or row_key
                 if key not in QUANTITIES:
-                    return _Cell()  # the unknown key is refused at its own column
+                    return _EMPTY  # the unknown key is refused at its own column
                 one = read(key, text, self.units.get(column), self.decimal_comma)
-                return _Cell(one, printed(key, one), _implausible(column, key, one))
+                return _Cell(None, one, printed(key, one), _implausible(column, key, one), _entry(column, one))
             if column in row.spreads:
                 one = read_uncertainty(row.spreads[column], text, self.units.get(column))
-                return _Cell(one, printed_uncertainty(one))
+                return _Cell(None, one, printed_uncertainty(one), "", _entry(column, one))
             if column in row.texts:
                 return _Cell(_text(row, column, text))
         except Refusal as refusal:
             return _Cell(refusal=Refusal(column, refusal.typed, refusal.reason, refusal.remedy))
         return _Cell(refusal=Refusal(column, None, f"a {row.name} has no such column", _columns(row)))
+
+
+def _entry(column: str, one: Typed) -> str:
+    return f'"{column}": {json.dumps(one, ensure_ascii=False)}'
 
 
 def read_draft(

@@ -213,6 +213,8 @@ def _arrivals(connection: Connection, rows: list[SheetRow], findings: Findings) 
 
 def _stored_rows(connection, wanted: list[str]) -> set[str]:
     found: set[str] = set()
+    if connection.scalar(select(run.c.id).where(run.c.sheet_row.is_not(None)).limit(1)) is None:
+        return found
     for start in range(0, len(wanted), 900):
         part = wanted[start : start + 900]
         found |= set(connection.scalars(select(run.c.sheet_row).where(run.c.sheet_row.in_(part))))

@@ -20,6 +20,7 @@ from labbook.book.tables import book
 from labbook.errors import BookProblem
 
 BUSY_SECONDS = 30
+CACHE_KIB = 64 * 1024
 _NETWORK = {"nfs", "nfs4", "cifs", "smb3", "smbfs", "fuse.sshfs", "afs", "9p", "ceph", "glusterfs"}
 
 
@@ -62,6 +63,7 @@ def engine_for(target: str | Path) -> Engine:
         cursor = connection.cursor()
         cursor.execute("PRAGMA foreign_keys=ON")
         cursor.execute("PRAGMA synchronous=FULL")  # what was acknowledged survives a power cut
+        cursor.execute(f"PRAGMA cache_size=-{CACHE_KIB}")  # a bulk load spills its pages otherwise
         cursor.close()
 
     @event.listens_for(engine, "begin")

@@ -2,7 +2,6 @@
 
 from collections.abc import Callable, Iterator
 
-import numpy as np
 from sqlalchemy import Connection, bindparam, delete, select
 
 from labbook.book.bulk import write_many
@@ -32,7 +31,7 @@ def shelf_for(connection: Connection, rows) -> Shelf:
 
 
 def stored_rows(rows, facts: RunFacts, derived: Derived) -> list[tuple]:
-    """Rows of the stored view, in COLUMNS order, of runs selected as FACTS."""
+    """Rows of the stored view, in COLUMNS order, of runs selected as FACTS; NaN where a value is absent."""
     ids = [r[0] for r in rows]
     said = [derived.sentences[k] for k in SENTENCES]
     texts = [
@@ -41,7 +40,7 @@ def stored_rows(rows, facts: RunFacts, derived: Derived) -> list[tuple]:
     ]
     told = digests(ids, derived.floats, texts)
     material = derived.material.tolist()
-    floats = np.where(np.isnan(derived.floats), None, derived.floats).tolist()
+    floats = derived.floats.tolist()
     return [
         (r[0], r[5], r[8], r[2], r[3], material[i] or None, *texts[i][4:], told[i], *floats[i])
         for i, r in enumerate(rows)
@@ -49,7 +48,9 @@ def stored_rows(rows, facts: RunFacts, derived: Derived) -> list[tuple]:
 
 
 def write_stored(connection: Connection, rows: list[tuple]) -> None:
-    """Insert rows into the stored view."""
+    """Insert rows into the stored view, where absence is NULL."""
+    if connection.dialect.name != "sqlite":  # SQLite itself stores NaN as NULL
+        rows = [tuple(None if cell != cell else cell for cell in row) for row in rows]
     write_many(connection, resolved, COLUMNS, rows)
 
 

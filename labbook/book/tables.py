@@ -120,7 +120,7 @@ run = Table(
     Column("swimmer_id", ForeignKey("swimmer.id"), nullable=False, index=True),
     Column("fluid_id", ForeignKey("fluid.id"), nullable=False, index=True),
     Column("rig_id", ForeignKey("rig.id"), index=True),
-    Column("at", String(20), nullable=False, index=True),  # UTC, ISO 8601, ends in Z
+    Column("at", String(20), nullable=False),  # UTC, ISO 8601, ends in Z
     Column("by", String(64), nullable=False, index=True),
     Column("drive", String(32), nullable=False),
     Column("series", String(128), index=True),

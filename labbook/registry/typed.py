@@ -12,6 +12,7 @@ from labbook.registry.units import accepted, spread_to_si, to_si
 DIGITS = "digits"  # no uncertainty was typed: half the last written digit, rectangular
 STATED = "stated"
 MOST_CHARACTERS = 80
+ROOT_3 = math.sqrt(3)
 
 
 class Typed(NamedTuple):
@@ -37,6 +38,8 @@ _BOTH = re.compile(
     rf"(\(?)\s*({_NUMBER})({_EXP})?\s*({_UNIT})?\s*\+-\s*"
     rf"(\d+(?:\.\d*)?(?:{_EXP})?|\.\d+)\s*(\)?)({_EXP})?\s*({_UNIT})?"
 )
+# what most cells of a sheet hold, read and printed without the detours: 12.4 and 12.4(3), the unit in the header
+_BARE = re.compile(r"([+-]?\d+(?:\.(\d*))?)(?:\((\d+)\))?", re.ASCII)
 _THOUSANDS = re.compile(r"(?<![\d.,])[1-9]\d{0,2}(,\d{3})+(?!\d)")
 _TIMES_TEN = re.compile(r"(?<=[\d.)])\s*[x×]\s*10(?:\^([+-]?\d+)|([+-]\d+)|([⁺⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+))")
 _RAISED = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻", "0123456789+-")
@@ -67,6 +70,8 @@ def plain(key: str, text: str, decimal_comma: bool = False) -> str:
 
 def printed(key: str, typed: Typed) -> str:
     """A text that reads as the same value, uncertainty and unit wherever it is typed again."""
+    if _BARE.fullmatch(typed.text):
+        return f"{typed.text} {typed.unit}"
     tidy = plain(key, typed.text, decimal_comma=True)
     _, _, own_unit, _, relative = _parts(key, typed.text, True)
     if own_unit is not None:
@@ -113,12 +118,18 @@ def read(key: str, text: str, unit: str | None = None, decimal_comma: bool = Fal
 
 def _parts(key, text, decimal_comma):
     """(value, u, unit or None, origin, whether u is relative) in the typed unit."""
+    if len(text) <= MOST_CHARACTERS and (match := _BARE.fullmatch(text)):
+        digits, decimals, u = match.groups()
+        half = 10.0 ** -len(decimals or "")
+        if u is None:
+            return float(digits), 0.5 * half / ROOT_3, None, DIGITS, False
+        return float(digits), float(f"{u}e-{len(decimals or '')}"), None, STATED, False
     tidy = plain(key, text, decimal_comma)
     if match := _PLAIN.fullmatch(tidy):
         digits, exponent, unit = match.groups()
         decimals = len(digits.partition(".")[2])
         half = float(f"0.5e{int((exponent or 'e0')[1:]) - decimals}")
-        return float(digits + (exponent or "")), half / math.sqrt(3), unit, DIGITS, False
+        return float(digits + (exponent or "")), half / ROOT_3, unit, DIGITS, False
     if match := _SHORT.fullmatch(tidy):
         digits, u, exponent, unit = match.groups()
         power = int((exponent or "e0")[1:])

@@ -147,7 +147,7 @@ def downgrade() -> None:
 INDEXES = {
     "swimmer": ("material_id", "parent_id"),
     "reading": ("fluid_id", "material_id"),
-    "run": ("serial", "swimmer_id", "fluid_id", "rig_id", "at", "by", "series"),
+    "run": ("serial", "swimmer_id", "fluid_id", "rig_id", "by", "series"),
     "ledger": ("by", "subject"),
 }
 

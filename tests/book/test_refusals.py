@@ -241,7 +241,7 @@ def test_a_reading_a_thousand_times_off(stocked, counts):
     cells["value"] = "4100(40) Pa.s"
     found = warned(lambda: stocked.stock("reading", **cells), "reading", *pairs(cells), path=stocked.target, counts=counts,
                    book=stocked)  # fmt: skip
-    assert any("1e+03 times this batch's last reading" in w for w in found.warnings)
+    assert any("1000 times this batch's last reading" in w for w in found.warnings)
     assert command("reading", stocked.target, *pairs(cells), "--confirm")[0] == 0
 
 
