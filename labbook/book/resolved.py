@@ -21,7 +21,9 @@ class Resolved:
 
     @classmethod
     def empty(cls, n: int, why: str) -> "Resolved":
-        return cls(np.full(n, np.nan), {}, np.full(n, f"absent: {why}", dtype=object), np.zeros(n, bool))
+        said = np.empty(n, dtype=object)
+        said[:] = f"absent: {why}"  # one text for all; np.full would make a new one for each run
+        return cls(np.full(n, np.nan), {}, said, np.zeros(n, bool))
 
     def put(self, rows, value, parts, said, beyond) -> None:
         """Write a group of rows; sources that the group lacks stay zero there."""

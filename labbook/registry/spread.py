@@ -70,11 +70,15 @@ class Spread:
         return self._root_sum(key, lambda source: source not in OWN_SOURCES)
 
     def _root_sum(self, key, chosen) -> np.ndarray:
-        total = None
-        for source, part in self.parts[key].items():
-            if chosen(source):
-                total = part * part if total is None else total + part * part
-        return np.zeros_like(self.values[key]) if total is None else np.sqrt(total)
+        parts = [part for source, part in self.parts[key].items() if chosen(source)]
+        if not parts:
+            return np.zeros_like(self.values[key])
+        if len(parts) == 1:
+            return np.abs(parts[0])
+        total = parts[0] * parts[0]
+        for part in parts[1:]:
+            total += part * part
+        return np.sqrt(total, out=total)
 
     def budget(self, key: str) -> Mapping[str, np.ndarray]:
         """The parts of one value by source."""

@@ -8,14 +8,14 @@ import numpy as np
 import pint
 
 
-def numbers_by_hand(values, section, glycerol, andrade) -> dict[str, np.ndarray]:
+def numbers_by_hand(columns, section, glycerol, andrade) -> dict[str, np.ndarray]:
     """Every resolved quantity and number of a block of runs, values only.
 
-    values: f, theta0, U, A_tip, T, B, h_wall; section: bool array, True for a strip; glycerol: bool array,
-    True where the fluid is the 85 % mixture, else silicone oil with mu = A exp(B/T), andrade = (A, B).
+    columns: one SI array a run and key (f, theta0, U, A_tip, T, B, h_wall and the swimmer's L, body, d, w, t, b,
+    m, E); section: bool array, True for a strip; glycerol: bool array, True where the fluid is the 85 %
+    mixture, else silicone oil with mu = A exp(B/T), andrade = (A, B).
     """
-    f, theta0, U, A_tip, T, B, h_wall = values
-    L, body, d, w, t, b, m, E = 0.020, 0.025, 1e-3, 2e-3, 2e-4, 2e-3, 1e-4, 1.5e6
+    f, theta0, U, A_tip, T, B, h_wall, L, body, d, w, t, b, m, E = columns
     c, x = T - 273.15, 0.85
     water = 1.790e-3 * np.exp((-1230 - c) * c / (36100 + 360 * c))
     pure = 12.1 * np.exp((-1233 + c) * c / (9900 + 70 * c))

@@ -33,6 +33,8 @@ def test_derive(tmp_path):
     strip = np.isin(columns.swimmer, [i for i, s in shelf.swimmers.items() if s.texts["section"] == "strip"])
     glycerol = columns.fluid == next(i for i, f in shelf.fluids.items() if f.code == "gly")
     typed = [columns.values[k] for k in ("f", "theta0", "U", "A_tip", "T", "B", "h_wall")]
+    # the swimmers' columns as a frame of runs has them, gathered before the clock starts
+    typed += [np.full(RUNS, v) for v in (0.020, 0.025, 1e-3, 2e-3, 2e-4, 2e-3, 1e-4, 1.5e6)]
     oil = (4.8 * np.exp(-1620 / 298.15), 1620.0)
     hand = timed(lambda: numbers_by_hand(typed, strip, glycerol, oil), 5)
     mine = timed(ours, 3)
