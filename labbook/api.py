@@ -96,7 +96,7 @@ class Book:
     ) -> str:  # fmt: skip
         """Log one run from cells as typed, e.g. f="0.5 Hz", U="1.2(1) mm/s"; returns its code."""
         cells = _texts(cells) | ({"at": str(at)} if at is not None else {})
-        return ledger.record(self.engine, cells, by or current_handle(), confirm=confirm, token=token)
+        return ledger.record(self.engine, cells, by or current_handle(), confirm=confirm, token=token).code
 
     def amend(self, code: str, /, *, why: str, by: str | None = None, confirm: bool = False, **changes) -> None:
         """Change cells of a run (None clears one); the old values stay in the ledger with the reason."""

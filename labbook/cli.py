@@ -149,7 +149,10 @@ def log(book: str, cells: tuple[str, ...], by: str | None, confirm: bool) -> Non
     wanted = _cells(cells)
     who = by or wanted.pop("by", None)
     with Book.open(book) as opened:
-        click.echo(record(opened.engine, wanted, who or current_handle(), confirm=confirm))
+        logged = record(opened.engine, wanted, who or current_handle(), confirm=confirm)
+    if logged.known:
+        click.echo(f"this run is {logged.code} already; nothing was added", err=True)
+    click.echo(logged.code)
 
 
 @main.command()

@@ -251,7 +251,7 @@ def test_check(bench):
     raw.commit()
     raw.close()
     done = run("check", bench, code=1)
-    assert done.stdout == "R-0002: a stored number was changed by hand (Sp)\n"
+    assert done.stdout == "R-0002: a stored number or what was typed was changed by hand (Sp)\n"
 
 
 def test_copy(bench, tmp_path):

@@ -203,16 +203,16 @@ class _Writer:
         return (
             run_id, code, swimmer_id, self.found["fluid"][texts["fluid"]],
             self.found["rig"].get(texts.get("rig", "")), texts["at"], drive, arrival.draft.document(),
-            texts.get("state", "kept"),
+            texts.get("state", "kept"), texts.get("by", self.by), texts.get("series"), texts.get("video"),
+            texts.get("note"), texts.get("why"), arrival.draft.stored(),
         )  # fmt: skip
 
     def _row(self, arrival, facts, warned) -> tuple:
         """A run in RUN_COLUMNS order."""
-        texts = arrival.draft.texts
+        by, series, video, note, why, typed = facts[9:]
         return (
-            *facts[:2], serial_of(facts[1]), *facts[2:6], texts.get("by", self.by), facts[6],
-            texts.get("series"), texts.get("video"), texts.get("note"), facts[8], texts.get("why"),
-            arrival.draft.stored(), warned, self.logged, arrival.token, arrival.sheet_row,
+            *facts[:2], serial_of(facts[1]), *facts[2:6], by, facts[6], series, video, note, facts[8], why, typed,
+            warned, self.logged, arrival.token, arrival.sheet_row,
         )  # fmt: skip
 
     def _warnings(self, arrivals, rows, floats) -> dict[int, str]:

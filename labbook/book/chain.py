@@ -4,7 +4,7 @@ import hashlib
 import json
 from collections.abc import Iterable
 
-from sqlalchemy import Connection, insert, select
+from sqlalchemy import Connection, func, insert, select
 
 from labbook.book.bulk import write_many
 from labbook.book.clock import now
@@ -83,3 +83,23 @@ def ranges(codes: list[str]) -> str:
             parts.append([code])
         last = here
     return ", ".join("..".join(p) for p in parts)
+
+
+def runs_missing(connection: Connection) -> list[str]:
+    """A sentence for each line that names more runs than the book still holds for it."""
+    held = dict(connection.execute(select(ledger_run.c.ledger_id, func.count()).group_by(ledger_run.c.ledger_id)).all())
+    found = []
+    for line_id, runs in connection.execute(select(ledger.c.id, ledger.c.runs).where(ledger.c.runs.is_not(None))):
+        named = how_many(runs)
+        if named != held.get(line_id, 0):
+            found.append(f"ledger line {line_id} names {named} runs, and {held.get(line_id, 0)} of them are there")
+    return found
+
+
+def how_many(runs: str) -> int:
+    """How many codes stand in ranges such as 'R-0001..R-0003, R-0007'."""
+    count = 0
+    for part in filter(None, runs.split(", ")):
+        first, _, last = part.partition("..")
+        count += int(last.rpartition("-")[2]) - int(first.rpartition("-")[2]) + 1 if last else 1
+    return count

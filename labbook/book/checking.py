@@ -1,16 +1,18 @@
 """Is the book as it should be: the ledger's chain, every stored row's digest, every number derived again."""
 
+import json
 from collections.abc import Callable
 
 import numpy as np
-from sqlalchemy import Engine, delete, func, select, text, update
+from sqlalchemy import Engine, Text, cast, delete, func, select, text, update
 
 from labbook.book import chain, stored_view
 from labbook.book.derive import derive
 from labbook.book.opening import reading, writing
-from labbook.book.run_rows import batches, derive_again, facts_of, shelf_for
+from labbook.book.run_rows import batches, derive_again, facts_of, facts_text, shelf_for
 from labbook.book.stored_view import COLUMNS, COPIED, FLOAT_COLUMNS, KEYS, SENTENCES, digests, resolved
-from labbook.book.tables import book, run
+from labbook.book.tables import SHELF, book, run
+from labbook.book.tables import reading as reading_table
 
 # exp and log differ in the last bits between machines
 SAME = 1e-9
@@ -27,8 +29,14 @@ def check(engine: Engine, progress: Callable[[int], None] = lambda n: None) -> l
             for row in connection.execute(text("PRAGMA foreign_key_check")).all():
                 found.append(f"{row[0]} row {row[1]} refers to a record of {row[2]} that is not there")
         broken = chain.first_broken(connection)
-        if broken is not None:
+        if broken is None:
+            found += chain.runs_missing(connection)
+        else:
             found.append(f"ledger line {broken} was changed or removed after it was written")
+        unreadable = _malformed(connection)
+        found += unreadable
+        if unreadable:
+            return found  # what cannot be read cannot be derived again
         if not stored_view.built(connection):
             found.append("the stored view does not have the registry's columns: open the book to rebuild it")
             return found
@@ -40,6 +48,26 @@ def check(engine: Engine, progress: Callable[[int], None] = lambda n: None) -> l
             found += _batch(connection, batch)
             progress(len(batch))
     return found
+
+
+def _malformed(connection) -> list[str]:
+    """Records whose typed quantities cannot be read, with their codes."""
+    found = []
+    for table in (*SHELF.values(), reading_table, run):
+        for code, stored in connection.execute(select(table.c.code, cast(table.c.typed, Text))):
+            if not _whole(stored):
+                found.append(f"{table.name} {code}: what was typed was changed by hand and cannot be read")
+    return found
+
+
+def _whole(stored) -> bool:
+    try:
+        typed = json.loads(stored) if isinstance(stored, str) else stored
+        return all(
+            len(entry) == 5 and all(isinstance(x, int | float) for x in entry[2:4]) for entry in typed.values()
+        )
+    except (ValueError, TypeError, AttributeError):
+        return False
 
 
 def _batch(connection, rows) -> list[str]:
@@ -55,7 +83,7 @@ def _batch(connection, rows) -> list[str]:
     if not held:
         return found
     floats = _floats([h[first:] for _, h in held])
-    texts = [_told(h) for _, h in held]
+    texts = [(*_told(h), facts_text(rows[i])) for i, h in held]
     told = digests([h[0] for _, h in held], floats, texts)
     fresh = derived.floats[[i for i, _ in held]]
     differs = ~(np.isclose(floats, fresh, rtol=SAME, atol=0.0) | (np.isnan(floats) & np.isnan(fresh)))
@@ -65,7 +93,7 @@ def _batch(connection, rows) -> list[str]:
         said = tuple(derived.sentences[s][i] for s in SENTENCES)
         if told[j] != row[place]:
             where = f" ({_frame_name(int(differs[j].argmax()))})" if differs[j].any() else ""
-            found.append(f"{code}: a stored number was changed by hand{where}")
+            found.append(f"{code}: a stored number or what was typed was changed by hand{where}")
         elif differs[j].any():
             found.append(f"{code}: {_frame_name(int(differs[j].argmax()))} is stale, deriving it again differs")
         elif tuple(row[1:6]) != (*(rows[i][n] for n in (5, 8, 2, 3)), int(derived.material[i]) or None):

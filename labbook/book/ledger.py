@@ -3,6 +3,7 @@
 import json
 from collections.abc import Mapping
 from datetime import UTC, datetime, timedelta
+from typing import NamedTuple
 
 from sqlalchemy import Connection, Engine, select, update
 
@@ -50,29 +51,40 @@ def settle(findings: Findings, confirm: bool) -> None:
         raise Unconfirmed([s for _, s in findings.warned], [c for c, _ in findings.warned])
 
 
+class Logged(NamedTuple):
+    """The code of a run, and whether the book held it already."""
+
+    code: str
+    known: bool
+
+
 def record(
     engine: Engine, cells: Mapping[str, str], by: str, *, confirm: bool = False, token: str | None = None
-) -> str:
-    """Log one run from cells as typed; returns its code. `at` left out means now.
+) -> Logged:
+    """Log one run from cells as typed; `at` left out means now, and such a run is never a duplicate.
 
-    token: a one-use token: the second call with the same token logs nothing and returns the first's code.
+    token: a one-use token: the second call with the same token logs nothing and names the first's code, as does
+    a second call with the same cells and the same `at`.
     Errors: Refusal or Refusals (nothing written), Unconfirmed (warnings that confirm=True would pass).
     """
     by = handle(by)
-    cells = {**cells, "at": cells.get("at") or now()}
-    draft = whole(read_draft("run", cells))
+    timed = bool(cells.get("at"))
+    draft = whole(read_draft("run", {**cells, "at": cells.get("at") or now()}))
+    sheet_row = f"{draft.fingerprint()}:1" if timed else None  # as the first such row of a sheet
     with writing(engine) as connection:
-        if token is not None:
-            known = connection.scalar(select(run.c.code).where(run.c.token == token))
+        for column, mark in ((run.c.token, token), (run.c.sheet_row, sheet_row)):
+            known = connection.scalar(select(run.c.code).where(column == mark)) if mark else None
             if known is not None:
-                return known
+                return Logged(known, known=True)
         _free_code(connection, draft)
         findings = Findings()
-        written = place_runs(connection, [Arrival(draft, token=token)], by, findings, confirm=confirm)
+        written = place_runs(
+            connection, [Arrival(draft, sheet_row=sheet_row, token=token)], by, findings, confirm=confirm
+        )
         settle(findings, confirm)
         (_, code), = written
         chain.append(connection, by, "log", "run", code, after=draft.content(), runs=written)
-    return code
+    return Logged(code, known=False)
 
 
 def _free_code(connection, draft: Draft) -> None:

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 from sqlalchemy import Connection, Select, func, select
 
-from labbook.book.chain import first_broken
+from labbook.book.chain import first_broken, how_many
 from labbook.book.clock import local, now
 from labbook.book.tables import SHELF, ledger, ledger_run, reading, run
 
@@ -109,15 +109,6 @@ def _text(value) -> str:
     if isinstance(value, bool):
         return "yes" if value else "no"
     return str(value)
-
-
-def how_many(ranges: str) -> int:
-    """How many codes stand in ranges such as 'R-0001..R-0003, R-0007'."""
-    count = 0
-    for part in filter(None, ranges.split(", ")):
-        first, _, last = part.partition("..")
-        count += int(last.rpartition("-")[2]) - int(first.rpartition("-")[2]) + 1 if last else 1
-    return count
 
 
 def people_and_acts(connection: Connection) -> tuple[list[str], list[str]]:

@@ -73,11 +73,12 @@ def run_warnings(
     for key, field in (("Sp", "f"), ("Re", "U")):
         span = known.span(swimmer_id, key) if known else _span(connection, resolved.c[key], *mine)
         found += _outside(key, field, values[key], span, moving or key == "Sp", written)
-    Sp = values["Sp"]
-    if np.isfinite(Sp) and np.isfinite(values["U"]):
-        similar = resolved.c.Sp.between(Sp / SIMILAR_SP, Sp * SIMILAR_SP)
+    if np.isfinite(values["U"]):
+        # among similar Sp; without an Sp (T not typed, say) among all of them
+        Sp = values["Sp"] if np.isfinite(values["Sp"]) else None
+        similar = () if Sp is None else (resolved.c.Sp.between(Sp / SIMILAR_SP, Sp * SIMILAR_SP),)
         span = (
-            known.span(swimmer_id, "U", Sp) if known else _span(connection, resolved.c.U_cap, *mine, similar)
+            known.span(swimmer_id, "U", Sp) if known else _span(connection, resolved.c.U_cap, *mine, *similar)
         )
         found += _outside("U", "U", values["U"], span, moving, lambda v: shown("U", v))
     return found
@@ -154,4 +155,6 @@ def _last_value(item: Item, new: Reading) -> float | None:
 
 def _factor(ratio: float) -> str:
     """'5.3', '47' or '1020', never a power of ten: people read it at the bench."""
+    if ratio >= 1e6:
+        return "over a million"
     return f"{ratio:.2g}" if ratio < 100 else f"{float(f'{ratio:.3g}'):.0f}"

@@ -80,7 +80,8 @@ def _table(connection, rows, texts, keys, prefixes) -> pd.DataFrame:
     columns: dict[str, object] = {}
     lists = list(zip(*rows, strict=True)) if rows else [()] * (n + width * len(keys))
     for name, values in zip(texts, lists[:n], strict=True):
-        columns[name] = _text_column(connection, name, values)
+        # object, or pandas would turn an absent text into NaN beside one that is there
+        columns[name] = pd.Series(_text_column(connection, name, values), dtype=None if name == "at" else object)
     for i, key in enumerate(keys):
         first = n + width * i
         numbers = [np.array(values, dtype=float) for values in lists[first : first + width]]
@@ -98,7 +99,7 @@ def _text_column(connection, name, values):
         ids = np.array([v or 0 for v in values], dtype=np.int64)
         unique, which = np.unique(ids, return_inverse=True)
         named = np.array([codes.get(int(i)) for i in unique], dtype=object)
-        return pd.Categorical(named[which]).astype(object) if len(ids) else np.array([], object)
+        return named[which] if len(ids) else ids.astype(object)
     if name == "at":
         return pd.to_datetime(pd.Series(values, dtype=object), utc=True).dt.tz_convert(tzlocal())
     if name == "typed":
@@ -137,7 +138,7 @@ def shelf_table(connection: Connection, name: str) -> pd.DataFrame:
     """Fluids, materials, swimmers or rigs: code, text columns, `typed` documents, how many runs, newest first."""
     table = SHELF[name]
     rows = connection.execute(select(table).order_by(table.c.retired, table.c.id.desc())).mappings().all()
-    frame_ = pd.DataFrame([{**r, "typed": document(r["typed"])} for r in rows], columns=list(table.c.keys()))
+    frame_ = pd.DataFrame([{**r, "typed": document(r["typed"])} for r in rows], columns=list(table.c.keys()), dtype=object)
     column = {"fluid": run.c.fluid_id, "swimmer": run.c.swimmer_id, "rig": run.c.rig_id}.get(name)
     if column is not None:
         used = dict(connection.execute(select(column, func.count()).group_by(column)).all())
@@ -150,7 +151,7 @@ def readings_table(connection: Connection, *, fluid_id=None, material_id=None) -
     where = reading.c.fluid_id == fluid_id if fluid_id is not None else reading.c.material_id == material_id
     query = select(reading).where(where).order_by(reading.c.on.desc(), reading.c.id)
     rows = connection.execute(query).mappings().all()
-    return pd.DataFrame([{**r, "typed": document(r["typed"])} for r in rows], columns=list(reading.c.keys()))
+    return pd.DataFrame([{**r, "typed": document(r["typed"])} for r in rows], columns=list(reading.c.keys()), dtype=object)
 
 
 def recent(connection: Connection, name: str, by: str | None = None) -> list[str]:
@@ -214,7 +215,7 @@ def ledger_lines(
     for row in rows:
         for side in ("before", "after"):
             row[side] = json.loads(row[side]) if row[side] else {}
-    return pd.DataFrame(rows, columns=list(ledger.c.keys()))
+    return pd.DataFrame(rows, columns=list(ledger.c.keys()), dtype=object)
 
 
 def head(connection: Connection) -> str:

@@ -1,5 +1,6 @@
 """Runs written and derived again: the rows of `run` and of the stored view, always together."""
 
+import json
 from collections.abc import Callable, Iterator
 
 from sqlalchemy import Connection, bindparam, delete, select
@@ -12,7 +13,8 @@ from labbook.book.stored_view import COLUMNS, SENTENCES, digests, resolved
 from labbook.book.tables import run
 
 FACTS = (run.c.id, run.c.code, run.c.swimmer_id, run.c.fluid_id, run.c.rig_id, run.c.at, run.c.drive,
-         run.c.typed, run.c.state)  # fmt: skip
+         run.c.typed, run.c.state, run.c.by, run.c.series, run.c.video, run.c.note, run.c.why)  # fmt: skip
+TYPED_TEXT = len(FACTS)  # a row that is being logged carries its typed quantities in JSON here
 
 
 def facts_of(rows) -> RunFacts:
@@ -30,6 +32,12 @@ def shelf_for(connection: Connection, rows) -> Shelf:
     )
 
 
+def facts_text(row) -> str:
+    """What was typed on a run selected as FACTS, as one text: the stored row's digest covers it too."""
+    typed = row[TYPED_TEXT] if len(row) > TYPED_TEXT else json.dumps(document(row[7]), ensure_ascii=False)
+    return "\x1e".join([typed, *(cell or "" for cell in row[9:TYPED_TEXT])])
+
+
 def stored_rows(rows, facts: RunFacts, derived: Derived) -> list[tuple]:
     """Rows of the stored view, in COLUMNS order, of runs selected as FACTS; NaN where a value is absent."""
     ids = [r[0] for r in rows]
@@ -38,7 +46,7 @@ def stored_rows(rows, facts: RunFacts, derived: Derived) -> list[tuple]:
         (r[5], r[8], str(r[2]), str(r[3]), *(s[i] for s in said), derived.marks[i])
         for i, r in enumerate(rows)
     ]
-    told = digests(ids, derived.floats, texts)
+    told = digests(ids, derived.floats, [(*t, facts_text(r)) for t, r in zip(texts, rows, strict=True)])
     material = derived.material.tolist()
     floats = derived.floats.tolist()
     return [

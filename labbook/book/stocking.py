@@ -145,6 +145,11 @@ def retire(engine: Engine, name: str, code: str, why: str, by: str, *, back: boo
 
 
 def _one_reading(connection, draft: Draft, by, confirm) -> str:
+    # dated and equal in every cell: the same reading; undated ones are never duplicates
+    sheet_row = f"{draft.fingerprint()}:1" if "on" in draft.texts else None
+    known = connection.scalar(select(reading.c.code).where(reading.c.sheet_row == sheet_row)) if sheet_row else None
+    if known is not None:
+        return known
     batches = Batches(connection, [draft])
     findings = Findings()
     batch = batches.of(draft, "", findings)
@@ -152,7 +157,7 @@ def _one_reading(connection, draft: Draft, by, confirm) -> str:
     batches.watch(batch, draft, "", findings)
     findings.warned += draft.warned
     settle(findings, confirm)
-    code = write_reading(connection, draft, batch)
+    code = write_reading(connection, draft, batch, sheet_row)
     changed = derive_again(connection, uses(**batch.target()))
     chain.append(connection, by, "add", "reading", code, after=draft.content(), runs=changed)
     return code

@@ -6,8 +6,8 @@ from contextlib import closing
 import pytest
 
 from labbook import Book
-from labbook.book.chain import ranges
-from labbook.book.ledger_pages import how_many, ledger_page
+from labbook.book.chain import how_many, ranges
+from labbook.book.ledger_pages import ledger_page
 
 
 def test_lines_stand_newest_first_with_before_after_and_why(open_page, demo_book):

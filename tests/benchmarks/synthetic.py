@@ -84,13 +84,13 @@ def _facts_row(part: RunFacts, i: int, run_id: int) -> tuple:
     day = np.datetime64("1970-01-01") + (int(part.days[i]) - 719_163)
     at = f"{day}T{8 + run_id % 10:02d}:{run_id % 60:02d}:00Z"
     return (run_id, f"R-{run_id:04d}", int(part.swimmer[i]), int(part.fluid[i]), int(part.rig[i]), at,
-            part.drive[i], typed, "kept")  # fmt: skip
+            part.drive[i], typed, "kept", ("wren", "knot", "pike")[run_id % 3], f"sweep {run_id // 10}", None, None,
+            None)  # fmt: skip
 
 
 def _run_row(row: tuple) -> tuple:
-    run_id, code, swimmer, fluid, rig, at, drive, typed, state = row
-    return (run_id, code, run_id, swimmer, fluid, rig, at, ("wren", "knot", "pike")[run_id % 3], drive,
-            f"sweep {run_id // 10}", None, None, state, None, json.dumps(typed), None, at, None, None)  # fmt: skip
+    run_id, code, swimmer, fluid, rig, at, drive, typed, state, by, series, *_ = row
+    return (run_id, code, run_id, swimmer, fluid, rig, at, by, drive, series, None, None, state, None, json.dumps(typed), None, at, None, None)  # fmt: skip
 
 
 def run_sheet(n: int) -> str:

@@ -1,6 +1,7 @@
 """The ledger: a line for every act, a chain that shows tampering, runs that are amended and voided but never lost."""
 
 import json
+import shutil
 import sqlite3
 from contextlib import closing
 from datetime import UTC, datetime, timedelta
@@ -9,6 +10,7 @@ import pytest
 from sqlalchemy.exc import DatabaseError
 
 from labbook import Book, Refusal
+from labbook.book.chain import first_broken
 from labbook.book.ledger import young_enough_for_typo
 from labbook.book.opening import writing
 from labbook.book.queries import ledger_lines
@@ -318,7 +320,7 @@ def test_a_forged_line_with_a_fresh_digest_breaks_the_next(told_story, by_hand):
 def test_a_stored_number_changed_in_its_last_digit_is_named(filled, by_hand, column, key):
     ((value,),) = by_hand(filled, f"select {column} from resolved where run_id=3")
     by_hand(filled, f"UPDATE resolved SET {column}=? WHERE run_id=3", value * (1 + 2e-6))
-    assert filled.check() == [f"R-0003: a stored number was changed by hand ({key})"]
+    assert filled.check() == [f"R-0003: a stored number or what was typed was changed by hand ({key})"]
 
 
 def test_one_bit_is_enough(filled, by_hand):
@@ -326,16 +328,16 @@ def test_one_bit_is_enough(filled, by_hand):
 
     ((value,),) = by_hand(filled, "select Sp from resolved where run_id=3")
     by_hand(filled, "UPDATE resolved SET Sp=? WHERE run_id=3", math.nextafter(value, 10))
-    assert filled.check() == ["R-0003: a stored number was changed by hand"]
+    assert filled.check() == ["R-0003: a stored number or what was typed was changed by hand"]
 
 
 @pytest.mark.parametrize(("statement", "said"), [
-    ("UPDATE resolved SET Sp='large' WHERE run_id=2", "R-0002: a stored number was changed by hand (Sp)"),
-    ("UPDATE resolved SET Sp=NULL WHERE run_id=2", "R-0002: a stored number was changed by hand (Sp)"),
-    ("UPDATE resolved SET St=0.3 WHERE run_id=9", "R-0009: a stored number was changed by hand (St)"),
-    ("UPDATE resolved SET mu_from='measured' WHERE run_id=2", "R-0002: a stored number was changed by hand"),
-    ("UPDATE resolved SET marks='{}' WHERE run_id=4", "R-0004: a stored number was changed by hand"),
-    ("UPDATE resolved SET state='void' WHERE run_id=2", "R-0002: a stored number was changed by hand"),
+    ("UPDATE resolved SET Sp='large' WHERE run_id=2", "R-0002: a stored number or what was typed was changed by hand (Sp)"),
+    ("UPDATE resolved SET Sp=NULL WHERE run_id=2", "R-0002: a stored number or what was typed was changed by hand (Sp)"),
+    ("UPDATE resolved SET St=0.3 WHERE run_id=9", "R-0009: a stored number or what was typed was changed by hand (St)"),
+    ("UPDATE resolved SET mu_from='measured' WHERE run_id=2", "R-0002: a stored number or what was typed was changed by hand"),
+    ("UPDATE resolved SET marks='{}' WHERE run_id=4", "R-0004: a stored number or what was typed was changed by hand"),
+    ("UPDATE resolved SET state='void' WHERE run_id=2", "R-0002: a stored number or what was typed was changed by hand"),
     ("UPDATE resolved SET material_id=2 WHERE run_id=2",
      "R-0002: the stored view holds another time, state, swimmer, fluid or material than the run"),
     ("DELETE FROM resolved WHERE run_id=2", "R-0002: has no stored numbers"),
@@ -346,7 +348,7 @@ def test_other_changes_of_the_stored_view(filled, by_hand, statement, said):
 
 
 @pytest.mark.parametrize(("statement", "said"), [
-    ("UPDATE run SET typed=replace(typed, '5.1e-05', '5.2e-05') WHERE id=1", "R-0001: U is stale"),
+    ("UPDATE run SET typed=replace(typed, '5.1e-05', '5.2e-05') WHERE id=1", "R-0001: a stored number or what was typed was changed by hand (U)"),
     ("UPDATE run SET at='2026-03-02T10:00:01Z' WHERE id=1", "R-0001: the stored view holds another time"),
     ("UPDATE run SET fluid_id=1 WHERE id=1", "R-0001: mu is stale"),
     ("UPDATE swimmer SET typed=replace(typed, '0.03,', '0.031,') WHERE code='pipe-1'", "R-0005: L_tail is stale"),
@@ -371,3 +373,36 @@ def test_check_after_everything(filled, folder, tmp_path):
     with Book.open(tmp_path / "copy.db") as copy:
         assert copy.check() == []
     assert filled.check() == []
+
+
+HAND_EDITS = {
+    "typed text": "UPDATE run SET typed = json_set(typed, '$.f[0]', '9.99 Hz') WHERE id = 1",
+    "note": "UPDATE run SET note = 'nothing odd' WHERE id = 1",
+    "who": "UPDATE run SET by = 'somebody' WHERE id = 1",
+    "a cell that is no cell": "UPDATE run SET typed = json_set(typed, '$.f', '9.9 Hz') WHERE id = 1",
+    "a reading that is no reading": "UPDATE reading SET typed = 'garbage' WHERE id = 1",
+}
+
+
+@pytest.mark.parametrize("statement", HAND_EDITS.values(), ids=HAND_EDITS.keys())
+def test_check_names_what_was_edited_by_hand(demo_book, tmp_path, statement):
+    path = tmp_path / "edited.db"
+    shutil.copy(demo_book, path)
+    with closing(sqlite3.connect(path)) as raw:
+        raw.execute(statement)
+        raw.commit()
+    with Book.open(path) as book:
+        found = book.check()
+    assert len(found) == 1
+    assert ("M-0001" if "reading" in statement else "R-0001") in found[0]
+
+
+def test_check_misses_no_run_that_the_ledger_names(demo_book, tmp_path):
+    path = tmp_path / "shorter.db"
+    shutil.copy(demo_book, path)
+    with closing(sqlite3.connect(path)) as raw:
+        for table, column in (("ledger_run", "run_id"), ("resolved", "run_id"), ("run", "id")):
+            raw.execute(f"DELETE FROM {table} WHERE {column} = 7")
+        raw.commit()
+    with Book.open(path) as book:
+        assert book.check() == ["ledger line 1 names 920 runs, and 919 of them are there"]

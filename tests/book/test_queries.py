@@ -13,7 +13,7 @@ from click.testing import CliRunner
 
 from labbook import Refusal
 from labbook.book.asking import Question, holds
-from labbook.book.queries import count, regime_counts
+from labbook.book.queries import count, ledger_lines, regime_counts
 from labbook.book.stored_view import KEYS
 from labbook.cli import main
 from labbook.exchange.outward import frame_as_csv
@@ -270,3 +270,20 @@ def test_formulas_are_made_harmless(filled, note):
     (row,) = [r for r in csv.DictReader(io.StringIO(text)) if r["code"] == "R-0001"]
     assert row["U [m/s]"] == "-5.1e-05"
     assert as_json(filled, "--text", "R-0001")[0]["note"] == note, "JSON keeps what was typed"
+
+
+def test_a_confirmed_run_beside_an_ordinary_one_keeps_absence_apart(tmp_path):
+    from labbook import Book
+
+    with Book.new(tmp_path / "mixed.db") as book:
+        book.stock("fluid", code="water-a", kind="water", by="wren")
+        book.stock("swimmer", code="fin-1", form="undulating", L_body="100.0 mm", by="wren")
+        for _ in range(3):
+            book.record(swimmer="fin-1", fluid="water-a", f="2.0 Hz", T="21.0 degC", U="80(2) mm/s", by="wren")
+        far = book.record(swimmer="fin-1", fluid="water-a", f="2.0 Hz", T="21.0 degC", U="900(20) mm/s",
+                          by="wren", confirm=True)  # fmt: skip
+        sheets = book.sheets(Question())
+        assert [s.marks.get("U", []) for s in sheets][-1] == ["confirmed"]
+        assert book.sheet(far).texts["why"] is None
+        assert all(s.texts["note"] is None and s.texts["rig"] is None for s in sheets)
+        assert book.ask(ledger_lines, code=far)["why"].tolist() == [None]
