@@ -1,6 +1,7 @@
 """The command line: the same calls as the app and the Python API, from a terminal."""
 
 import os
+import socket
 import subprocess
 import sys
 from pathlib import Path
@@ -14,7 +15,7 @@ from labbook.book.records import KINDS
 from labbook.book.stocking import stock
 from labbook.cli_ask import draw, numbers, runs
 from labbook.cli_print import Bar
-from labbook.errors import LabbookError, Unconfirmed
+from labbook.errors import LabbookError, Refusal, Unconfirmed
 from labbook.exchange import sheets as sheet_files
 
 
@@ -69,7 +70,7 @@ def new(book: str) -> None:
 
 
 @main.command()
-@click.option("--port", type=int, default=8501, show_default=True)
+@click.option("--port", type=click.IntRange(1, 65535), default=8501, show_default=True)
 @click.option("--no-browser", is_flag=True, help="Do not open a browser.")
 @click.option("--fresh", is_flag=True, help="Make the demo book anew, whatever it holds.")
 def demo(port: int, no_browser: bool, fresh: bool) -> None:
@@ -86,7 +87,7 @@ def demo(port: int, no_browser: bool, fresh: bool) -> None:
 
 @main.command("open")
 @click.argument("book", required=False)
-@click.option("--port", type=int, default=8501, show_default=True)
+@click.option("--port", type=click.IntRange(1, 65535), default=8501, show_default=True)
 @click.option("--no-browser", is_flag=True, help="Do not open a browser.")
 def open_(book: str | None, port: int, no_browser: bool) -> None:
     """Open the app on a book."""
@@ -96,6 +97,14 @@ def open_(book: str | None, port: int, no_browser: bool) -> None:
     _serve(target, port, no_browser)
 
 
+def _refuse_taken(port: int) -> None:
+    with socket.socket() as probe:
+        try:
+            probe.bind(("127.0.0.1", port))
+        except OSError as error:
+            raise Refusal("port", port, f"cannot be used ({error.strerror})", "choose another with --port") from None
+
+
 def _serve(target: str, port: int, no_browser: bool) -> None:
     page = Path(__file__).parent / "app" / "main.py"
     command = [
@@ -103,6 +112,7 @@ def _serve(target: str, port: int, no_browser: bool) -> None:
         "--server.port", str(port), "--server.headless", str(no_browser).lower(),
         "--browser.gatherUsageStats", "false",
     ]  # fmt: skip
+    _refuse_taken(port)
     click.echo(f"{Path(target).name} is at http://127.0.0.1:{port} (Ctrl-C ends it)")
     sys.stdout.flush()
     os.environ["LABBOOK_OPEN"] = target

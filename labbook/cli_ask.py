@@ -7,7 +7,9 @@ import pandas as pd
 
 from labbook.api import Book
 from labbook.book.asking import Question, check_key
-from labbook.book.queries import key_counts, regime_counts
+from labbook.book.clock import local, now
+from labbook.book.queries import key_counts, refuse_unknown, regime_counts
+from labbook.charts.axes import house_words
 from labbook.charts.files import save
 from labbook.charts.trend import trend
 from labbook.cli_print import TABLE_KEYS, aligned, runs_table
@@ -52,6 +54,7 @@ def runs(book: str | None, form: str, newest: int | None, **options) -> None:
     """Find runs by regime, ranges, fluid, swimmer, material, person, series, dates and text."""
     question = _question(**options)
     with Book.open(book) as opened:
+        opened.ask(refuse_unknown, question)
         if form == "json":
             click.echo(sheets_as_json(opened.sheets(question, newest)))
             return
@@ -106,13 +109,16 @@ def draw(book: str, x: str, y: str, output: str, colour: str, bars: str, linear:
     for key in (x, y):
         check_key(key)
     with Book.open(book) as opened:
+        opened.ask(refuse_unknown, question)
         table = opened.frame(question, keys=tuple(dict.fromkeys((x, y))), texts=("code", colour))
         drawn = trend(table, x=x, y=y, group=colour, log_x=not linear, log_y=not linear, bars=bars, width=760,
                       height=520)  # fmt: skip
         if not drawn.drawn:
             raise Refusal("draw", f"{x} {y}", "no run that was found has both", "look at `labbook runs`")
         try:
-            save(drawn.chart, output, caption=f"{question.in_words()}. {drawn.caption} Book: {opened.name}.")
+            said = (f"{question.in_words()}.", drawn.caption, house_words((x, y)),
+                    f"{opened.name}, {local(now()):%Y-%m-%d}.")  # fmt: skip
+            save(drawn.chart, output, caption=" ".join(part for part in said if part))
         except OSError as error:
             raise Refusal("output", output, f"cannot be written ({error.strerror})") from None
     click.echo(f"{drawn.drawn} runs drawn into {output}")

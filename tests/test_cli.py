@@ -167,7 +167,9 @@ def test_runs_as_a_table(bench):
     assert lines[0].split()[:5] == ["run", "at", "by", "swimmer", "fluid"]
     assert [line.split()[0] for line in lines[1:4]] == ["R-0001", "R-0002", "R-0003"]
     assert "3 runs: kept" in lines and "0.051(3)" in lines[1]
-    assert run("runs", bench, "--fluid", "water").stdout.splitlines()[0] == "no runs"
+    assert run("runs", bench, "--text", "no such word").stdout.splitlines()[0] == "no runs"
+    refused = run("runs", bench, "--fluid", "water", code=1)
+    assert "no fluid has this code" in refused.stderr
 
 
 def test_runs_as_csv_and_json(bench):

@@ -10,7 +10,10 @@ from labbook.physics import fluids
 
 def density(item: Item, days: np.ndarray, T: np.ndarray, u_T: np.ndarray) -> Resolved:
     """Density (kg/m3) of a fluid: the nearest reading, then the batch's constant, then the correlation."""
-    result = Resolved.empty(len(days), f"no density of {item.code}, and no correlation for {kind(item)}")
+    why = f"no density of {item.code}, and no correlation for {kind(item)}"
+    if item.texts["kind"] == "glycerol-water":
+        why = f"no density of {item.code}, and its glycerol share is not typed"
+    result = Resolved.empty(len(days), why)
     sets = sets_of(item.readings, ("rho",), item.texts["made"])
     if sets:
         chosen = nearest(sets, days)

@@ -107,6 +107,17 @@ def _text_column(connection, name, values):
     return np.array(values, dtype=object)
 
 
+def refuse_unknown(connection: Connection, question: Question) -> None:
+    """Refusal where a question names a fluid, swimmer or material that the shelf does not hold."""
+    for name, codes in (("fluid", question.fluids), ("swimmer", question.swimmers), ("material", question.materials)):
+        table = SHELF[name]
+        known = set(connection.scalars(select(table.c.code).where(table.c.code.in_(codes)))) if codes else set()
+        for code in codes:
+            if code not in known:
+                some = connection.scalars(select(table.c.code).order_by(table.c.id.desc()).limit(8)).all()
+                raise Refusal(name, code, f"no {name} has this code", f"the book has {', '.join(some)}" if some else "")
+
+
 def count(connection: Connection, question: Question) -> int:
     """How many runs the question finds."""
     return connection.scalar(_from(question, func.count()).where(*question.conditions()))
