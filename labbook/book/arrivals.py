@@ -192,7 +192,7 @@ class _Writer:
             return []
         runs = [self._row(a, r, warned.get(i)) for i, (a, r) in enumerate(zip(arrivals, rows, strict=True))]
         write_many(self.connection, run, RUN_COLUMNS, runs)
-        write_stored(self.connection, stored_rows(rows, facts, derived))
+        write_stored(self.connection, *stored_rows(rows, facts, derived))
         return [(r[0], r[1]) for r in rows]
 
     def _facts(self, arrival, run_id, code) -> tuple:

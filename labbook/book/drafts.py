@@ -22,7 +22,8 @@ class Draft:
     """A record read from cells.
 
     texts: column -> text (dates and moments as stored); typed: column -> Typed; said: column -> the typed
-    quantity as a text that reads the same anywhere; warned: (column, sentence) pairs that want a confirmation.
+    quantity as a text that reads the same anywhere; warned: (column, sentence) pairs that want a confirmation;
+    entries: each typed quantity in JSON; told: each cell's column and content, in any order.
     """
 
     kind: str
@@ -30,7 +31,8 @@ class Draft:
     typed: dict[str, Typed]
     said: dict[str, str] = field(default_factory=dict)
     warned: tuple[tuple[str, str], ...] = ()
-    entries: tuple[str, ...] = ()
+    entries: Sequence[str] = ()
+    told: Sequence[str] = ()
 
     def stored(self) -> str:
         """The typed quantities as the book stores them, in JSON."""
@@ -46,8 +48,7 @@ class Draft:
 
     def fingerprint(self) -> str:
         """Digest of the content: equal for equal rows."""
-        told = "\x1f".join([f"{k}\x1e{v}" for k, v in sorted(self.content().items())])
-        return hashlib.blake2b(told.encode(), digest_size=16).hexdigest()
+        return hashlib.blake2b("\x1f".join(sorted(self.told)).encode(), digest_size=16).hexdigest()
 
 
 class _Cell(NamedTuple):
@@ -58,6 +59,7 @@ class _Cell(NamedTuple):
     said: str = ""
     warning: str = ""
     entry: str = ""
+    told: str = ""
     refusal: Refusal | None = None
 
 
@@ -86,19 +88,24 @@ class DraftReader:
         texts: dict[str, str] = {}
         typed: dict[str, Typed] = {}
         said: dict[str, str] = {}
-        warned, entries, refused = [], [], {}
+        warned, entries, told, refused = [], [], [], {}
         has_key = self.key_at is not None and self.key_at < len(cells)
         row_key = str(cells[self.key_at] or "").strip() if has_key else ""
         given = cells if self.in_order else [cells[i] for i, _, _ in self.columns if i < len(cells)]
         for (_, column, cache), written in zip(self.columns, given, strict=False):  # a short row ends early
             known = written if column != "value" else (row_key, written)
-            cell = cache.get(known)
-            if cell is None:
+            try:
+                cell = cache[known]
+            except KeyError:
                 cell = cache[known] = self._cell(column, written, row_key)
-            text, one, printed_, warning, entry, refusal = cell
+            if cell is _EMPTY:
+                continue
+            text, one, printed_, warning, entry, content, refusal = cell
             if text is not None:
                 texts[column] = text
+                told.append(content)
             elif one is not None:
+                told.append(content)
                 typed[column] = one
                 said[column] = printed_
                 entries.append(entry)
@@ -114,7 +121,7 @@ class DraftReader:
                 reason = f"is missing, and every {self.kind.name} needs it"
                 findings.append(Refusal(column, None, reason, _hint(self.kind, column)))
         findings += _impossible(self.kind.name, texts, typed)
-        return Draft(self.kind.name, texts, typed, said, tuple(warned), tuple(entries)), findings
+        return Draft(self.kind.name, texts, typed, said, tuple(warned), entries, told), findings
 
     def _cell(self, column: str, written: str | None, row_key: str) -> _Cell:
         row, text = self.kind, "" if written is None else str(written).strip()
@@ -126,12 +133,17 @@ class DraftReader:
                 if key not in QUANTITIES:
                     return _EMPTY  # the unknown key is refused at its own column
                 one = read(key, text, self.units.get(column), self.decimal_comma)
-                return _Cell(None, one, printed(key, one), _implausible(column, key, one), _entry(column, one))
+                said = printed(key, one)
+                return _Cell(
+                    None, one, said, _implausible(column, key, one), _entry(column, one), f"{column}\x1e{said}"
+                )
             if column in row.spreads:
                 one = read_uncertainty(row.spreads[column], text, self.units.get(column))
-                return _Cell(None, one, printed_uncertainty(one), "", _entry(column, one))
+                said = printed_uncertainty(one)
+                return _Cell(None, one, said, "", _entry(column, one), f"{column}\x1e{said}")
             if column in row.texts:
-                return _Cell(_text(row, column, text))
+                content = _text(row, column, text)
+                return _Cell(content, told=f"{column}\x1e{content}")
         except Refusal as refusal:
             return _Cell(refusal=Refusal(column, refusal.typed, refusal.reason, refusal.remedy))
         return _Cell(refusal=Refusal(column, None, f"a {row.name} has no such column", _columns(row)))

@@ -74,7 +74,7 @@ def big_book(path: Path, n: int) -> Book:
             part = columns.slice(start, start + BATCH)
             rows = [_facts_row(part, i, start + i + 1) for i in range(len(part))]
             write_many(connection, run, RUN_COLUMNS, [_run_row(r) for r in rows])
-            write_stored(connection, stored_rows(rows, part, derive(part, shelf)))
+            write_stored(connection, *stored_rows(rows, part, derive(part, shelf)))
     return book
 
 

@@ -10,7 +10,6 @@ import pytest
 from sqlalchemy.exc import DatabaseError
 
 from labbook import Book, Refusal
-from labbook.book.chain import first_broken
 from labbook.book.ledger import young_enough_for_typo
 from labbook.book.opening import writing
 from labbook.book.queries import ledger_lines
