@@ -99,6 +99,8 @@ def open_(book: str | None, port: int, no_browser: bool) -> None:
 
 def _refuse_taken(port: int) -> None:
     with socket.socket() as probe:
+        if os.name != "nt":  # a server that has just ended leaves its port waiting; on Windows this means another thing
+            probe.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
         try:
             probe.bind(("127.0.0.1", port))
         except OSError as error:

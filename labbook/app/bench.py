@@ -103,11 +103,23 @@ def _form(book: Book) -> dict[str, str]:
         cells["drive"] = st.selectbox(
             "drive", DRIVES, index=None, key="bench:drive", placeholder="as usual for this swimmer"
         ) or ""  # fmt: skip
-    live.warnings(cells)
+    waiting = _waiting(cells)
+    live.warnings(cells, waiting)
     cells["note"] = st.text_input("Note", key="bench:note", placeholder="anything odd about this trial") or ""
     _refusal("note")
-    _log(book, cells)
+    _log(book, cells, bool(waiting))
     return cells
+
+
+def _waiting(cells: dict[str, str]) -> list[str]:
+    """The warnings that wait for a confirming touch; cells changed since are warned about anew."""
+    if session.warned(PLACE) and st.session_state.get("bench:warned-of") != _but_note(cells):
+        session.forget(PLACE)
+    return session.warned(PLACE)
+
+
+def _but_note(cells: dict[str, str]) -> dict[str, str]:
+    return {k: v for k, v in cells.items() if k != "note"}
 
 
 def _fields(keys: tuple[str, ...], cells: dict[str, str], columns: int) -> None:
@@ -130,12 +142,8 @@ def _refusal(key: str, cells: dict[str, str] | None = None) -> None:
         session.say_refused(sentence)
 
 
-def _log(book: Book, cells: dict[str, str]) -> None:
-    waiting = session.warned(PLACE)
-    for sentence in waiting:
-        st.warning(sentence)
+def _log(book: Book, cells: dict[str, str], confirmed: bool) -> None:
     first, second, last = st.columns([3, 3, 5], vertical_alignment="center")
-    confirmed = bool(waiting)
     label = "It is right, log it" if confirmed else "Log trial"
     if first.button(label, type="primary", key="bench:log", width="stretch"):
         given = {k: v for k, v in cells.items() if v}
@@ -147,6 +155,7 @@ def _log(book: Book, cells: dict[str, str]) -> None:
             ),
             PLACE,
         )  # fmt: skip
+        st.session_state["bench:warned-of"] = _but_note(cells)
         if done:
             session.spend_token(PLACE)
             st.session_state["bench:last"] = codes[0]
@@ -158,7 +167,7 @@ def _log(book: Book, cells: dict[str, str]) -> None:
         st.rerun()
     code = st.session_state.get("bench:last")
     if code:
-        with last:
+        with last, st.container(key="lb-last"):
             st.page_link(st.session_state["pages"]["runs"], label=f"last: {code}, open or amend",
                          query_params={"run": code})
     general = {k: v for k, v in session.refused(PLACE).items() if k not in cells}

@@ -10,6 +10,8 @@ from labbook.book.bench_queries import siblings
 from labbook.book.preview import Preview
 from labbook.charts.strips import strips
 from labbook.charts.trend import trend
+from labbook.registry.catalogue import NUMBERS
+from labbook.registry.quantities import RUN_KEYS
 from labbook.registry.written import written
 
 STRIPS = ("Sp", "Re_omega", "St", "Re")
@@ -35,18 +37,16 @@ def refused_in(key: str, cells: dict[str, str]) -> str | None:
     return preview(some).refused.get(key)
 
 
-def warnings(cells: dict[str, str]) -> None:
-    """What logging would warn about, and what is marked, before it is logged."""
+def warnings(cells: dict[str, str], waiting: list[str]) -> None:
+    """What logging would warn about, or did and waits for a touch, each once; and what is marked."""
     seen = preview(cells)
-    for _, sentence in seen.warned:
-        st.warning(sentence, icon=":material/warning:")
+    said = list(dict.fromkeys(waiting or (sentence for _, sentence in seen.warned)))
     if "extrapolated" in seen.marks.get("mu", []):
-        said = seen.sentences.get("mu_from", "viscosity")
-        st.warning(f"{said}: this temperature lies outside, the viscosity is extrapolated.",
-                   icon=":material/thermometer:")
-    for key in ("mu", "E"):
-        if key in seen.why_absent and key == "mu" and cells.get("T"):
-            session.note(f"no {key}: {seen.why_absent[key]}")
+        source = seen.sentences.get("mu_from", "viscosity")
+        said.append(f"{source}: this temperature lies outside, the viscosity is extrapolated.")
+    session.warn(said)
+    if "mu" in seen.why_absent and cells.get("T") and not cells.get("f"):
+        session.note(f"no mu: {seen.why_absent['mu']}")
 
 
 @st.cache_data(show_spinner=False, max_entries=50)
@@ -73,9 +73,23 @@ def panel(cells: dict[str, str]) -> None:
     ]  # fmt: skip
     dark = session.is_dark()
     st.altair_chart(strips(rows, dark), theme=None, key="bench:strips")
+    for line in lacking(cells, seen):
+        session.note(line)
     if seen.regimes:
         session.tags(seen.regimes)
     _trend(cells, seen, earlier, dark)
+
+
+def lacking(cells: dict[str, str], seen: Preview) -> list[str]:
+    """'Sp, Re_ω: needs rho: …' for the strips that stay empty although all that they take from the form is typed."""
+    if not (cells.get("f") and cells.get("T")):
+        return []
+    found: dict[str, list[str]] = {}
+    for key in STRIPS:
+        typed = all(cells.get(k) for k in NUMBERS[key].inputs if k in RUN_KEYS and k != "B")
+        if seen.values.get(key) is None and key in seen.why_absent and typed:
+            found.setdefault(seen.why_absent[key], []).append(NUMBERS[key].symbol)
+    return [f"{', '.join(symbols)}: {why}" for why, symbols in found.items()]
 
 
 def _trend(cells, seen: Preview, earlier: pd.DataFrame, dark: bool) -> None:

@@ -6,7 +6,7 @@ from collections.abc import Callable
 import streamlit as st
 
 from labbook.app import record_parts as parts
-from labbook.app import session
+from labbook.app import record_readings, session
 from labbook.book import ledger
 from labbook.book.bench_queries import cells_again
 from labbook.book.records import KINDS
@@ -59,6 +59,7 @@ def _whole(sheet: RunSheet, place: str) -> None:
     with left:
         parts.facts(sheet)
         parts.resolved(sheet)
+        record_readings.show(sheet)
         parts.viscosity(sheet, place)
     with right:
         parts.numbers(sheet)
@@ -95,6 +96,8 @@ def _acts(sheet: RunSheet, place: str) -> None:
             )
         if st.button("Again, with one change", key=f"{place}:again"):
             st.session_state["again"] = session.book().ask(cells_again, sheet.texts["code"])
+            said = f"The settings of {sheet.texts['code']} stand in the form: change one, type what was seen"
+            session.keep_message(said, ":material/content_copy:")
             session.go("bench")
     if chosen == "amend":
         with st.container(border=True):

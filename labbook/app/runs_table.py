@@ -1,6 +1,7 @@
 """The table of runs: as typed on the left, numbers on the right, sorted by value however it is written."""
 
 import math
+from collections.abc import Iterable
 
 import pandas as pd
 import streamlit as st
@@ -40,6 +41,9 @@ ROW = 40
 TALL, FOLDED = 11, 4  # rows in sight: alone, and above an open sheet
 REST_OF_SCREEN = "flex: none !important; height: max(483px, calc(100vh - 310px));"
 BANDED = ("Re_omega", "Sp", "St")  # numbers that the regimes stand on
+# pixels in the table's font, a little more than it takes: a narrow, a wide and any other letter, a cell's edges
+NARROW, WIDE, LETTER, EDGES = 4.5, 12, 7, 18
+NARROW_LETTERS, WIDE_LETTERS = frozenset(" .,()-/il"), frozenset("mwMW%")
 
 
 def chosen() -> tuple[str, ...]:
@@ -125,7 +129,8 @@ def _cells(state: str, told: str, columns: tuple[str, ...], newest: int, _asked:
     for column in columns:
         if column in KEYS:
             label, frame[column], written_cells[column] = _numeric(found, column)
-            config[column] = st.column_config.NumberColumn(label, help=_label(column))
+            width = wide_enough(label, written_cells[column].values())
+            config[column] = st.column_config.NumberColumn(label, help=_label(column), width=width)
         else:
             frame[column] = _text(found, column)
             config[column] = st.column_config.TextColumn(column)
@@ -138,6 +143,16 @@ def _cells(state: str, told: str, columns: tuple[str, ...], newest: int, _asked:
         )
         config["state"] = st.column_config.TextColumn("void")
     return frame, written_cells, void, config
+
+
+def wide_enough(label: str, cells: Iterable[str]) -> int:
+    """Pixels of a column in which neither its heading nor its longest written cell is cut."""
+    return math.ceil(EDGES + max(map(_pixels, (label, *cells))))
+
+
+def _pixels(text: str) -> float:
+    narrow, wide = sum(c in NARROW_LETTERS for c in text), sum(c in WIDE_LETTERS for c in text)
+    return NARROW * narrow + WIDE * wide + LETTER * (len(text) - narrow - wide)
 
 
 def _style(frame: pd.DataFrame, written_cells: dict[str, dict], void, opened: str) -> Styler:

@@ -4,6 +4,7 @@ import pandas as pd
 import streamlit as st
 
 from labbook.app import live, session
+from labbook.book.asking import Question
 from labbook.book.clock import local, now
 from labbook.exchange.sheets import Table
 from labbook.registry.written import written
@@ -21,17 +22,20 @@ def grid(shared: dict[str, str]) -> None:
         "A block copied from a spreadsheet can be pasted into the first cell."
     )
     stamp = st.session_state.setdefault("series:stamp", now())
-    empty = pd.DataFrame("", index=range(LINES), columns=list(COLUMNS), dtype="string")
+    empty = pd.DataFrame("", index=range(LINES), columns=["line", *COLUMNS], dtype="string")
+    empty["line"] = [str(i + 1) for i in range(LINES)]
     left, right = st.columns([60, 40])
     with left:
         typed = st.data_editor(
             empty, num_rows="dynamic", hide_index=True, key=f"series:grid:{stamp}", row_height=36,
             height=38 + 36 * (LINES + 1),
-            column_config={k: st.column_config.TextColumn(k, width="small") for k in COLUMNS},
+            column_config={k: st.column_config.TextColumn(k, width="small") for k in COLUMNS}
+            | {"line": st.column_config.TextColumn("", width=36, disabled=True, pinned=True)},
         )  # fmt: skip
+    # a line keeps its number when another one is taken out
     lines = [
-        {k: str(v).strip() for k, v in row.items() if isinstance(v, str) and v.strip()}
-        for row in typed.to_dict("records")
+        (int(at) + 1, {k: row[k].strip() for k in COLUMNS if isinstance(row[k], str) and row[k].strip()})
+        for at, row in typed.to_dict("index").items()
     ]
     with right:
         _numbers(shared, lines)
@@ -41,7 +45,7 @@ def grid(shared: dict[str, str]) -> None:
 def _numbers(shared, lines) -> None:
     """Sp and Re_omega of each line, and what is refused in it."""
     rows = []
-    for i, line in enumerate(lines, start=1):
+    for i, line in lines:
         if not line:
             continue
         seen = live.preview({**shared, **line})
@@ -64,7 +68,7 @@ def _save(shared, label, lines, stamp) -> None:
     waiting = session.warned(PLACE)
     for sentence in waiting:
         st.warning(sentence)
-    filled = [(i, line) for i, line in enumerate(lines, start=1) if line]
+    filled = [(i, line) for i, line in lines if line]
     first, second, _ = st.columns([3, 3, 6])
     name = f"They are right, log {len(filled)}" if waiting else f"Log {len(filled)} trials"
     if first.button(name, type="primary", disabled=not filled, width="stretch"):
@@ -89,7 +93,15 @@ def _log(shared, label, filled, stamp, confirm) -> None:
         PLACE,
     )  # fmt: skip
     if done:
-        session.keep_message(f"Series {label or 'without label'}: {loaded[0]}")
+        codes = _codes(fixed)
+        which = f" ({codes[0]} to {codes[-1]})" if len(codes) > 1 else f" ({codes[0]})" if codes else ""
+        session.keep_message(f"Series {label or 'without label'}: {loaded[0]}{which}")
         st.session_state["series:stamp"] = now()
         st.session_state["bench:as-series"] = False
     st.rerun()
+
+
+def _codes(fixed: dict[str, str]) -> list[str]:
+    """The codes of this grid's runs, in its order: those that its person logged at its moment."""
+    asked = Question(since=fixed["at"], until=fixed["at"], people=(fixed["by"],), state="all")
+    return session.book().frame(asked, keys=("f",), texts=("code",))["code"].tolist()

@@ -154,6 +154,13 @@ def caution(text: str) -> None:
     st.html(f'<div class="lb-caution">{html.escape(text)}</div>')
 
 
+def warn(sentences: Sequence[str]) -> None:
+    """Warnings, one below the other in one frame."""
+    if sentences:
+        lines = "".join(f"<div>{html.escape(s)}</div>" for s in sentences)
+        st.html(f'<div class="lb-warned" role="status">{lines}</div>')
+
+
 def tags(words: Sequence[str]) -> None:
     """Short words in a row, such as the regimes of a run."""
     st.html("".join(f'<span class="lb-tag">{html.escape(w)}</span>' for w in words) or "&nbsp;")

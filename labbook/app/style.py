@@ -19,6 +19,15 @@ h3 { font-size: 1.0rem !important; padding: 0.1rem 0 !important; }
 .st-key-lb-who button { border: none; background: transparent; min-height: 40px; }
 .st-key-lb-runs-table > div, .st-key-lb-runs-table [data-testid="stFullScreenFrame"] { height: 100%; }
 .st-key-lb-runs-table [data-testid="stElementToolbar"] { display: none; } /* it would lie over the buttons above */
+.st-key-lb-message { position: fixed; top: 0.35rem; left: 24rem; right: 10.5rem; z-index: 1000000; width: auto !important;
+  pointer-events: none; } /* in the bar: it moves nothing and covers nothing */
+.st-key-lb-message [data-testid="stAlertContainer"] { padding: 0.45rem 0.6rem; min-height: 40px; }
+[data-testid="stLayoutWrapper"]:has(> .st-key-lb-message) { position: absolute; }
+.st-key-lb-message p { font-size: 0.86rem; line-height: 1.2; }
+.stPageLink a { min-height: 40px; }
+.st-key-lb-last a p { text-decoration: underline; color: light-dark(#0B6E75, #4FB3B8); }
+.lb-warned { border: 1px solid #E69F00; border-radius: 0.4rem; background: rgba(230,159,0,0.12); font-size: 0.88rem;
+  line-height: 1.35; padding: 0.35rem 0.7rem; }
 .lb-refused { color: light-dark(#B5452C, #E58468); font-size: 0.86rem; line-height: 1.25; margin: -0.2rem 0 0.1rem 0; }
 .lb-note { font-size: 0.88rem; opacity: 0.8; line-height: 1.35; }
 .lb-caution { font-size: 0.86rem; line-height: 1.4; border-left: 3px solid #E69F00; padding: 0.1rem 0 0.1rem 0.6rem; }

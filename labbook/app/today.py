@@ -6,12 +6,14 @@ import pandas as pd
 import streamlit as st
 
 from labbook.app import session
+from labbook.app.record_parts import as_typed
 from labbook.book.asking import Question
 from labbook.book.bench_queries import cells_again
 from labbook.book.run_sheet import RunSheet
-from labbook.registry.written import shown, written
+from labbook.registry.written import written
 
 SHOWN = 12
+COPIED = ":material/content_copy:"
 NUMBERS = ("Sp", "Re_omega", "St")
 
 
@@ -59,7 +61,7 @@ def _row(sheet: RunSheet, day: str) -> dict[str, str]:
 def _as_typed(sheet: RunSheet, key: str) -> str:
     if key not in sheet.typed:
         return ""
-    return shown(key, sheet.values[key], sheet.u[key], sheet.typed[key][1])
+    return as_typed(sheet.typed[key])
 
 
 def _acts(sheet: RunSheet) -> None:
@@ -69,4 +71,5 @@ def _acts(sheet: RunSheet) -> None:
         session.go("runs", run=code)
     if second.button("Again, with one change", width="stretch"):
         st.session_state["again"] = session.book().ask(cells_again, code)
+        session.keep_message(f"The settings of {code} stand in the form: change one, type what was seen", COPIED)
         st.rerun()

@@ -8,7 +8,6 @@ from labbook.app import session
 from labbook.book.stored_view import KEYS
 from labbook.charts.dialect_axis import dialects
 from labbook.registry.catalogue import NUMBERS
-from labbook.registry.quantities import QUANTITIES
 
 AXES = (*NUMBERS, *(k for k in KEYS if k not in NUMBERS))
 SWITCH = ("on", "off")
@@ -79,8 +78,8 @@ def controls(binned: bool) -> None:
     binned: the runs were counted on a grid, not read one by one.
     """
     only_house = "A grid of many runs is counted in the house dialect: narrow the filter first."
-    _pick("across", "x", named=True)
-    _pick("up", "y", named=True)
+    _pick("across", "x")
+    _pick("up", "y")
     if "Sp" in (_value("x"), _value("y")):
         _pick("Sp in dialect", "dialect", disabled=binned, help=only_house if binned else None)
     _pick("colour and mark", "colour")
@@ -88,6 +87,8 @@ def controls(binned: bool) -> None:
     _switch("bands", "bands")
     if has_theory(_value("x"), _value("y")) and _value("dialect") == "house":
         _switch("theory", "theory")
+    elif has_theory(_value("x"), _value("y")):
+        session.note("No theory here: its curve is drawn in the house dialect only.")
     _switch("log across", "logx")
     _switch("log up", "logy")
 
@@ -106,16 +107,11 @@ def _key(name: str) -> str:
     return f"trends:{name}"
 
 
-def _named(key: str) -> str:
-    row = NUMBERS.get(key) or QUANTITIES[key]
-    return f"{key} · {row.name}"
-
-
-def _pick(label: str, name: str, named: bool = False, **options) -> None:
+def _pick(label: str, name: str, **options) -> None:
     st.session_state[_key(name)] = _value(name)
     listed = AXES if name in ("x", "y") else CHOICES[name]
-    st.selectbox(label, listed, key=_key(name), on_change=_write, args=(name,),
-                 format_func=_named if named else str, **options)  # fmt: skip
+    # the bare key: the chart's title has its name, and a longer label would be cut on a small screen
+    st.selectbox(label, listed, key=_key(name), on_change=_write, args=(name,), **options)
 
 
 def _switch(label: str, name: str) -> None:

@@ -2,30 +2,23 @@
 
 import functools
 import html
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
-import pandas as pd
 import streamlit as st
 
-from labbook.api import Book
 from labbook.app import filters, record, session
 from labbook.app.trend_choices import Choices, chosen, controls, has_theory
+from labbook.app.trend_figure import Figure, drawn_as, save
 from labbook.book import queries
 from labbook.book.asking import Question
-from labbook.book.clock import local, now
 from labbook.book.plotting import PlotRows, plot_frame
-from labbook.charts import axes, dialect_axis, theory
-from labbook.charts.files import png_bytes, svg_bytes
-from labbook.charts.trend import SPACE, Trend, caption, counted, trend
-from labbook.exchange.outward import frame_as_csv
-from labbook.registry.catalogue import NUMBERS
-from labbook.registry.regimes import REGIMES
+from labbook.charts import dialect_axis, theory
+from labbook.charts.trend import SPACE, Trend, caption, counted
 
 CHART = "trends:chart"
 THEORY_FROM = 2000  # newest runs that the curve's swimmer is the median of
 # pixels of the chart on the smallest screen, with and without a run beside it: what its lettering must fit
 ALONE, BESIDE = {"width": 760, "height": 480}, {"width": 520, "height": 480}
-FIGURE = {"width": 760, "height": 540}  # pixels of a saved figure
 
 SHEET = """<style>
 [data-testid="stLayoutWrapper"]:has(> .st-key-lb-trend-chart), .st-key-lb-trend-chart {
@@ -71,7 +64,7 @@ def page() -> None:
                           width="stretch")  # fmt: skip
                 record.show(run, place="trends", narrow=True)
         with places[0]:
-            _save(_Figure(plotted, choices, asked, curve, session.book()))
+            save(Figure(plotted, choices, asked, curve, session.book()))
 
 
 def _empty_book() -> None:
@@ -100,27 +93,10 @@ def _theory_runs(state: str, asked: str, _asked: Question):
     )
 
 
-def _drawn(plotted: PlotRows, choices: Choices, curve, *, dark: bool, **options) -> Trend:
-    """The chart of the rows as chosen, over a curve or None; options go to charts.trend."""
-    frame = plotted.frame.rename(columns={"by": "person"})
-    if not choices.house:
-        spoken = dialect_axis.dialects()[choices.dialect]
-        frame = dialect_axis.restated_frame(frame, spoken)
-        for axis, key in (("x_title", choices.x), ("y_title", choices.y)):
-            if key == "Sp":
-                options[axis] = dialect_axis.dialect_title(spoken)
-        # the bands are read in the house dialect
-        options["regimes"] = [r for r in REGIMES.values() if r.number != "Sp"]
-    return trend(
-        frame, x=choices.x, y=choices.y, group=choices.colour, log_x=choices.log_x, log_y=choices.log_y,
-        bars=choices.bars, bands=choices.bands, curve=curve, dark=dark, left_out=plotted.left_out, **options,
-    )  # fmt: skip
-
-
 @st.cache_resource(max_entries=24, show_spinner=False)
 def _on_screen(state: str, asked: str, choices: Choices, picked, dark: bool, _plotted, _curve) -> Trend:
     """The chart of the page, kept for the reruns that change nothing in it."""
-    return _drawn(_plotted, choices, _curve, dark=dark, picked=picked, **(BESIDE if picked else ALONE))
+    return drawn_as(_plotted, choices, _curve, dark=dark, picked=picked, **(BESIDE if picked else ALONE))
 
 
 def _curve(plotted: PlotRows, asked: Question, choices: Choices):
@@ -186,60 +162,3 @@ def _close() -> None:
     session.set_address(run=None)
     # a new chart: in the old one the same mark is picked already and would not open again
     st.session_state[CHART] = st.session_state.get(CHART, 0) + 1
-
-
-# ---- figures to keep
-
-
-@dataclass(frozen=True)
-class _Figure:
-    """A figure to save, made when it is asked for: on light paper, without the run in hand."""
-
-    plotted: PlotRows
-    choices: Choices
-    asked: Question
-    curve: pd.DataFrame | None
-    book: Book
-
-    def drawn(self) -> Trend:
-        return _drawn(self.plotted, self.choices, self.curve, dark=False, **FIGURE)
-
-    def svg(self) -> bytes:
-        drawn = self.drawn()
-        return svg_bytes(drawn.chart, self.words(drawn))
-
-    def png(self) -> bytes:
-        drawn = self.drawn()
-        return png_bytes(drawn.chart, self.words(drawn))
-
-    def csv(self) -> bytes:
-        texts = ("code", "at", "by", "swimmer", "fluid", "material", "series", "state")
-        frame = self.book.frame(self.asked, keys=self.choices.keys, texts=texts)
-        words = self.words(self.drawn())
-        if not self.choices.house:
-            words += " The Sp of this table is in the house dialect."
-        return frame_as_csv(frame, comment=words).encode()
-
-    def words(self, drawn: Trend) -> str:
-        """The caption: filter, counts, dialect, date and book."""
-        spoken = []
-        for key in self.choices.keys:
-            if key == "Sp" and not self.choices.house:
-                spoken.append(dialect_axis.dialect_title(dialect_axis.dialects()[self.choices.dialect]))
-            elif key in NUMBERS:
-                spoken.append(f"{axes.title(key)} ({NUMBERS[key].dialect})")
-        dialect = f" {'. '.join(spoken)}." if spoken else ""
-        place = f"{self.book.name}, {local(now()):%Y-%m-%d}."
-        return f"Runs: {self.asked.in_words()}. {drawn.caption}{dialect} {place}"
-
-
-def _save(figure: _Figure) -> None:
-    with st.popover("Save figure", icon=":material/download:", width="stretch"):
-        name = f"{figure.choices.y}-{figure.choices.x}"
-        for ending, make, mime in (
-            ("svg", figure.svg, "image/svg+xml"), ("png", figure.png, "image/png"),
-            ("csv", figure.csv, "text/csv"),
-        ):  # fmt: skip
-            st.download_button(ending.upper(), make, f"{name}.{ending}", mime, key=f"trends:save:{ending}",
-                               on_click="ignore", width="stretch")  # fmt: skip
-        session.note("Each carries its filter, counts, dialect, date and book.")

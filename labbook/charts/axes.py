@@ -2,7 +2,7 @@
 
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from fractions import Fraction
 
 import altair as alt
@@ -81,6 +81,12 @@ def title(key: str, dialect: str = HOUSE, numbers: Mapping[str, Number] = NUMBER
     row = QUANTITIES[key]
     unit = written_unit(row.unit)
     return f"{symbol} {row.name} ({unit})" if unit else f"{symbol} {row.name}"
+
+
+def house_words(keys: Iterable[str]) -> str:
+    """The numbers among some keys with the house dialect of each, in sentences; '' where none is a number."""
+    named = [f"{title(key)} ({NUMBERS[key].dialect})" for key in dict.fromkeys(keys) if key in NUMBERS]
+    return f"{'. '.join(named)}." if named else ""
 
 
 def title_lines(text: str, longest: int = LONGEST_TITLE) -> list[str]:

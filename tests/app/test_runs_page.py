@@ -259,3 +259,10 @@ def test_an_empty_book_teaches(open_page, tmp_path):
     text = "\n".join(e.value for e in (*page.at.markdown, *page.at.code))
     for word in ("Shelf", "Bench", "labbook demo", "labbook load"):
         assert word in text
+
+
+def test_a_column_is_as_wide_as_its_longest_cell_needs():
+    # measured in Chromium with the table's font: '1.532(14)' takes 53 pixels, a cell's two edges 16
+    wide = runs_table.wide_enough("Sp", ["1.532(14)", "2.2"])
+    assert 53 + 16 <= wide < 53 + 16 + 20
+    assert runs_table.wide_enough("U/(ω L_tail θ₀²)", []) > runs_table.wide_enough("Sp", [])

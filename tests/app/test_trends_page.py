@@ -1,5 +1,6 @@
 """The page of trends, run without a browser: address, controls, open run, empty book, saved figures."""
 
+import csv
 import json
 import sqlite3
 from contextlib import closing
@@ -172,14 +173,15 @@ def test_an_empty_book_says_what_to_do_first(tmp_path, monkeypatch):
 
 FIGURE = """
 import streamlit as st
-from labbook.app import session, trends
+from labbook.app import session, trend_figure
 from labbook.app.trend_choices import chosen
 from labbook.book.asking import Question
 from labbook.book.plotting import plot_frame
 choices, _ = chosen()
 asked = Question(fluids=("sil5000-a",))
-rows = session.book().ask(plot_frame, asked, choices.x, choices.y, choices.group)
-figure = trends._Figure(rows, choices, asked, None, session.book())
+from labbook.charts.dialect_axis import INPUTS
+rows = session.book().ask(plot_frame, asked, choices.x, choices.y, choices.group, also=INPUTS)
+figure = trend_figure.Figure(rows, choices, asked, None, session.book())
 st.session_state["files"] = {"svg": figure.svg(), "png": figure.png(), "csv": figure.csv()}
 """
 
@@ -198,3 +200,21 @@ def test_saved_figures_carry_filter_dialect_date_and_book(demo_book, monkeypatch
     (kept,), = by_hand(demo_book, """select count(*) from run join fluid on fluid.id = fluid_id
         where fluid.code = 'sil5000-a' and state = 'kept'""")  # fmt: skip
     assert len(rows) == kept
+
+
+def test_a_csv_in_another_dialect_holds_the_restated_values(demo_book, monkeypatch):
+    monkeypatch.setenv("LABBOOK_OPEN", str(demo_book))
+    app = AppTest.from_string(FIGURE, default_timeout=60)
+    app.query_params["dialect"] = "length L_body"
+    app.run()
+    assert not app.exception
+    first, *table = app.session_state["files"]["csv"].decode().splitlines()
+    rows = list(csv.DictReader(table))
+    column = "Sp (length L_body)"
+    assert column in rows[0] and f"u_{column}" in rows[0] and "Sp" not in rows[0]
+    assert "L_body (" in first and "house dialect of Sp" not in first
+    house = dict(by_hand(demo_book, "select run.code, Sp * L_body / L_tail from run join resolved on run_id = run.id"))
+    compared = [(float(r[column]), house[r["code"]]) for r in rows if r[column]]
+    assert compared
+    for given, wanted in compared:  # a ratio of two stored floats: rounding alone
+        assert given == pytest.approx(wanted, rel=1e-12)
