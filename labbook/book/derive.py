@@ -2,6 +2,7 @@
 
 import json
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -22,25 +23,41 @@ STATED_BY_RIG = ("f", "theta0", "B", "T")
 
 @dataclass
 class Derived:
-    """The stored row's contents for a block of runs: floats in stored order, sentences, marks."""
+    """The stored row's contents for a block of runs: values in columns, sentences, marks.
 
-    floats: np.ndarray
+    columns: one row a stored column, its runs grouped; place: where each run stands in them.
+    """
+
+    columns: np.ndarray
+    place: np.ndarray
     sentences: dict[str, np.ndarray]
     marks: list[str]
     material: np.ndarray  # ids, 0 for none
 
+    @cached_property
+    def floats(self) -> np.ndarray:
+        """One row a run, in the runs' order, in stored column order."""
+        return np.ascontiguousarray(self.columns.T)[self.place]
 
-def derive(facts: RunFacts, shelf: Shelf) -> Derived:
+
+def batch_columns() -> np.ndarray:
+    """Memory for the columns of one batch after another: asking for it anew takes longer than deriving."""
+    return np.empty((3 * len(KEYS), BATCH))
+
+
+def derive(facts: RunFacts, shelf: Shelf, out: np.ndarray | None = None) -> Derived:
     """Every resolved quantity and number of the runs with its own and shared standard uncertainty.
 
-    Takes any number of runs; a caller with more than BATCH of them keeps memory small by slicing.
+    Takes any number of runs; a caller with more than BATCH of them keeps memory small by slicing, and may hand
+    over `batch_columns()` as `out`: then the last result's columns are overwritten.
     """
     values, u = dict(facts.values), {k: a.copy() for k, a in facts.u.items()}
     _rig_uncertainties(facts, shelf, values, u)
     _mean_temperature(values, u)
     batch = _batches(facts, shelf, values["T"], u["T"])
     swimmers, rigs = Gathered(facts.swimmer, shelf.swimmers), Gathered(facts.rig, shelf.rigs)
-    columns, order = np.empty((3 * len(KEYS), len(facts))), []
+    columns = np.empty((3 * len(KEYS), len(facts))) if out is None else out[:, : len(facts)]
+    order = []
     done = 0
     with np.errstate(all="ignore"):
         for rows in _groups(facts, shelf):
@@ -51,11 +68,9 @@ def derive(facts: RunFacts, shelf: Shelf) -> Derived:
             done += len(rows)
     place = np.empty(len(facts), np.int64)
     place[np.concatenate(order)] = np.arange(len(facts))
-    # take, since columns[:, place] is four times slower; one group alone stands in order already
-    floats = (columns if len(order) == 1 else np.take(columns, place, axis=1)).T
     material = swimmers.pick(slice(None), lambda s: (s.texts["material_id"] or 0, 0.0))[0].astype(np.int64)
     sentences = {f"{k}_from": batch[k].said for k in ("mu", "rho", "lam", "E")}
-    return Derived(floats, sentences, _marks(facts, shelf, batch), material)
+    return Derived(columns, place, sentences, _marks(facts, shelf, batch), material)
 
 
 def _rig_uncertainties(facts, shelf, values, u) -> None:
@@ -128,7 +143,8 @@ def _fill(columns, spread) -> None:
     """Value, own and shared of each key into a block's columns; one absent value makes all three absent."""
     for i, key in enumerate(KEYS):
         three = columns[3 * i : 3 * i + 3]
-        three[0], three[1], three[2] = spread.values[key], spread.own(key), spread.shared(key)
+        three[0] = spread.values[key]
+        three[1], three[2] = spread.sizes(key)
         absent = ~np.isfinite(three[0] + three[1] + three[2])
         if absent.any():
             three[:, absent] = np.nan

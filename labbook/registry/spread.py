@@ -63,22 +63,18 @@ class Spread:
 
     def own(self, key: str) -> np.ndarray:
         """Standard uncertainty from the sources of the run alone."""
-        return self._root_sum(key, lambda source: source in OWN_SOURCES)
+        return self.sizes(key)[0] + np.zeros_like(self.values[key])
 
     def shared(self, key: str) -> np.ndarray:
         """Standard uncertainty from the sources that other runs share."""
-        return self._root_sum(key, lambda source: source not in OWN_SOURCES)
+        return self.sizes(key)[1] + np.zeros_like(self.values[key])
 
-    def _root_sum(self, key, chosen) -> np.ndarray:
-        parts = [part for source, part in self.parts[key].items() if chosen(source)]
-        if not parts:
-            return np.zeros_like(self.values[key])
-        if len(parts) == 1:
-            return np.abs(parts[0])
-        total = parts[0] * parts[0]
-        for part in parts[1:]:
-            total += part * part
-        return np.sqrt(total, out=total)
+    def sizes(self, key: str) -> tuple[np.ndarray | float, np.ndarray | float]:
+        """(own, shared) standard uncertainty; a plain 0.0 where no such source reaches the value."""
+        own, shared = [], []
+        for source, part in self.parts[key].items():
+            (own if source in OWN_SOURCES else shared).append(part)
+        return _root_sum(own), _root_sum(shared)
 
     def budget(self, key: str) -> Mapping[str, np.ndarray]:
         """The parts of one value by source."""
@@ -87,3 +83,14 @@ class Spread:
 
 def _several(result, keys):
     return result if len(keys) > 1 else (result,)
+
+
+def _root_sum(parts: list[np.ndarray]) -> np.ndarray | float:
+    if not parts:
+        return 0.0
+    if len(parts) == 1:
+        return np.abs(parts[0])
+    total = parts[0] * parts[0]
+    for part in parts[1:]:
+        total += part * part
+    return np.sqrt(total, out=total)
