@@ -40,23 +40,17 @@ class Derived:
         return np.ascontiguousarray(self.columns.T)[self.place]
 
 
-def batch_columns() -> np.ndarray:
-    """Memory for the columns of one batch after another: asking for it anew takes longer than deriving."""
-    return np.empty((3 * len(KEYS), BATCH))
-
-
-def derive(facts: RunFacts, shelf: Shelf, out: np.ndarray | None = None) -> Derived:
+def derive(facts: RunFacts, shelf: Shelf) -> Derived:
     """Every resolved quantity and number of the runs with its own and shared standard uncertainty.
 
-    Takes any number of runs; a caller with more than BATCH of them keeps memory small by slicing, and may hand
-    over `batch_columns()` as `out`: then the last result's columns are overwritten.
+    Takes any number of runs; a caller with more than BATCH of them keeps memory small by slicing.
     """
     values, u = dict(facts.values), {k: a.copy() for k, a in facts.u.items()}
     _rig_uncertainties(facts, shelf, values, u)
     _mean_temperature(values, u)
     batch = _batches(facts, shelf, values["T"], u["T"])
     swimmers, rigs = Gathered(facts.swimmer, shelf.swimmers), Gathered(facts.rig, shelf.rigs)
-    columns = np.empty((3 * len(KEYS), len(facts))) if out is None else out[:, : len(facts)]
+    columns = np.empty((3 * len(KEYS), len(facts)))
     order = []
     done = 0
     with np.errstate(all="ignore"):

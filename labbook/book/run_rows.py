@@ -7,7 +7,7 @@ import numpy as np
 from sqlalchemy import Connection, bindparam, delete, select
 
 from labbook.book.bulk import write_many
-from labbook.book.derive import BATCH, Derived, batch_columns, derive
+from labbook.book.derive import BATCH, Derived, derive
 from labbook.book.run_facts import RunFacts, facts_from
 from labbook.book.shelf import Shelf, document, read_shelf
 from labbook.book.stored_view import COLUMNS, FLOAT_COLUMNS, SENTENCES, digests, resolved
@@ -87,10 +87,9 @@ def derive_again(
 ) -> list[tuple[int, str]]:
     """Derive the runs that meet the conditions; write those whose stored row changes and return them."""
     changed: list[tuple[int, str]] = []
-    memory = batch_columns()
     for rows in batches(connection, *where):
         facts = facts_of(rows)
-        columns, fresh = stored_rows(rows, facts, derive(facts, shelf_for(connection, rows), memory))
+        columns, fresh = stored_rows(rows, facts, derive(facts, shelf_for(connection, rows)))
         place = COLUMNS.index("digest")
         known = _digests_between(connection, rows[0][0], rows[-1][0])
         new = [(row, r) for row, r in zip(fresh, rows, strict=True) if known.get(r[0]) != row[place]]

@@ -10,7 +10,7 @@ from synthetic import big_book, facts, ids, run_sheet, stock
 from labbook import Book
 from labbook.book import opening, plotting
 from labbook.book.asking import Question
-from labbook.book.derive import BATCH, batch_columns, derive
+from labbook.book.derive import BATCH, derive
 from labbook.book.queries import frame, regime_counts
 from labbook.book.shelf import read_shelf
 from labbook.book.stored_view import KEYS
@@ -26,11 +26,9 @@ def test_derive(tmp_path):
         shelf = book.ask(read_shelf)
     columns = facts(RUNS, swimmers, fluids, rig)
 
-    memory = batch_columns()
-
     def ours():
         for start in range(0, RUNS, BATCH):
-            derive(columns.slice(start, start + BATCH), shelf, memory)
+            derive(columns.slice(start, start + BATCH), shelf)
 
     strip = np.isin(columns.swimmer, [i for i, s in shelf.swimmers.items() if s.texts["section"] == "strip"])
     glycerol = columns.fluid == next(i for i, f in shelf.fluids.items() if f.code == "gly")
