@@ -1,6 +1,5 @@
 """The formula tree: Python's arithmetic, complex-step slopes, dimensions, and text that must never run."""
 
-import time
 import warnings
 
 import numpy as np
@@ -192,10 +191,8 @@ def test_what_a_formula_may_not_hold(text, reason):
 
 
 def test_a_deeply_nested_exponent_is_read_at_once():
-    # each level read twice would take 2^38 steps
-    start = time.perf_counter()
+    # each level read twice would take 2^38 steps, and this test would never end
     parsed = parse("f**(" + "1/(" * 36 + "1" + ")" * 37, QUANTITIES)
-    assert time.perf_counter() - start < 1.0
     assert parsed.value({"f": 3.0}) == 3.0
 
 
