@@ -12,11 +12,19 @@ from labbook.registry.spread import Spread
 ABSENT = (np.nan, 0.0)
 
 
+def distinct(ids: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """(the ids that occur, ascending, and which of them each is): np.unique for small counts, without sorting."""
+    occur = np.flatnonzero(np.bincount(ids))
+    place = np.empty(occur[-1] + 1, np.int64)
+    place[occur] = np.arange(len(occur))
+    return occur, place[ids]
+
+
 class Gathered:
     """Cells of shelf records spread over the runs that refer to them."""
 
     def __init__(self, ids, items):
-        unique, self.which = np.unique(ids, return_inverse=True)
+        unique, self.which = distinct(ids)
         self.items = [items.get(int(i)) for i in unique]
 
     def pick(self, block, cell):

@@ -57,7 +57,7 @@ def facts(n: int, swimmers, fluids, rig: int, seed: int = 1) -> RunFacts:
 def ids(book: Book) -> tuple[np.ndarray, np.ndarray, int]:
     """Ids of the swimmers, the fluids and the rig."""
     return (
-        book.ask(shelf_table, "swimmer")["id"].to_numpy(), book.ask(shelf_table, "fluid")["id"].to_numpy(),
+        *(book.ask(shelf_table, kind)["id"].to_numpy(np.int64) for kind in ("swimmer", "fluid")),
         int(book.ask(shelf_table, "rig")["id"].iloc[0]),
     )  # fmt: skip
 
