@@ -1,50 +1,33 @@
 """The Book: the one public face of a group's notebook, for Python, the command line and the app."""
 
-import gc
-import getpass
-import os
 from collections.abc import Callable, Mapping, Sequence
-from contextlib import contextmanager
 from pathlib import Path
 
 import pandas as pd
-from platformdirs import user_data_path
 
-from labbook.book import checking, copying, ledger, loading, opening, queries, run_sheet, stocking
+from labbook.book import (
+    checking,
+    copying,
+    defining,
+    ledger,
+    loading,
+    opening,
+    published_points,
+    queries,
+    run_sheet,
+    stocking,
+)
 from labbook.book import preview as previewing
 from labbook.book.asking import Question
+from labbook.book.dialect_columns import Dialects
 from labbook.book.loading import Loaded, Progress
-from labbook.book.stored_view import KEYS
-from labbook.errors import LabbookError
+from labbook.book.registry_rows import registry_of
+from labbook.errors import Refusal
 from labbook.exchange import sheets
-
-DEMO = "demo.db"
-OWN = "bench.db"
-
-
-def data_folder() -> Path:
-    """Where a user's books live on this system."""
-    return user_data_path("labbook", appauthor=False)
-
-
-def default_book() -> str:
-    """The book that is meant when none is named: LABBOOK_BOOK, else bench.db in the user's data folder."""
-    return os.environ.get("LABBOOK_BOOK") or str(data_folder() / OWN)
-
-
-def current_handle() -> str:
-    """Who acts when nobody is named: LABBOOK_BY, else the system user."""
-    try:
-        return os.environ.get("LABBOOK_BY") or getpass.getuser()
-    except (KeyError, OSError, ImportError):
-        return ""  # a user without a name, as in a container: the act then asks for --by
-
-
-def demo_folder() -> Path:
-    """The shelf folder of the demo: inside an installed package, or beside it in a checkout."""
-    package = Path(__file__).resolve().parent
-    installed = package / "_data" / "seeds_demo"
-    return installed if installed.is_dir() else package.parent / "seeds_demo"
+from labbook.exchange.collector import paused_collector
+from labbook.places import current_handle, default_book
+from labbook.registry.group import Registry
+from labbook.registry.regimes import Regime
 
 
 class Book:
@@ -78,6 +61,11 @@ class Book:
         """What to call the book on a page: the file's name, or the database's."""
         return Path(str(self.engine.url.database)).name
 
+    @property
+    def registry(self) -> Registry:
+        """The registry as the book has it now: numbers, regimes, house dialects."""
+        return self.ask(registry_of)
+
     def close(self) -> None:
         """Let go of the database."""
         self.engine.dispose()
@@ -110,7 +98,12 @@ class Book:
     def stock(
         self, kind: str, /, *, by: str | None = None, why: str | None = None, confirm: bool = False, **cells: str
     ) -> str:
-        """Add a fluid, material, swimmer, rig or reading, or amend one with a reason; returns its code."""
+        """Add a fluid, material, swimmer, rig or reading, or amend one with a reason; returns its code.
+
+        kind 'published' adds a point that others printed, and returns its series.
+        """
+        if kind == "published":
+            return published_points.add_point(self.engine, _texts(cells), by or current_handle(), confirm=confirm)
         return stocking.stock(
             self.engine, kind, _texts(cells), by or current_handle(), why=why, confirm=confirm
         )
@@ -118,6 +111,35 @@ class Book:
     def retire(self, kind: str, code: str, *, why: str, by: str | None = None, back: bool = False) -> None:
         """Retire a fluid, material, swimmer or rig: kept, but no longer offered first."""
         stocking.retire(self.engine, kind, code, why, by or current_handle(), back=back)
+
+    def define_number(
+        self, *, why: str | None = None, by: str | None = None, progress: Callable[[int], None] = lambda n: None,
+        **cells: str,
+    ) -> int:  # fmt: skip
+        """Add a number of the group's own (key, name, formula, compares, source, example, answer), or a new version
+        of one, with a reason; returns its version."""
+        return defining.define_number(
+            self.engine, _texts(cells), by or current_handle(), why=why, progress=progress
+        )
+
+    def adopt_dialect(
+        self, number: str, choices: Mapping[str, object], *, why: str, by: str | None = None,
+        progress: Callable[[int], None] = lambda n: None,
+    ) -> dict:  # fmt: skip
+        """Make a dialect the group's house dialect of a number: the book is derived again; returns before and after."""
+        return defining.adopt_dialect(self.engine, number, choices, why, by or current_handle(), progress)
+
+    def set_regime(self, regime: Regime, *, why: str, by: str | None = None) -> tuple[int, int]:
+        """Add or change a regime; returns how many kept runs lay in it before and lie in it now."""
+        return defining.set_regime(self.engine, regime, why, by or current_handle())
+
+    def withdraw(self, kind: str, key: str, *, why: str, by: str | None = None) -> None:
+        """Take an own number, a regime or a published series out of use, with a reason; it stays in the book."""
+        acts = {"number": defining.withdraw_number, "regime": defining.withdraw_regime,
+                "published": published_points.withdraw_series}
+        if kind not in acts:
+            raise Refusal("kind", kind, "cannot be withdrawn", "number, regime or published")
+        acts[kind](self.engine, key, why, by or current_handle())
 
     def load(
         self, path: str | Path, *, by: str | None = None, confirm: bool = False,
@@ -133,12 +155,15 @@ class Book:
         progress: Progress = lambda what, n: None,
     ) -> Loaded:  # fmt: skip
         """Load sheets that are read already."""
-        with _without_collector():
-            rows, refused = sheets.read_rows(list(tables), progress)
-            return loading.load(
-                self.engine, rows, by or current_handle(), subject=subject, refused=refused, confirm=confirm,
-                progress=progress,
-            )  # fmt: skip
+        with paused_collector():
+            return self._load(tables, subject, by or current_handle(), confirm, progress)
+
+    def _load(self, tables, subject, by, confirm, progress) -> Loaded:
+        # a call of its own, so that the rows are gone before the collector is back
+        rows, refused = sheets.read_rows(list(tables), progress)
+        return loading.load(
+            self.engine, rows, by, subject=subject, refused=refused, confirm=confirm, progress=progress
+        )
 
     # ---- questions
 
@@ -148,18 +173,22 @@ class Book:
         swimmer: str | Sequence[str] = (), material: str | Sequence[str] = (),
         person: str | Sequence[str] = (), series: str | Sequence[str] = (), since: str | None = None,
         until: str | None = None, text: str | None = None, columns: Sequence[str] | None = None,
+        dialects: Dialects | None = None,
     ) -> pd.DataFrame:  # fmt: skip
         """One row a run, oldest first: text columns, every key in SI, u_<key>, u_own_<key>, u_shared_<key>.
 
         Regimes mean *and*; several fluids, swimmers, ... mean *or*; ranges are inclusive, in SI, numbers in
         the house dialect. kept=False includes void runs; columns: the keys wanted, all if left out.
+        dialects: e.g. {"Sp": {"rate": "f", "power": 1}}: the columns of Sp are restated (ranges and regimes stay in
+        the house dialect), attrs['dialects'] says so, attrs['lost'] why a run has no such value.
         attrs['units'] maps key to SI unit, attrs['question'] says what was asked.
         """
         question = Question(
             _several(regime), dict(ranges or {}), _several(fluid), _several(swimmer), _several(material),
             _several(person), _several(series), since, until, text, state or ("kept" if kept else "all"),
         )  # fmt: skip
-        return self.frame(question, keys=tuple(columns) if columns is not None else KEYS)
+        keys = tuple(columns) if columns is not None else None
+        return self.frame(question, keys=keys, dialects=dialects)
 
     def frame(self, question: Question, **options) -> pd.DataFrame:
         """The frame of a question; options as in queries.frame."""
@@ -173,10 +202,12 @@ class Book:
         with opening.reading(self.engine) as connection:
             return query(connection, *arguments, **options)
 
-    def sheets(self, question: Question, newest: int | None = None) -> list[run_sheet.RunSheet]:
-        """Everything about each run of a question."""
+    def sheets(
+        self, question: Question, newest: int | None = None, dialects: Dialects | None = None
+    ) -> list[run_sheet.RunSheet]:
+        """Everything about each run of a question, some numbers in other dialects if asked."""
         with opening.reading(self.engine) as connection:
-            return list(run_sheet.sheets(connection, question, newest))
+            return list(run_sheet.sheets(connection, question, newest, dialects))
 
     def sheet(self, code: str) -> run_sheet.RunSheet:
         """Everything about one run."""
@@ -195,53 +226,9 @@ class Book:
         copying.copy(self.engine, target)
 
 
-@contextmanager
-def _without_collector():
-    """A big sheet makes millions of small objects and no circle: looking for one takes a fifth of the time."""
-    was_on = gc.isenabled()
-    gc.disable()
-    try:
-        yield
-    finally:
-        if was_on:
-            gc.enable()
-
-
 def _texts(cells: Mapping) -> dict[str, str]:
     return {k: str(v) for k, v in cells.items() if v is not None}
 
 
 def _several(given: str | Sequence[str]) -> tuple[str, ...]:
     return (given,) if isinstance(given, str) else tuple(given)
-
-
-def make_demo(target: Path, progress: Progress = lambda what, n: None) -> Book:
-    """Make the demo book: the shelf folder loaded, then a few entries amended as a group would."""
-    target.parent.mkdir(parents=True, exist_ok=True)
-    part = target.with_name(target.name + ".part")
-    for name in (part, Path(f"{part}-wal"), Path(f"{part}-shm")):
-        name.unlink(missing_ok=True)
-    book = Book.new(part)
-    try:
-        book.load(demo_folder(), by="sable", progress=progress)
-        _amend_demo(book)
-    except LabbookError:
-        book.close()
-        raise
-    book.copy(target)
-    book.close()
-    for name in (part, Path(f"{part}-wal"), Path(f"{part}-shm")):
-        name.unlink(missing_ok=True)
-    return Book.open(target)
-
-
-def _amend_demo(book: Book) -> None:
-    runs = book.runs(columns=("f", "T"))
-    slow = runs[runs["T"].notna()].iloc[[40, 210, 480]]
-    reasons = (
-        ("note", "camera focus checked afterwards", "note was forgotten"),
-        ("series", "recounted", "belongs to the recount"),
-        ("T", "21.9 degC", "thermometer read again from the photograph"),
-    )
-    for code, by, (column, value, why) in zip(slow["code"], slow["by"], reasons, strict=True):
-        book.amend(code, by=by, why=why, confirm=True, **{column: value})

@@ -8,15 +8,18 @@ from pathlib import Path
 
 import click
 
-from labbook.api import DEMO, Book, current_handle, data_folder, default_book, make_demo
+from labbook.api import Book
 from labbook.book.ledger import amend as amend_run
 from labbook.book.ledger import record
 from labbook.book.records import KINDS
 from labbook.book.stocking import stock
 from labbook.cli_ask import draw, numbers, runs
-from labbook.cli_print import Bar
+from labbook.cli_print import Bar, by_option, cells_of
+from labbook.cli_registry import budget, dialect, number, published, regime
+from labbook.demo import make_demo
 from labbook.errors import LabbookError, Refusal, Unconfirmed
 from labbook.exchange import sheets as sheet_files
+from labbook.places import DEMO, current_handle, data_folder, default_book
 
 
 class _Group(click.Group):
@@ -41,21 +44,8 @@ def main() -> None:
     """The group's bench notebook for artificial swimmers, and its registry of dimensionless numbers."""
 
 
-_by = click.option("--by", help="Your handle; left out: LABBOOK_BY, else the system user.")
 _confirm = click.option("--confirm", is_flag=True, help="Pass warnings; the record is marked confirmed.")
 _why = click.option("--why", help="The reason, kept in the ledger.")
-
-
-def _cells(pairs: tuple[str, ...]) -> dict[str, str]:
-    cells = {}
-    for pair in pairs:
-        key, sign, value = pair.partition("=")
-        if not sign or not key.strip():
-            raise click.UsageError(f"{pair!r} is not key=value")
-        if key.strip() in cells:
-            raise click.UsageError(f"{key.strip()} is given twice")
-        cells[key.strip()] = value.strip()
-    return cells
 
 
 # ---- books
@@ -154,11 +144,11 @@ def check(ctx, book: str | None) -> None:
 @main.command()
 @click.argument("book")
 @click.argument("cells", nargs=-1, required=True, metavar="key=value...")
-@_by
+@by_option
 @_confirm
 def log(book: str, cells: tuple[str, ...], by: str | None, confirm: bool) -> None:
     """Log one run, e.g. swimmer=reed-03 fluid=sil5k-b f='0.5 Hz' U='0.051(3) mm/s' T='22.4 degC'."""
-    wanted = _cells(cells)
+    wanted = cells_of(cells)
     who = by or wanted.pop("by", None)
     with Book.open(book) as opened:
         logged = record(opened.engine, wanted, who or current_handle(), confirm=confirm)
@@ -172,12 +162,12 @@ def log(book: str, cells: tuple[str, ...], by: str | None, confirm: bool) -> Non
 @click.argument("run")
 @click.argument("cells", nargs=-1, required=True, metavar="key=value...")
 @click.option("--why", required=True, help="The reason, kept in the ledger.")
-@_by
+@by_option
 @_confirm
 def amend(book: str, run: str, cells: tuple[str, ...], why: str, by: str | None, confirm: bool) -> None:
     """Change cells of a run; the old values stay in the ledger. An empty value clears a cell."""
     with Book.open(book) as opened:
-        amend_run(opened.engine, run, _cells(cells), why, by or current_handle(), confirm=confirm)
+        amend_run(opened.engine, run, cells_of(cells), why, by or current_handle(), confirm=confirm)
     click.echo(f"amended {run}")
 
 
@@ -185,7 +175,7 @@ def amend(book: str, run: str, cells: tuple[str, ...], why: str, by: str | None,
 @click.argument("book")
 @click.argument("run")
 @click.option("--why", required=True, help="The reason, kept in the ledger.")
-@_by
+@by_option
 def void(book: str, run: str, why: str, by: str | None) -> None:
     """Mark a run, or a reading, void: it stays in the book and leaves the plots."""
     with Book.open(book) as opened:
@@ -206,10 +196,10 @@ def _shelf_command(kind: str) -> click.Command:
     @click.option("--retire", is_flag=True, help="Retire it: kept, but no longer offered first.")
     @click.option("--back", is_flag=True, help="Take a retired one back.")
     @_why
-    @_by
+    @by_option
     @_confirm
     def command(book, cells, retire, back, why, by, confirm):
-        wanted = _cells(cells)
+        wanted = cells_of(cells)
         with Book.open(book) as opened:
             if retire or back:
                 opened.retire(kind, wanted.get("code", ""), why=why or "", by=by, back=back)
@@ -230,7 +220,7 @@ for _kind in ("fluid", "material", "swimmer", "rig", "reading"):
 @main.command()
 @click.argument("book")
 @click.argument("sheet", type=click.Path())
-@_by
+@by_option
 @_confirm
 def load(book: str, sheet: str, by: str | None, confirm: bool) -> None:
     """Load a shelf folder, a workbook or one CSV file, whole or not at all."""
@@ -246,5 +236,5 @@ def load(book: str, sheet: str, by: str | None, confirm: bool) -> None:
     click.echo(str(loaded))
 
 
-for _command in (runs, numbers, draw):
+for _command in (runs, numbers, draw, number, regime, dialect, published, budget):
     main.add_command(_command)

@@ -1,4 +1,4 @@
-"""How the command line prints: tables that line up, and a progress bar on stderr."""
+"""How the command line reads cells and prints: key=value pairs, tables that line up, a progress bar on stderr."""
 
 import sys
 
@@ -8,6 +8,22 @@ import pandas as pd
 from labbook.registry.written import SHOWN, shown
 
 TABLE_KEYS = ("f", "U", "T", "mu", "Sp", "Re_omega", "St", "stride")
+
+
+by_option = click.option("--by", help="Your handle; left out: LABBOOK_BY, else the system user.")
+
+
+def cells_of(pairs: tuple[str, ...]) -> dict[str, str]:
+    """Cells from key=value arguments; a usage error for anything else."""
+    cells = {}
+    for pair in pairs:
+        key, sign, value = pair.partition("=")
+        if not sign or not key.strip():
+            raise click.UsageError(f"{pair!r} is not key=value")
+        if key.strip() in cells:
+            raise click.UsageError(f"{key.strip()} is given twice")
+        cells[key.strip()] = value.strip()
+    return cells
 
 
 class Bar:
@@ -38,14 +54,17 @@ class Bar:
 
 
 def runs_table(table: pd.DataFrame) -> str:
-    """A frame of runs as a table, each key in its usual unit."""
+    """A frame of runs as a table, each key in its usual unit, each number with its dialect if it is not the house's."""
     if table.empty:
         return "no runs"
     units = {k: SHOWN[k] for k in TABLE_KEYS if k in SHOWN} | {"f": "Hz"}
-    header = ["run", "at", "by", "swimmer", "fluid", *(f"{k} [{units[k]}]" if k in units else k for k in TABLE_KEYS)]
+    spoken = {k: w for k, w in table.attrs.get("dialects", {}).items() if w != "house"}
+    keys = [k for k in table if f"u_{k}" in table]
+    heads = [f"{k} [{units[k]}]" if k in units else f"{k} ({spoken[k]})" if k in spoken else k for k in keys]
+    header = ["run", "at", "by", "swimmer", "fluid", *heads]
     lines = [header]
     for row in table.to_dict("records"):
-        cells = [shown(k, row[k], row[f"u_{k}"], units.get(k)).removesuffix(f" {units.get(k)}") for k in TABLE_KEYS]
+        cells = [shown(k, row[k], row[f"u_{k}"], units.get(k)).removesuffix(f" {units.get(k)}") for k in keys]
         lines.append([row["code"], f"{row['at']:%Y-%m-%d %H:%M}", row["by"], row["swimmer"], row["fluid"], *cells])
     return aligned(lines, text_columns=5)
 

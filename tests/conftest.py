@@ -6,7 +6,7 @@ from pathlib import Path
 import pytest
 from hypothesis import settings
 
-from labbook.api import make_demo
+from labbook.demo import make_demo
 
 TESTS = Path(__file__).parent
 

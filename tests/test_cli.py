@@ -285,9 +285,9 @@ def test_the_users_own_book(bench, tmp_path):
 
 def test_who_when_nobody_is_named(bench, monkeypatch):
     monkeypatch.delenv("LABBOOK_BY")
-    monkeypatch.setattr("labbook.api.getpass.getuser", lambda: "pat")
+    monkeypatch.setattr("labbook.places.getpass.getuser", lambda: "pat")
     run("log", bench, "swimmer=reed", "fluid=oil", "f=1 Hz")
-    monkeypatch.setattr("labbook.api.getpass.getuser", lambda: "")
+    monkeypatch.setattr("labbook.places.getpass.getuser", lambda: "")
     assert (
         "say who you are with --by" in run("log", bench, "swimmer=reed", "fluid=oil", "f=1 Hz", code=1).stderr
     )

@@ -85,7 +85,7 @@ def test_a_book_is_made_filled_and_checked_away_from_the_checkout(away):
     assert code == 0 and Path(place.strip()).is_relative_to(away.site), "the unpacked wheel is what runs"
     assert away("--version") == (0, f"labbook, version {PROJECT['version']}\n", "")
     assert away("new", "bench.db")[0] == 0
-    demo = away(script="from labbook.api import demo_folder; print(demo_folder())")[1].strip()
+    demo = away(script="from labbook.demo import demo_folder; print(demo_folder())")[1].strip()
     assert Path(demo).is_relative_to(away.site)
     code, said, trouble = away("load", "bench.db", demo)
     assert code == 0, trouble

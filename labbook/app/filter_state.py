@@ -11,11 +11,16 @@ from labbook.book import addresses, queries
 from labbook.book.asking import Question
 from labbook.book.limits import limits, written_limit
 from labbook.errors import Refusal
-from labbook.registry.catalogue import NUMBERS
+from labbook.registry.group import Registry
 
 # the keys that a range is offered for, the ones asked for most first
 _QUANTITIES = ("f", "U", "theta0", "A_tip", "B", "T", "mu", "nu", "E", "lam", "L_tail", "L_body", "h_wall")
-RANGED = (*dict.fromkeys(("Sp", "Re_omega", "St", *NUMBERS)), *_QUANTITIES)
+FIRST = "Sp"
+
+
+def ranged(registry: Registry) -> tuple[str, ...]:
+    """The keys that a range is offered for."""
+    return (*dict.fromkeys((FIRST, "Re_omega", "St", *registry.numbers)), *_QUANTITIES)
 
 
 def write(asked: Question) -> None:
@@ -90,9 +95,9 @@ def from_widgets(place: str, before: Question) -> Question:
 def show_limits(place: str) -> None:
     """Fill the two fields with the limits of the chosen key."""
     state = st.session_state
-    span = state.get(f"{place}:ranges", {}).get(state.get(key_of(place, "range_key"), RANGED[0]))
+    span = state.get(f"{place}:ranges", {}).get(state.get(key_of(place, "range_key"), FIRST))
     for end, value in zip(("low", "high"), span or (math.nan, math.nan), strict=True):
-        state[key_of(place, end)] = written_limit(state.get(key_of(place, "range_key"), RANGED[0]), value)
+        state[key_of(place, end)] = written_limit(state.get(key_of(place, "range_key"), FIRST), value)
     state.pop(f"{place}:limits", None)
 
 

@@ -8,7 +8,6 @@ import streamlit as st
 
 from labbook.app import session
 from labbook.app.filter_state import (
-    RANGED,
     cache_key,
     clear,
     drop_range,
@@ -16,6 +15,7 @@ from labbook.app.filter_state import (
     into_widgets,
     key_of,
     known,
+    ranged,
     set_limits,
     show_limits,
     touch,
@@ -25,9 +25,7 @@ from labbook.book import addresses, queries
 from labbook.book.asking import Question
 from labbook.book.limits import in_limit_unit, limit_unit, range_in_words
 from labbook.charts.histogram import histogram
-from labbook.registry.catalogue import NUMBERS
 from labbook.registry.quantities import QUANTITIES
-from labbook.registry.regimes import REGIMES
 
 PLURAL = {
     "fluid": "Fluids",
@@ -41,7 +39,7 @@ PLURAL = {
 def question() -> tuple[Question, list[str]]:
     """The question in the page's address, and one sentence for each part of it that was not understood."""
     given = {name: st.query_params.get_all(name) for name in addresses.PARAMETERS}
-    return addresses.read_question(given, known(session.state_of_book()))
+    return addresses.read_question(given, known(session.state_of_book()), session.registry())
 
 
 @st.cache_data(max_entries=64, show_spinner=False)
@@ -141,7 +139,7 @@ def _regimes(place: str, asked: Question) -> None:
     found = counts(session.state_of_book(), cache_key(replace(asked, regimes=())), asked)
     st.pills(
         "Regimes: a run must lie in every one chosen",
-        list(REGIMES),
+        list(found),
         selection_mode="multi",
         format_func=lambda name: f"{name} {found[name]}",
         key=key_of(place, "regimes"),
@@ -152,10 +150,11 @@ def _regimes(place: str, asked: Question) -> None:
 
 
 def _ranges(place: str, asked: Question) -> None:
+    numbers = session.registry().numbers
     key = st.selectbox(
         "Range of",
-        RANGED,
-        format_func=_named,
+        ranged(session.registry()),
+        format_func=lambda key: _named(numbers.get(key) or QUANTITIES[key]),
         key=key_of(place, "range_key"),
         on_change=show_limits,
         args=(place,),
@@ -191,8 +190,7 @@ def _ranges(place: str, asked: Question) -> None:
         )
 
 
-def _named(key: str) -> str:
-    row = NUMBERS.get(key) or QUANTITIES[key]
+def _named(row) -> str:
     return f"{row.symbol}  {row.name}"
 
 

@@ -1,5 +1,7 @@
 """Bench's right side: strips and the trend so far, live as each field is left."""
 
+from collections.abc import Mapping
+
 import numpy as np
 import pandas as pd
 import streamlit as st
@@ -10,7 +12,7 @@ from labbook.book.bench_queries import siblings
 from labbook.book.preview import Preview
 from labbook.charts.strips import strips
 from labbook.charts.trend import trend
-from labbook.registry.catalogue import NUMBERS
+from labbook.registry.catalogue import Number
 from labbook.registry.quantities import RUN_KEYS
 from labbook.registry.written import written
 
@@ -71,24 +73,24 @@ def panel(cells: dict[str, str]) -> None:
         }
         for key in STRIPS
     ]  # fmt: skip
-    dark = session.is_dark()
-    st.altair_chart(strips(rows, dark), theme=None, key="bench:strips")
-    for line in lacking(cells, seen):
+    dark, registry = session.is_dark(), session.registry()
+    st.altair_chart(strips(rows, dark, numbers=registry.numbers, regimes=registry.regimes.values()), theme=None, key="bench:strips")
+    for line in lacking(cells, seen, registry.numbers):
         session.note(line)
     if seen.regimes:
         session.tags(seen.regimes)
     _trend(cells, seen, earlier, dark)
 
 
-def lacking(cells: dict[str, str], seen: Preview) -> list[str]:
+def lacking(cells: dict[str, str], seen: Preview, numbers: Mapping[str, Number]) -> list[str]:
     """'Sp, Re_ω: needs rho: …' for the strips that stay empty although all that they take from the form is typed."""
     if not (cells.get("f") and cells.get("T")):
         return []
     found: dict[str, list[str]] = {}
     for key in STRIPS:
-        typed = all(cells.get(k) for k in NUMBERS[key].inputs if k in RUN_KEYS and k != "B")
+        typed = all(cells.get(k) for k in numbers[key].inputs if k in RUN_KEYS and k != "B")
         if seen.values.get(key) is None and key in seen.why_absent and typed:
-            found.setdefault(seen.why_absent[key], []).append(NUMBERS[key].symbol)
+            found.setdefault(seen.why_absent[key], []).append(numbers[key].symbol)
     return [f"{', '.join(symbols)}: {why}" for why, symbols in found.items()]
 
 

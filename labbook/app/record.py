@@ -5,8 +5,8 @@ from collections.abc import Callable
 
 import streamlit as st
 
+from labbook.app import record_budget, record_readings, session
 from labbook.app import record_parts as parts
-from labbook.app import record_readings, session
 from labbook.book import ledger
 from labbook.book.bench_queries import cells_again
 from labbook.book.records import KINDS
@@ -28,18 +28,19 @@ def show(code: str, *, place: str, narrow: bool = False) -> None:
         return
     with st.container(key=f"lb-record-{place}"):
         if narrow:
-            _narrow(sheet)
+            _narrow(sheet, f"{place}:{code}")
         else:
             _whole(sheet, f"{place}:{code}")
 
 
-def _narrow(sheet: RunSheet) -> None:
+def _narrow(sheet: RunSheet, place: str) -> None:
     code = sheet.texts["code"]
     _title(sheet)
     _void_line(sheet)
     if sheet.regimes:
         session.tags(sheet.regimes)
     parts.essentials(sheet)
+    record_budget.show(sheet, place, narrow=True)
     st.page_link(
         st.session_state["pages"]["runs"],
         label="Open the whole sheet",
@@ -61,6 +62,7 @@ def _whole(sheet: RunSheet, place: str) -> None:
         parts.resolved(sheet)
         record_readings.show(sheet)
         parts.viscosity(sheet, place)
+        record_budget.show(sheet, place)
     with right:
         parts.numbers(sheet)
         parts.picture(sheet, place)

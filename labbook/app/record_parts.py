@@ -1,21 +1,21 @@
 """The parts of a run's sheet that are read: facts, what was resolved, numbers, pictures, ledger lines."""
 
 import html
-import math
 
 import pandas as pd
 import streamlit as st
 
 from labbook.app import session
+from labbook.app.record_budget import CHECK, budgets_of, part_in_words
 from labbook.book import queries
 from labbook.book.curves import viscosity_frames
 from labbook.book.run_sheet import RunSheet, moment_in_words
 from labbook.charts.axes import written_formula
 from labbook.charts.drawings import swimmer_drawing
 from labbook.charts.fluid_chart import viscosity_chart
-from labbook.registry.catalogue import NUMBERS
+from labbook.registry.catalogue import Number
+from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES
-from labbook.registry.regimes import REGIMES
 from labbook.registry.written import shown, written
 
 RESOLVED = {"mu": "mu_from", "rho": "rho_from", "lam": "lam_from", "E": "E_from"}
@@ -48,7 +48,7 @@ def _ledger(state: str, code: str) -> list[dict]:
 
 def symbol(key: str) -> str:
     """The symbol of a key as printed."""
-    row = NUMBERS.get(key) or QUANTITIES.get(key)
+    row = session.registry().numbers.get(key) or QUANTITIES.get(key)
     return {"T_end": "T at the end"}.get(key, key) if row is None else row.symbol
 
 
@@ -137,47 +137,40 @@ def numbers(sheet: RunSheet) -> None:
     """Each number with formula, value, own and shared part, regime and marks; or why it is absent."""
     head = ("number", "formula", "value", "u own", "u shared", "regime and marks")
     cells = "".join(f"<th{' class=n' if 2 <= i <= 4 else ''}>{name}</th>" for i, name in enumerate(head))
-    rows = "".join(_number_row(sheet, key) for key in NUMBERS if sheet.values[key] is not None)
-    rows += "".join(_absent_row(sheet, key) for key in NUMBERS if sheet.values[key] is None)
+    registry = session.registry()
+    cautions = {k: b.caution for k, b in budgets_of(session.state_of_book(), sheet.texts["code"]).items()}
+    there = [n for n in registry.numbers.values() if sheet.values[n.key] is not None]
+    rows = "".join(_number_row(sheet, n, registry, cautions.get(n.key, "")) for n in there)
+    rows += "".join(_absent_row(sheet, n) for n in registry.numbers.values() if sheet.values[n.key] is None)
     st.html(f'<table class="lb"><thead><tr>{cells}</tr></thead><tbody>{rows}</tbody></table>')
 
 
-def _number_row(sheet: RunSheet, key: str) -> str:
-    row = NUMBERS[key]
-    bands = [r.name for r in REGIMES.values() if r.number == key and r.name in sheet.regimes]
+def _number_row(sheet: RunSheet, row: Number, registry: Registry, caution: str) -> str:
+    key, held = row.key, [registry.regimes[name] for name in sheet.regimes if name in registry.regimes]
+    bands = [r.name for r in held if any(band.number == key for band in r.bands)]
     said = "".join(f'<span class="lb-tag">{html.escape(b)}</span>' for b in bands)
-    said += html.escape(", ".join(sheet.marks.get(key, [])))
-    spreads = (_spread(u[key], sheet.values[key]) for u in (sheet.u_own, sheet.u_shared))
+    marks = [*sheet.marks.get(key, []), *([f"{caution}; {CHECK}"] if caution else [])]
+    said += html.escape(", ".join(marks))
+    spreads = (part_in_words(u[key], sheet.values[key]) for u in (sheet.u_own, sheet.u_shared))
     parts = "".join(f'<td class="n">{spread}</td>' for spread in spreads)
     formula, value_ = written_formula(row.parsed.tree), written(sheet.values[key], sheet.u[key])
     return (
-        f"<tr>{_named(key)}<td>{html.escape(formula)}</td>"
+        f"<tr>{_named(row)}<td>{html.escape(formula)}</td>"
         f'<td class="n"><b>{html.escape(value_)}</b></td>{parts}<td>{said}</td></tr>'
     )
 
 
-def _absent_row(sheet: RunSheet, key: str) -> str:
-    formula = html.escape(written_formula(NUMBERS[key].parsed.tree))
-    why = html.escape(sheet.why_absent.get(key, ""))
-    return f'<tr style="opacity:0.72">{_named(key)}<td>{formula}</td><td colspan="4">absent: {why}</td></tr>'
+def _absent_row(sheet: RunSheet, row: Number) -> str:
+    formula = html.escape(written_formula(row.parsed.tree))
+    why = html.escape(sheet.why_absent.get(row.key, ""))
+    return f'<tr style="opacity:0.72">{_named(row)}<td>{formula}</td><td colspan="4">absent: {why}</td></tr>'
 
 
-def _named(key: str) -> str:
-    row = NUMBERS[key]
+def _named(row: Number) -> str:
     name, symbol_ = html.escape(row.name), html.escape(row.symbol)
     if row.symbol == written_formula(row.parsed.tree):  # its formula is its symbol, and stands beside it
         return f"<td><b>{name}</b></td>"
     return f'<td><b>{symbol_}</b><br><span style="font-size:0.78rem;opacity:0.75">{name}</span></td>'
-
-
-def _spread(u: float | None, value_: float) -> str:
-    """A part of the uncertainty to two digits; what rounding left of nothing is 0."""
-    if u is None or not math.isfinite(u):
-        return ""
-    if u < 1e-12 * abs(value_):
-        return "0"
-    text = f"{u:.2g}"
-    return f"{float(text):.0f}" if "e+" in text else text.replace("e-0", "e-")
 
 
 def essentials(sheet: RunSheet) -> None:

@@ -1,26 +1,26 @@
 """The table of runs: as typed on the left, numbers on the right, sorted by value however it is written."""
 
 import math
-from collections.abc import Iterable
+from functools import partial
 
 import pandas as pd
 import streamlit as st
 from pandas.io.formats.style import Styler
 
-from labbook.app import session
-from labbook.app.record_parts import as_typed, symbol
+from labbook.app import dialect_choices, session
+from labbook.app.column_width import wide_enough
+from labbook.app.record_parts import as_typed
 from labbook.book import queries
 from labbook.book.asking import Question
-from labbook.book.stored_view import KEYS
+from labbook.charts.dialect_axis import HOUSE_ONLY, dialect_label
 from labbook.charts.palette import paper
-from labbook.registry.catalogue import NUMBERS
+from labbook.registry.dialects import CHOICES
+from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES, RUN_KEYS
 from labbook.registry.regimes import regimes_of
 from labbook.registry.written import SHOWN, shown, written
 
 TEXTS = ("at", "by", "swimmer", "fluid", "material", "rig", "drive", "series", "video", "note")
-FOLLOWING = tuple(k for k in KEYS if k not in NUMBERS and k not in RUN_KEYS)
-OFFERED = (*TEXTS, *RUN_KEYS, *FOLLOWING, *NUMBERS, "regime")
 USUAL = (
     "at",
     "by",
@@ -40,32 +40,46 @@ USUAL = (
 ROW = 40
 TALL, FOLDED = 11, 4  # rows in sight: alone, and above an open sheet
 REST_OF_SCREEN = "flex: none !important; height: max(483px, calc(100vh - 310px));"
-BANDED = ("Re_omega", "Sp", "St")  # numbers that the regimes stand on
-# pixels in the table's font, a little more than it takes: a narrow, a wide and any other letter, a cell's edges
-NARROW, WIDE, LETTER, EDGES = 4.5, 12, 7, 18
-NARROW_LETTERS, WIDE_LETTERS = frozenset(" .,()-/il"), frozenset("mwMW%")
 
 
-def chosen() -> tuple[str, ...]:
+def offered(registry: Registry) -> tuple[str, ...]:
+    """The columns one may choose, in the table's order."""
+    return (*TEXTS, *dict.fromkeys((*RUN_KEYS, *registry.keys)), "regime")
+
+
+def chosen(registry: Registry) -> tuple[str, ...]:
     """The columns in the page's address, in the table's order; the usual ones where it names none."""
-    named = [c for c in session.address("columns").split(",") if c in OFFERED]
-    return tuple(c for c in OFFERED if c in named) if named else USUAL
+    named, known = session.address("columns").split(","), offered(registry)
+    return tuple(c for c in known if c in named) if set(named) & set(known) else USUAL
 
 
-def keys_of(columns: tuple[str, ...]) -> tuple[str, ...]:
+def keys_of(columns: tuple[str, ...], registry: Registry) -> tuple[str, ...]:
     """The quantities and numbers among some columns."""
-    return tuple(c for c in columns if c in KEYS)
+    known = set(registry.keys)
+    return tuple(c for c in columns if c in known)
 
 
-def choose() -> None:
+def choose(have: tuple[str, ...], registry: Registry) -> None:
     """The popover that chooses columns and keeps them in the address."""
     with st.popover("Columns", icon=":material/view_column:"):
-        have = chosen()
-        picked = st.multiselect(
-            "Columns", OFFERED, have, format_func=_label, key="runs:columns", width=640, on_change=_keep
-        )
+        named = partial(_label, registry=registry)
+        picked = st.multiselect("Columns", offered(registry), have, format_func=named, key="runs:columns",
+                                width=640, on_change=_keep)  # fmt: skip
         if tuple(picked) and set(picked) != set(USUAL):
             st.button("The usual ones", key="runs:usual", on_click=_usual)
+
+
+def choose_dialects(columns: tuple[str, ...], dialects: dict, registry: Registry) -> None:
+    """The popover that chooses a dialect for each number shown that has any."""
+    numbers = [c for c in dict.fromkeys((*columns, *dialects)) if c in CHOICES]
+    away = f" ({len(dialects)})" if dialects else ""
+    with st.popover(f"Dialects{away}", icon=":material/translate:"), st.container(width=420):
+        for number in numbers:
+            dialect_choices.choose("runs", number, registry, dialects, _label(number, registry))
+        if numbers:
+            session.note(f"Values, uncertainties and downloads follow; {HOUSE_ONLY}.")
+        else:
+            session.note("No number shown has dialects: choose other columns.")
 
 
 def _keep() -> None:
@@ -78,16 +92,19 @@ def _usual() -> None:
     session.set_address(columns=None)
 
 
-def _label(column: str) -> str:
-    row = NUMBERS.get(column) or QUANTITIES.get(column)
+def _label(column: str, registry: Registry) -> str:
+    row = registry.numbers.get(column) or QUANTITIES.get(column)
     return column if row is None else f"{row.symbol}  {row.name}"
 
 
-def show(state: str, asked: Question, told: str, columns: tuple[str, ...], newest: int, folded: bool) -> None:
+def show(
+    state: str, asked: Question, told: str, columns: tuple[str, ...], dialects: dict, newest: int,
+    folded: bool, registry: Registry,
+) -> None:  # fmt: skip
     """The newest runs of a question; a line touched opens its run through the address."""
-    frame, written_cells, void, config = _cells(state, told, columns, newest, asked)
+    frame, written_cells, void, config = _cells(state, told, columns, dialects, newest, asked, registry)
     codes = frame["code"].tolist()
-    key = f"runs:table:{hash((told, columns, newest))}"
+    key = f"runs:table:{hash((told, columns, newest, str(dialects)))}"
     st.session_state["runs:key"], st.session_state["runs:codes"] = key, codes
     rows = min(len(codes), FOLDED if folded else TALL)
     tall = len(codes) > TALL and not folded
@@ -119,18 +136,30 @@ def forget_selection() -> None:
 
 
 @st.cache_data(max_entries=24, show_spinner="Reading the runs")
-def _cells(state: str, told: str, columns: tuple[str, ...], newest: int, _asked: Question):
+def _cells(
+    state: str, told: str, columns: tuple[str, ...], dialects: dict, newest: int, _asked: Question,
+    _registry: Registry,
+):  # fmt: skip
     """(frame, column -> {value: text}, which are void, column settings) of the newest runs."""
-    keys = tuple(dict.fromkeys((*keys_of(columns), *(BANDED if "regime" in columns else ()))))
-    found = session.book().frame(_asked, keys=keys, texts=(*queries.RUN_TEXTS, "typed"), newest=newest)
+    book, texts = session.book(), (*queries.RUN_TEXTS, "typed")
+    keys = keys_of(columns, _registry)
+    spoken = {n: c for n, c in dialects.items() if n in columns}
+    found = book.frame(_asked, keys=keys, texts=texts, newest=newest, dialects=spoken)
     frame = pd.DataFrame({"code": found["code"]})
     config: dict = {"code": st.column_config.TextColumn("run", pinned=True)}
     written_cells: dict[str, dict] = {}
     for column in columns:
-        if column in KEYS:
-            label, frame[column], written_cells[column] = _numeric(found, column)
+        if column in keys:
+            label = _heading(column, spoken, _registry)
+            label, frame[column], written_cells[column] = _numeric(found, column, label)
             width = wide_enough(label, written_cells[column].values())
-            config[column] = st.column_config.NumberColumn(label, help=_label(column), width=width)
+            help_ = _label(column, _registry)
+            if column in spoken:
+                help_ += f", dialect {found.attrs['dialects'][column]}"
+            config[column] = st.column_config.NumberColumn(label, help=help_, width=width)
+        elif column == "regime":
+            frame[column] = _regimes(_asked, newest, _registry)
+            config[column] = st.column_config.TextColumn(column)
         else:
             frame[column] = _text(found, column)
             config[column] = st.column_config.TextColumn(column)
@@ -145,14 +174,21 @@ def _cells(state: str, told: str, columns: tuple[str, ...], newest: int, _asked:
     return frame, written_cells, void, config
 
 
-def wide_enough(label: str, cells: Iterable[str]) -> int:
-    """Pixels of a column in which neither its heading nor its longest written cell is cut."""
-    return math.ceil(EDGES + max(map(_pixels, (label, *cells))))
+def _heading(key: str, spoken: dict, registry: Registry) -> str:
+    """A column's symbol, with the dialect where it is not the house's."""
+    if key in registry.numbers:
+        return dialect_label(key, spoken.get(key, {}), registry.choices(key) or None, registry.numbers)
+    return {"T_end": "T at the end"}.get(key) or QUANTITIES[key].symbol
 
 
-def _pixels(text: str) -> float:
-    narrow, wide = sum(c in NARROW_LETTERS for c in text), sum(c in WIDE_LETTERS for c in text)
-    return NARROW * narrow + WIDE * wide + LETTER * (len(text) - narrow - wide)
+def _regimes(asked: Question, newest: int, registry: Registry) -> list[str]:
+    """The regimes of the newest runs, which are always read in the house dialect."""
+    banded = list(dict.fromkeys(b.number for r in registry.regimes.values() for b in r.bands))
+    found = session.book().frame(asked, keys=banded, texts=("code",), spread=False, newest=newest)
+    return [
+        ", ".join(regimes_of(dict(zip(banded, row, strict=True)), registry.regimes))
+        for row in found[banded].itertuples(index=False, name=None)
+    ]
 
 
 def _style(frame: pd.DataFrame, written_cells: dict[str, dict], void, opened: str) -> Styler:
@@ -169,15 +205,10 @@ def _style(frame: pd.DataFrame, written_cells: dict[str, dict], void, opened: st
 def _text(found: pd.DataFrame, column: str) -> list[str]:
     if column == "at":
         return [t.strftime("%Y-%m-%d %H:%M") for t in found["at"]]
-    if column == "regime":
-        return [
-            ", ".join(regimes_of(dict(zip(BANDED, row, strict=True))))
-            for row in found[list(BANDED)].itertuples(index=False, name=None)
-        ]
     return ["" if pd.isna(v) else str(v) for v in found[column]]
 
 
-def _numeric(found: pd.DataFrame, key: str) -> tuple[str, list[float], dict[float, str]]:
+def _numeric(found: pd.DataFrame, key: str, label: str) -> tuple[str, list[float], dict[float, str]]:
     """(header, SI values, value -> text) of a column; the header has the unit where the column has one.
 
     Two equal values that are written differently are told apart by the last bit, which no sorting sees.
@@ -200,12 +231,12 @@ def _numeric(found: pd.DataFrame, key: str) -> tuple[str, list[float], dict[floa
             values[i] = math.nextafter(values[i], math.inf)
         if text:
             known[values[i]] = text
-    return f"{symbol(key)} ({unit})" if unit else symbol(key), values, known
+    return f"{label} ({unit})" if unit else label, values, known
 
 
 def _units(found: pd.DataFrame, key: str) -> set[str]:
     """The units that a column is written in."""
-    if key in NUMBERS:
+    if key not in QUANTITIES:
         return set()
     usual = SHOWN.get(key, QUANTITIES[key].unit)
     if key not in RUN_KEYS:

@@ -7,9 +7,11 @@ from collections.abc import Callable, Sequence
 
 import streamlit as st
 
-from labbook.api import Book, current_handle, default_book
+from labbook.api import Book
 from labbook.book.queries import head, people
 from labbook.errors import LabbookError, Refusal, Refusals, Unconfirmed
+from labbook.places import current_handle, default_book
+from labbook.registry.group import Registry
 
 
 @st.cache_resource(show_spinner="Opening the book")
@@ -25,6 +27,11 @@ def book() -> Book:
 def state_of_book() -> str:
     """Changes with every act on the book: what cached results depend on."""
     return f"{book().target}:{book().ask(head)}"
+
+
+def registry() -> Registry:
+    """The open book's registry as it is now: ask once for a page, not once for a row."""
+    return book().registry
 
 
 def handle() -> str:

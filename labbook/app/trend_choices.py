@@ -1,43 +1,53 @@
-"""How a trend is drawn: axes, colour, bars and the rest, kept in the address, set beside the chart."""
+"""How a trend is drawn: axes, dialects, colour, bars, switches, kept in the address, set beside the chart."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import streamlit as st
 
-from labbook.app import session
-from labbook.book.stored_view import KEYS
-from labbook.charts.dialect_axis import dialects
-from labbook.registry.catalogue import NUMBERS
+from labbook.app import dialect_choices, session
+from labbook.charts import theory
+from labbook.charts.trend_shared import SHARED
+from labbook.registry.dialects import CHOICES as DIALECT_CHOICES
+from labbook.registry.group import Registry
 
-AXES = (*NUMBERS, *(k for k in KEYS if k not in NUMBERS))
 SWITCH = ("on", "off")
+FIRST = {"x": "Sp", "y": "U_scaled"}
 # name in the address -> what it may be, the default first
 CHOICES = {
-    "x": ("Sp", *(k for k in AXES if k != "Sp")),
-    "y": ("U_scaled", *(k for k in AXES if k != "U_scaled")),
-    "dialect": tuple(dialects()),
     "colour": ("swimmer", "fluid", "material", "person", "series", "none"),
-    "bars": ("own", "total", "none"),
+    "bars": ("own", "total", SHARED, "none"),
     "bands": SWITCH,
     "theory": SWITCH,
     "logx": SWITCH,
     "logy": SWITCH,
 }
+BARS = ("own: the run's own part of its uncertainty; total: with the shared part; shared band: own bars, and "
+        "how far each group may move together")  # fmt: skip
+
+
+def allowed(name: str, registry: Registry) -> tuple[str, ...]:
+    """What a choice may be, the default first: the axes are the book's own numbers and quantities."""
+    if name not in FIRST:
+        return CHOICES[name]
+    return tuple(dict.fromkeys((FIRST[name], *registry.numbers, *registry.keys)))
 
 
 @dataclass(frozen=True)
 class Choices:
-    """What is drawn and how; colour: what groups the marks, if anything; dialect: of the sperm number."""
+    """What is drawn and how; colour: what groups the marks, if anything.
+
+    dialects: every choice of the numbers on the axes that are not in the house dialect.
+    """
 
     x: str
     y: str
-    dialect: str
     colour: str | None
     bars: str
     bands: bool
     theory: bool
     log_x: bool
     log_y: bool
+    dialects: dict[str, dict[str, object]] = field(default_factory=dict)
 
     @property
     def group(self) -> str | None:
@@ -48,78 +58,72 @@ class Choices:
     def keys(self) -> tuple[str, ...]:
         return tuple(dict.fromkeys((self.x, self.y)))
 
-    @property
-    def house(self) -> bool:
-        """Whether every number on the axes is in the house dialect."""
-        return self.dialect == "house" or "Sp" not in self.keys
+    def why_no_curve(self, registry: Registry) -> str:
+        """Why the theory has no curve on these axes; '' where it has one."""
+        if (self.x, self.y) != theory.AXES:
+            return "its curve is that of U_scaled over Sp"
+        return theory.why_no_curve(registry.coefficient, self.spoken(registry))
+
+    def spoken(self, registry: Registry) -> dict[str, dict[str, object]]:
+        """The dialect of each axis that has any, every choice named."""
+        keys = [k for k in self.keys if k in DIALECT_CHOICES]
+        return {k: self.dialects.get(k) or registry.choices(k) for k in keys}
 
 
-def chosen() -> tuple[Choices, list[str]]:
+def chosen(registry: Registry) -> tuple[Choices, list[str]]:
     """The choices in the address, and a sentence for each that was not understood (its default is taken)."""
     values, said = {}, []
-    for name, allowed in CHOICES.items():
-        text = session.address(name, allowed[0])
-        if text not in allowed:
-            said.append(f"In the address, {name} cannot be {text!r}; {allowed[0]} is shown.")
-            text = allowed[0]
+    for name in (*FIRST, *CHOICES):
+        options = allowed(name, registry)
+        text = session.address(name, options[0])
+        if text not in options:
+            said.append(f"In the address, {name} cannot be {text!r}; {options[0]} is shown.")
+            text = options[0]
         values[name] = text
-    colour = None if values["colour"] == "none" else values["colour"]
-    switched = {name: values[name] == "on" for name in ("bands", "theory")}
+    dialects, wrong = dialect_choices.in_address(registry)
+    x, y = values["x"], values["y"]
+    dialects = {k: dialects[k] for k in dict.fromkeys((x, y)) if k in dialects}
     choices = Choices(
-        values["x"], values["y"], values["dialect"], colour, values["bars"], **switched,
-        log_x=values["logx"] == "on", log_y=values["logy"] == "on",
+        x, y, None if values["colour"] == "none" else values["colour"], values["bars"],
+        bands=values["bands"] == "on", theory=values["theory"] == "on", log_x=values["logx"] == "on",
+        log_y=values["logy"] == "on", dialects=dialects,
     )  # fmt: skip
-    return choices, said
+    return choices, [*said, *wrong]
 
 
-def controls(binned: bool) -> None:
-    """The controls beside the chart; each writes itself into the address.
-
-    binned: the runs were counted on a grid, not read one by one.
-    """
-    only_house = "A grid of many runs is counted in the house dialect: narrow the filter first."
-    _pick("across", "x")
-    _pick("up", "y")
-    if "Sp" in (_value("x"), _value("y")):
-        _pick("Sp in dialect", "dialect", disabled=binned, help=only_house if binned else None)
-    _pick("colour and mark", "colour")
-    _pick("bars", "bars", help="own: the run's own part of its uncertainty; total: with the shared part")
-    _switch("bands", "bands")
-    if has_theory(_value("x"), _value("y")) and _value("dialect") == "house":
-        _switch("theory", "theory")
-    elif has_theory(_value("x"), _value("y")):
-        session.note("No theory here: its curve is drawn in the house dialect only.")
-    _switch("log across", "logx")
-    _switch("log up", "logy")
-
-
-def has_theory(x: str, y: str) -> bool:
-    """Whether there is a curve for these axes."""
-    return (x, y) == ("Sp", "U_scaled")
-
-
-def _value(name: str) -> str:
-    text = session.address(name, CHOICES[name][0])
-    return text if text in CHOICES[name] else CHOICES[name][0]
+def controls(choices: Choices, registry: Registry) -> None:
+    """The controls beside the chart; each writes itself into the address."""
+    for axis, label, key in (("x", "across", choices.x), ("y", "up", choices.y)):
+        _pick(label, axis, key, registry)
+        if key in DIALECT_CHOICES and (axis == "x" or key != choices.x):
+            dialect_choices.choose("trends", key, registry, choices.dialects, f"dialect of {key}",
+                                   folded=True)  # fmt: skip
+    _pick("colour and mark", "colour", choices.colour or "none", registry)
+    _pick("bars", "bars", choices.bars, registry, help=BARS)
+    _switch("bands", "bands", choices.bands)
+    if not choices.why_no_curve(registry):
+        _switch("theory", "theory", choices.theory)
+    _switch("log across", "logx", choices.log_x)
+    _switch("log up", "logy", choices.log_y)
 
 
 def _key(name: str) -> str:
     return f"trends:{name}"
 
 
-def _pick(label: str, name: str, **options) -> None:
-    st.session_state[_key(name)] = _value(name)
-    listed = AXES if name in ("x", "y") else CHOICES[name]
+def _pick(label: str, name: str, value: str, registry: Registry, **options) -> None:
+    st.session_state[_key(name)] = value
+    offered = allowed(name, registry)
     # the bare key: the chart's title has its name, and a longer label would be cut on a small screen
-    st.selectbox(label, listed, key=_key(name), on_change=_write, args=(name,), **options)
+    st.selectbox(label, offered, key=_key(name), on_change=_write, args=(name, offered[0]), **options)
 
 
-def _switch(label: str, name: str) -> None:
-    st.session_state[_key(name)] = _value(name) == "on"
-    st.toggle(label, key=_key(name), on_change=_write, args=(name,))
+def _switch(label: str, name: str, value: bool) -> None:
+    st.session_state[_key(name)] = value
+    st.toggle(label, key=_key(name), on_change=_write, args=(name, "on"))
 
 
-def _write(name: str) -> None:
+def _write(name: str, default: str) -> None:
     value = st.session_state[_key(name)]
     text = {True: "on", False: "off"}.get(value, value)
-    session.set_address(**{name: text if text != CHOICES[name][0] else None})
+    session.set_address(**{name: text if text != default else None})

@@ -2,18 +2,19 @@
 
 import functools
 import html
-from dataclasses import replace
 
 import streamlit as st
 
 from labbook.app import filters, record, session
-from labbook.app.trend_choices import Choices, chosen, controls, has_theory
+from labbook.app.trend_choices import Choices, chosen, controls
 from labbook.app.trend_figure import Figure, drawn_as, save
 from labbook.book import queries
 from labbook.book.asking import Question
 from labbook.book.plotting import PlotRows, plot_frame
-from labbook.charts import dialect_axis, theory
+from labbook.charts import theory
+from labbook.charts.dialect_axis import HOUSE_ONLY
 from labbook.charts.trend import SPACE, Trend, caption, counted
+from labbook.registry.group import Registry
 
 CHART = "trends:chart"
 THEORY_FROM = 2000  # newest runs that the curve's swimmer is the median of
@@ -24,47 +25,46 @@ SHEET = """<style>
 [data-testid="stLayoutWrapper"]:has(> .st-key-lb-trend-chart), .st-key-lb-trend-chart {
   height: calc(100vh - 14.2rem) !important; min-height: 22rem;
   flex: none !important; overflow: hidden !important; }
+/* the names of dialects are longer than the column of controls is wide */
+[data-testid="stSelectboxVirtualDropdown"] { min-width: 20rem; }
 .lb-title { font-size: 0.95rem; line-height: 1.35; }
 </style>"""
 
 
 def page() -> None:
     """The page."""
-    choices, said = chosen()
+    registry = session.registry()
+    choices, said = chosen(registry)
     asked = filters.row("trends")
     for sentence in said:
         session.say_refused(sentence)
     state = session.state_of_book()
     plotted = _rows(state, filters.cache_key(asked), asked, choices.x, choices.y, choices.group,
-                    choices.log_x, choices.log_y, _wanted(choices))  # fmt: skip
+                    choices.log_x, choices.log_y, choices.dialects)  # fmt: skip
     nothing = plotted.frame.empty and not plotted.left_out
     if nothing and not session.book().ask(queries.count, Question(state="all")):
         _empty_book()
         return
-    if plotted.binned and not choices.house:
-        session.say_refused(f"{choices.dialect}: so many runs are counted on a grid, in the house dialect; "
-                            "narrow the filter to restate Sp.")  # fmt: skip
-        choices = replace(choices, dialect="house")
     run = session.address("run")
     st.html(SHEET)
     with st.container(key="lb-trends"):
         places = st.columns([0.15, 0.62, 0.23] if run else [0.15, 0.85], gap="small")
         with places[0]:
-            controls(plotted.binned)
+            controls(choices, registry)
         with places[1]:
-            curve = _curve(plotted, asked, choices)
+            curve = _curve(state, plotted, asked, choices, registry)
             drawn = _on_screen(state, filters.cache_key(asked), choices, run or None, session.is_dark(),
-                               plotted, curve)  # fmt: skip
+                               plotted, curve, registry)  # fmt: skip
             _title(asked, drawn)
             _chart(drawn)
-            _below(drawn, choices)
+            _below(drawn, choices, registry)
         if run:
             with places[2]:
                 st.button("Close", icon=":material/close:", key="trends:close", on_click=_close,
                           width="stretch")  # fmt: skip
                 record.show(run, place="trends", narrow=True)
         with places[0]:
-            save(Figure(plotted, choices, asked, curve, session.book()))
+            save(Figure(plotted, choices, asked, curve, session.book(), registry))
 
 
 def _empty_book() -> None:
@@ -75,14 +75,9 @@ def _empty_book() -> None:
 # ---- what is drawn
 
 
-def _wanted(choices: Choices) -> tuple[str, ...]:
-    """Further keys to read beside the axes."""
-    return () if choices.house else dialect_axis.INPUTS
-
-
 @st.cache_data(max_entries=24, show_spinner="Reading the runs …")
-def _rows(state: str, asked: str, _asked: Question, x, y, group, log_x, log_y, also) -> PlotRows:
-    return session.book().ask(plot_frame, _asked, x, y, group, log_x=log_x, log_y=log_y, also=also)
+def _rows(state: str, asked: str, _asked: Question, x, y, group, log_x, log_y, dialects) -> PlotRows:
+    return session.book().ask(plot_frame, _asked, x, y, group, log_x=log_x, log_y=log_y, dialects=dialects)
 
 
 @st.cache_data(max_entries=24, show_spinner="Drawing the curve …")
@@ -94,22 +89,25 @@ def _theory_runs(state: str, asked: str, _asked: Question):
 
 
 @st.cache_resource(max_entries=24, show_spinner=False)
-def _on_screen(state: str, asked: str, choices: Choices, picked, dark: bool, _plotted, _curve) -> Trend:
+def _on_screen(state: str, asked: str, choices: Choices, picked, dark, _plotted, _curve, _registry) -> Trend:
     """The chart of the page, kept for the reruns that change nothing in it."""
-    return drawn_as(_plotted, choices, _curve, dark=dark, picked=picked, **(BESIDE if picked else ALONE))
+    size = BESIDE if picked else ALONE
+    return drawn_as(_plotted, choices, _registry, _curve, dark=dark, picked=picked, **size)
 
 
-def _curve(plotted: PlotRows, asked: Question, choices: Choices):
+def _curve(state: str, plotted: PlotRows, asked: Question, choices: Choices, registry: Registry):
     """The theory for these axes over the span of the runs, or None."""
-    if not (choices.theory and choices.house and has_theory(choices.x, choices.y)):
+    if not choices.theory or choices.why_no_curve(registry):
         return None
     seen = plotted.frame.dropna(subset=[choices.x, choices.y])
     seen = seen[(seen["state"] != "void") & (seen[choices.x] > 0)]
     seen = seen[seen[choices.y] > 0] if choices.log_y else seen
     if seen.empty:
         return None
-    runs = _theory_runs(session.state_of_book(), filters.cache_key(asked), asked)
-    curve = theory.tail_curve(runs, float(seen[choices.x].min()), float(seen[choices.x].max()))
+    low, high = float(seen[choices.x].min()), float(seen[choices.x].max())
+    runs = _theory_runs(state, filters.cache_key(asked), asked)
+    spoken = choices.spoken(registry)
+    curve = theory.tail_curve(runs, low, high, spoken=spoken, coefficient=registry.coefficient)
     return curve if len(curve) else None
 
 
@@ -141,12 +139,16 @@ def _chart(drawn: Trend) -> None:
         session.note("That mark stands for several runs: narrow the filter until they stand apart.")
 
 
-def _below(drawn: Trend, choices: Choices) -> None:
+def _below(drawn: Trend, choices: Choices, registry: Registry) -> None:
     notes = drawn.caption.removeprefix(caption(drawn.drawn, drawn.left_out)[:-1]).removeprefix(".").strip()
-    if choices.bands and not choices.house:
-        notes += " Sp's bands belong to the house dialect and are not drawn."
     total = drawn.drawn + sum(drawn.left_out.values())
     session.note(f"{_spaced(drawn.drawn)} of {counted(total)} drawn. {notes}")
+    lines = [HOUSE_ONLY] if choices.dialects else []
+    why = choices.why_no_curve(registry)
+    if why and choices.theory and (choices.x, choices.y) == theory.AXES:
+        lines.append(f"no theory here: {why}")
+    if lines:
+        session.note("; ".join(lines))
 
 
 def _pick(key: str) -> None:

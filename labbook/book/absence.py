@@ -4,23 +4,22 @@ import json
 import math
 from collections.abc import Mapping
 
-from labbook.registry.catalogue import NUMBERS
+from labbook.book.block_spread import FOLLOWS
+from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES, RUN_KEYS, SWIMMER_KEYS
 
-_FOLLOWS = {
-    "omega": ("f",), "nu": ("mu", "rho"), "EI": ("E", "I_area"), "zeta_n": ("mu", "L_tail", "a"),
-    "zeta_t": ("mu", "L_tail", "a"), "A22": ("R_helix", "pitch", "L_tail", "a", "mu"),
-}  # fmt: skip
 _SENTENCE_OF = {"mu": "mu_from", "rho": "rho_from", "lam": "lam_from", "E": "E_from"}
 
 
-def why_absent(values: Mapping, sentences: Mapping[str, str], swimmer: str, drive: str) -> dict[str, str]:
+def why_absent(
+    values: Mapping, sentences: Mapping[str, str], swimmer: str, drive: str, registry: Registry
+) -> dict[str, str]:
     """Key -> sentence for every resolved quantity and number that a run lacks.
 
     values: key -> SI value or None/NaN, with u_U beside; sentences: mu_from, rho_from, lam_from, E_from.
     """
     found = {}
-    for key, row in NUMBERS.items():
+    for key, row in registry.numbers.items():
         if _absent(values.get(key)):
             found[key] = _number(row, values, sentences, swimmer, drive)
     for key in ("mu", "rho", "nu", "E", "EI", "I_area", "a", "zeta_n", "zeta_t"):
@@ -50,7 +49,7 @@ def _roots(keys, values) -> list[str]:
     for key in keys:
         if not _absent(values.get(key)):
             continue
-        deeper = _roots(_FOLLOWS[key], values) if key in _FOLLOWS else []
+        deeper = _roots(FOLLOWS[key], values) if key in FOLLOWS else []
         found |= dict.fromkeys(deeper or [key])
     return list(found)
 
@@ -74,11 +73,13 @@ def _cause(key, sentences, swimmer) -> str:
     return "the drag model does not reach so stout a tail"
 
 
-def marks_of(stored: str | None, confirmed: str | None, values: Mapping) -> dict[str, list[str]]:
+def marks_of(
+    stored: str | None, confirmed: str | None, values: Mapping, registry: Registry
+) -> dict[str, list[str]]:
     """Key -> marks of one run; what follows from an extrapolated value is extrapolated too, unless it is absent."""
     marks: dict[str, list[str]] = json.loads(stored) if stored else {}
     beyond = {k for k, m in marks.items() if "extrapolated" in m}
-    for key, inputs in {**_FOLLOWS, **{k: n.inputs for k, n in NUMBERS.items()}}.items():
+    for key, inputs in {**FOLLOWS, **{k: n.inputs for k, n in registry.numbers.items()}}.items():
         if beyond & set(inputs) and not _absent(values.get(key)):
             beyond.add(key)
             marks.setdefault(key, []).append("extrapolated")

@@ -6,9 +6,9 @@ from collections.abc import Mapping, Sequence
 from labbook.book.asking import Question
 from labbook.book.clock import read_moment
 from labbook.book.records import STATES
-from labbook.book.stored_view import KEYS
 from labbook.errors import Refusal
-from labbook.registry.regimes import regime
+from labbook.registry.dialects import Choices, completed, read_choices
+from labbook.registry.group import Registry
 
 # parameter -> field of a question, for those that name records; material, person and series likewise
 CHOSEN = {
@@ -19,6 +19,7 @@ CHOSEN = {
     "series": "series",
 }
 PARAMETERS = ("regime", "range", *CHOSEN, "since", "until", "text", "state")
+DIALECT = "dialect"  # a parameter beside the question's, which is always read in the house dialect
 
 
 def parameters(question: Question) -> dict[str, list[str]]:
@@ -32,7 +33,7 @@ def parameters(question: Question) -> dict[str, list[str]]:
 
 
 def read_question(
-    given: Mapping[str, Sequence[str]], known: Mapping[str, Sequence[str]]
+    given: Mapping[str, Sequence[str]], known: Mapping[str, Sequence[str]], registry: Registry
 ) -> tuple[Question, list[str]]:
     """The question of an address, and one sentence for each part that could not be read and was left out.
 
@@ -63,8 +64,8 @@ def read_question(
     text = (kept("text", str.strip) or [None])[-1] or None
     state = (kept("state", _state) or ["kept"])[-1]
     question = Question(
-        regimes=tuple(kept("regime", lambda name: regime(name).name)),
-        ranges=dict(kept("range", read_range)),
+        regimes=tuple(kept("regime", lambda name: registry.regime(name).name)),
+        ranges=dict(kept("range", lambda text: read_range(text, registry))),
         **chosen,
         **moments,
         text=text,
@@ -73,13 +74,45 @@ def read_question(
     return question, said
 
 
-def read_range(text: str) -> tuple[str, tuple[float, float]]:
+def read_dialects(
+    texts: Sequence[str], registry: Registry
+) -> tuple[dict[str, dict[str, object]], list[str]]:
+    """Number -> every choice, of 'Sp=rate:f,power:1' and the like; and a sentence for each that cannot be read.
+
+    A dialect that is the house's is left out.
+    """
+    found, said = {}, []
+    for text in dict.fromkeys(texts):
+        try:
+            number, choices = read_choices(text)
+            if number in found:
+                reason = f"{number} has a dialect in this address already"
+                raise Refusal(DIALECT, text, reason, "give one for each number")
+        except Refusal as refusal:
+            said.append(str(refusal))
+        else:
+            found[number] = completed(number, choices, registry.house.get(number))
+    return {n: choices for n, choices in found.items() if choices != registry.choices(n)}, said
+
+
+def dialect_texts(dialects: Mapping[str, Choices], registry: Registry) -> list[str]:
+    """The texts that name some dialects in an address or on the command line; those of the house need none."""
+    texts = []
+    for number, choices in dialects.items():
+        house = registry.choices(number)
+        chosen = completed(number, choices, house)
+        away = [f"{name}:{option}" for name, option in chosen.items() if option != house[name]]
+        texts += [f"{number}={','.join(away)}"] if away else []
+    return texts
+
+
+def read_range(text: str, registry: Registry) -> tuple[str, tuple[float, float]]:
     """(key, (low, high)) of 'Sp:1:3', in SI; an empty limit is open. Refusal for anything else."""
     parts = text.split(":")
     if len(parts) != 3:
         raise Refusal("range", text, "is not a range", "write key:low:high, e.g. Sp:1:3")
     key, low, high = parts[0].strip(), _limit(text, parts[1], -math.inf), _limit(text, parts[2], math.inf)
-    if key not in KEYS:
+    if key not in registry.keys:
         raise Refusal(
             "range", text, f"{key!r} is no quantity or number of a run", "the Numbers page lists them"
         )

@@ -1,8 +1,10 @@
 """New runs, one or a hundred thousand: references found, identity settled, derived, warned about, written."""
 
 import json
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field
+from itertools import count
+from typing import NamedTuple
 
 import numpy as np
 from sqlalchemy import Connection, Table, func, select
@@ -10,14 +12,17 @@ from sqlalchemy import Connection, Table, func, select
 from labbook.book.bulk import write_many
 from labbook.book.clock import now
 from labbook.book.derive import BATCH, derive
-from labbook.book.drafts import Draft
+from labbook.book.drafts import Draft, in_columns, typed_in_json
 from labbook.book.plausibility import KnownRuns, enough_runs, run_warnings
-from labbook.book.run_facts import facts_from
-from labbook.book.run_rows import stored_rows, write_stored
+from labbook.book.records import KINDS
+from labbook.book.registry_rows import registry_of
+from labbook.book.run_facts import facts_of_cells
+from labbook.book.run_rows import FACTS, stored_rows, write_stored
 from labbook.book.shelf import Item, Shelf, read_shelf
-from labbook.book.stored_view import KEYS
+from labbook.book.stored_view import BIRTH_KEYS
 from labbook.book.tables import fluid, rig, run, swimmer
 from labbook.errors import Refusal
+from labbook.registry.group import Registry
 
 RUN_COLUMNS = (
     "id", "code", "serial", "swimmer_id", "fluid_id", "rig_id", "at", "by", "drive", "series", "video", "note",
@@ -26,11 +31,10 @@ RUN_COLUMNS = (
 _REFERS = {"swimmer": swimmer, "fluid": fluid, "rig": rig}
 FEW = 20  # runs that are compared by a query each; more are compared with a swimmer's runs read at once
 LAST_SERIAL = 900_000_000  # the codes that the book gives itself never reach it
-PLACE = {k: 3 * i for i, k in enumerate(KEYS)}
+PLACE = {k: 3 * i for i, k in enumerate(BIRTH_KEYS)}
 
 
-@dataclass(frozen=True)
-class Arrival:
+class Arrival(NamedTuple):
     """One run's draft, where it stands ('runs.csv line 12', '' for the form), and what makes it unique."""
 
     draft: Draft
@@ -88,45 +92,46 @@ def place_runs(
     Adds to `findings` what is refused or warned; where anything is refused, or a warning is not confirmed,
     the caller must abandon the transaction.
     """
-    found = {k: ids_of(connection, t, {a.draft.texts.get(k, "") for a in arrivals}) for k, t in _REFERS.items()}
-    fit = [a for a in arrivals if _references_stand(connection, a, found, findings)]
-    shelf = read_shelf(
-        connection,
-        swimmers={found["swimmer"][a.draft.texts["swimmer"]] for a in fit},
-        fluids={found["fluid"][a.draft.texts["fluid"]] for a in fit},
-        rigs={found["rig"][a.draft.texts["rig"]] for a in fit if "rig" in a.draft.texts},
-    )
-    fit = [a for a in fit if fits_swimmer(a, shelf.swimmers[found["swimmer"][a.draft.texts["swimmer"]]], findings)]
+    cells = in_columns(a.draft for a in arrivals)
+    named = {k: {cell.text for cell in cells.get(k, ())} - {None} for k in _REFERS}
+    found = {k: ids_of(connection, table, named[k]) for k, table in _REFERS.items()}
+    if findings.refused or any(named[k] - found[k].keys() for k in _REFERS):
+        # some lack what they refer to; the others are still looked at, so that everything is said at once
+        arrivals = [a for a in arrivals if _references_stand(connection, a, found, findings)]
+    shelf = read_shelf(connection, *(found[k].values() for k in ("swimmer", "fluid", "rig")))
+    for arrival in arrivals:
+        fits_swimmer(arrival, shelf.swimmers[found["swimmer"][arrival.draft.text("swimmer")]], findings)
     if findings.refused:
         return []
-    codes = _codes(connection, fit)
+    codes = _codes(connection, [a.draft.text("code") for a in arrivals])
     next_id = (connection.scalar(select(func.max(run.c.id))) or 0) + 1
-    enough = enough_runs(connection, (found["swimmer"][a.draft.texts["swimmer"]] for a in fit), next_id)
-    known = KnownRuns(connection, next_id) if len(fit) > FEW else None
-    write = _Writer(connection, found, shelf, by, findings, confirm, next_id, enough, known)
+    enough = enough_runs(connection, found["swimmer"].values(), next_id)
+    known = KnownRuns(connection, next_id) if len(arrivals) > FEW else None
+    write = _Writer(connection, found, shelf, registry_of(connection), by, findings, confirm, next_id, enough, known)
     written = []
-    for start in range(0, len(fit), BATCH):
-        part = fit[start : start + BATCH]
+    for start in range(0, len(arrivals), BATCH):
+        here = slice(start, start + BATCH)
+        part = arrivals[here]
         ids = range(next_id + start, next_id + start + len(part))
-        written += write.batch(part, ids, codes[start : start + BATCH])
+        written += write.batch(part, {c: column[here] for c, column in cells.items()}, ids, codes[here])
         if progress is not None:
             progress(len(part))
     return written
 
 
 def _references_stand(connection, arrival: Arrival, found, findings: Findings) -> bool:
-    stands = True
+    stands, text = True, arrival.draft.text
     for column, table in _REFERS.items():
-        code = arrival.draft.texts.get(column)
+        code = text(column)
         if code is not None and code not in found[column]:
             findings.refuse(arrival.where, unknown(connection, table, column, code))
             stands = False
-    return stands and all(column in arrival.draft.texts for column in ("swimmer", "fluid", "at"))
+    return stands and None not in (text("swimmer"), text("fluid"), text("at"))
 
 
 def fits_swimmer(arrival: Arrival, of: Item, findings: Findings) -> bool:
     """Whether a run is possible with this swimmer: no wall inside its head."""
-    wall, head = arrival.draft.typed.get("h_wall"), of.value("b")
+    wall, head = arrival.draft.quantity("h_wall"), of.value("b")
     if wall is not None and head is not None and wall.value <= head:
         findings.refuse(
             arrival.where,
@@ -144,19 +149,11 @@ def default_drive(of: Item) -> str:
     return "free_head_angle" if of.value("b") is not None else "pivoted_angle"
 
 
-def _codes(connection, arrivals: list[Arrival]) -> list[str]:
+def _codes(connection, own: list[str | None]) -> list[str]:
     """Each run's code: its own, else the next free R-number."""
     serial = connection.scalar(select(func.max(run.c.serial))) or 0
-    own = [serial_of(a.draft.texts["code"]) or 0 for a in arrivals if "code" in a.draft.texts]
-    serial = max([serial, *own])
-    codes = []
-    for arrival in arrivals:
-        if "code" in arrival.draft.texts:
-            codes.append(arrival.draft.texts["code"])
-        else:
-            serial += 1
-            codes.append(f"R-{serial:04d}")
-    return codes
+    free = count(1 + max([serial, *(serial_of(code) or 0 for code in own if code)]))
+    return [code or f"R-{next(free):04d}" for code in own]
 
 
 def serial_of(code: str) -> int | None:
@@ -174,6 +171,7 @@ class _Writer:
     connection: Connection
     found: dict[str, dict[str, int]]
     shelf: Shelf
+    registry: Registry
     by: str
     findings: Findings
     confirm: bool
@@ -182,49 +180,57 @@ class _Writer:
     known: KnownRuns | None
     logged: str = field(default_factory=now)
 
-    def batch(self, arrivals, ids, codes) -> list[tuple[int, str]]:
+    def batch(self, arrivals, cells, ids, codes) -> list[tuple[int, str]]:
         """Write a batch; nothing is written, and nothing returned, while a warning is not confirmed."""
-        rows = [self._facts(*one) for one in zip(arrivals, ids, codes, strict=True)]
-        facts = facts_from([r[2:8] for r in rows])
-        derived = derive(facts, self.shelf)
-        warned = self._warnings(arrivals, rows, derived.floats)
+        columns = self._columns(arrivals, cells, ids, codes)
+        told = (columns[c] for c in ("swimmer_id", "fluid_id", "rig_id", "at", "drive"))
+        facts = facts_of_cells(cells, *told)
+        derived = derive(facts, self.shelf, self.registry)
+        warned = self._warnings(arrivals, cells, columns, derived.floats)
         if self.findings.warned and not self.confirm:
             return []
-        runs = [self._row(a, r, warned.get(i)) for i, (a, r) in enumerate(zip(arrivals, rows, strict=True))]
+        columns["confirmed"] = [warned.get(i) for i in range(len(arrivals))]
+        runs = list(zip(*(columns[c] for c in RUN_COLUMNS), strict=True))
         write_many(self.connection, run, RUN_COLUMNS, runs)
-        write_stored(self.connection, *stored_rows(rows, facts, derived))
-        return [(r[0], r[1]) for r in rows]
+        rows = list(zip(*(columns[c.name] for c in FACTS), columns["typed"], strict=True))
+        write_stored(self.connection, *stored_rows(rows, derived))
+        return list(zip(ids, codes, strict=True))
 
-    def _facts(self, arrival, run_id, code) -> tuple:
-        """A run as run_rows.FACTS selects it."""
-        texts = arrival.draft.texts
-        swimmer_id = self.found["swimmer"][texts["swimmer"]]
-        drive = texts.get("drive") or default_drive(self.shelf.swimmers[swimmer_id])
-        return (
-            run_id, code, swimmer_id, self.found["fluid"][texts["fluid"]],
-            self.found["rig"].get(texts.get("rig", "")), texts["at"], drive, arrival.draft.document(),
-            texts.get("state", "kept"), texts.get("by", self.by), texts.get("series"), texts.get("video"),
-            texts.get("note"), texts.get("why"), arrival.draft.stored(),
-        )  # fmt: skip
+    def _columns(self, arrivals, cells, ids, codes) -> dict[str, Sequence]:
+        """What the table of runs gets, but for what was confirmed: column -> a value a run."""
 
-    def _row(self, arrival, facts, warned) -> tuple:
-        """A run in RUN_COLUMNS order."""
-        by, series, video, note, why, typed = facts[9:]
-        return (
-            *facts[:2], serial_of(facts[1]), *facts[2:6], by, facts[6], series, video, note, facts[8], why, typed,
-            warned, self.logged, arrival.token, arrival.sheet_row,
-        )  # fmt: skip
+        def texts(column, absent=None):
+            if column not in cells:
+                return [absent] * len(arrivals)
+            return [cell.text or absent for cell in cells[column]]
 
-    def _warnings(self, arrivals, rows, floats) -> dict[int, str]:
+        swimmers = [self.found["swimmer"][code] for code in texts("swimmer")]
+        usual = {i: default_drive(item) for i, item in self.shelf.swimmers.items()}
+        return {
+            "id": ids, "code": codes, "serial": [serial_of(code) for code in codes], "swimmer_id": swimmers,
+            "fluid_id": [self.found["fluid"][code] for code in texts("fluid")],
+            "rig_id": [self.found["rig"].get(code) for code in texts("rig")],
+            "at": texts("at"), "by": texts("by", self.by),
+            "drive": [drive or usual[i] for drive, i in zip(texts("drive"), swimmers, strict=True)],
+            **{c: texts(c) for c in ("series", "video", "note", "why")}, "state": texts("state", "kept"),
+            "typed": typed_in_json(a.draft for a in arrivals), "logged": [self.logged] * len(arrivals),
+            "token": [a.token for a in arrivals], "sheet_row": [a.sheet_row for a in arrivals],
+        }  # fmt: skip
+
+    def _warnings(self, arrivals, cells, columns, floats) -> dict[int, str]:
         """Index of the run -> its warnings as stored; all of them go into `findings` too."""
+        typed = [cells[c] for c in KINDS["run"].typed if c in cells]
+        suspects = {i for column in typed for i, cell in enumerate(column) if cell.warning}
+        of = columns["swimmer_id"]
+        compared = {i for i, state in enumerate(columns["state"]) if state == "kept" and of[i] in self.enough}
         told: dict[int, str] = {}
-        for i, (arrival, row) in enumerate(zip(arrivals, rows, strict=True)):
-            mine = list(arrival.draft.warned)
-            if row[8] == "kept" and row[2] in self.enough:
-                mine += run_warnings(self.connection, row[2], watched(floats[i]), self.first_id, known=self.known)
+        for i in sorted(suspects | compared):
+            mine = arrivals[i].draft.warned
+            if i in compared:
+                mine += run_warnings(self.connection, of[i], watched(floats[i]), self.first_id, known=self.known)
             if mine:
                 told[i] = json.dumps(mine, ensure_ascii=False)
-                lead = f"{arrival.where}, " if arrival.where else ""
+                lead = f"{arrivals[i].where}, " if arrivals[i].where else ""
                 self.findings.warned += [(column, lead + sentence) for column, sentence in mine]
         return told
 

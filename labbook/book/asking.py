@@ -8,11 +8,12 @@ from sqlalchemy import ColumnElement, and_, or_, select
 
 from labbook.book.clock import local, read_moment
 from labbook.book.records import STATES
-from labbook.book.stored_view import KEYS, column_of, resolved
+from labbook.book.stored_view import resolved, view_column
 from labbook.book.tables import fluid, material, run, swimmer
 from labbook.errors import Refusal
+from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES
-from labbook.registry.regimes import Regime, regime
+from labbook.registry.regimes import Band, Regime
 
 
 @dataclass(frozen=True)
@@ -36,7 +37,7 @@ class Question:
     text: str | None = None
     state: str = "kept"
 
-    def conditions(self, *, regimes: bool = True) -> list[ColumnElement]:
+    def conditions(self, registry: Registry, *, regimes: bool = True) -> list[ColumnElement]:
         """SQL conditions over the stored view (joined with `run` where needs_run() says so)."""
         found = []
         if self.state not in (*STATES, "all"):
@@ -44,7 +45,7 @@ class Question:
         if self.state != "all":
             found.append(resolved.c.state == self.state)
         for key, (low, high) in self.ranges.items():
-            found.append(_between(key, low, high))
+            found.append(_between(check_key(key, registry), low, high))
         for column, table, codes in (
             (resolved.c.fluid_id, fluid, self.fluids),
             (resolved.c.swimmer_id, swimmer, self.swimmers),
@@ -65,7 +66,7 @@ class Question:
             columns = (run.c.code, run.c.note, run.c.series, run.c.video)
             found.append(or_(*(c.ilike(like, escape="\\") for c in columns)))
         if regimes:
-            found += [holds(regime(name)) for name in self.regimes]
+            found += [holds(registry.regime(name)) for name in self.regimes]
         return found
 
     def needs_run(self) -> bool:
@@ -104,26 +105,30 @@ class Question:
         return " ".join(words)
 
 
-def holds(band: Regime) -> ColumnElement:
-    """The SQL condition that a run lies in a regime."""
-    column = resolved.c[column_of(band.number)]
+def holds(regime: Regime) -> ColumnElement:
+    """The SQL condition that a run lies in a regime: in every band of it."""
+    return and_(*(limit for band in regime.bands for limit in _limits(band)))
+
+
+def _limits(band: Band) -> list[ColumnElement]:
+    column = view_column(band.number)
     limits = []
     if band.low != float("-inf"):
         limits.append(column >= band.low if band.low_closed else column > band.low)
     if band.high != float("inf"):
         limits.append(column <= band.high if band.high_closed else column < band.high)
-    return and_(*limits)
+    return limits
 
 
-def check_key(key: str) -> str:
+def check_key(key: str, registry: Registry) -> str:
     """The key if the stored view holds it; Refusal otherwise."""
-    if key not in KEYS:
-        raise Refusal("key", key, "is no quantity or number of a run", f"one of {', '.join(KEYS)}")
+    if key not in registry.keys:
+        raise Refusal("key", key, "is no quantity or number of a run", f"one of {', '.join(registry.keys)}")
     return key
 
 
 def _between(key: str, low: float, high: float) -> ColumnElement:
-    column = resolved.c[column_of(check_key(key))]
+    column = view_column(key)
     if low != low or high != high or low > high:
         raise Refusal("range", f"{key} {low:g} {high:g}", "is empty", "give the lower limit first")
     limits = [column.is_not(None)]
@@ -150,6 +155,8 @@ def _quoted(text: str) -> str:
 def _range_in_words(key: str, low: float, high: float) -> str:
     unit = QUANTITIES[key].unit if key in QUANTITIES else ""
     tail = f" {unit}" if unit and unit != "1" else ""
+    if (low, high) == (float("-inf"), float("inf")):
+        return f"any {key}"
     if high == float("inf"):
         return f"{key} >= {low:g}{tail}"
     if low == float("-inf"):

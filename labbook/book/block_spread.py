@@ -2,37 +2,14 @@
 
 import numpy as np
 
+from labbook.book.gathering import ABSENT, BATCH_KEYS, Gathering
 from labbook.book.shelf import Item
 from labbook.physics import helices, rods, sections
-from labbook.registry.catalogue import NUMBERS
+from labbook.registry.dialects import coefficient
 from labbook.registry.formula import parse
+from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES, RUN_KEYS, SWIMMER_KEYS
 from labbook.registry.spread import Spread
-
-ABSENT = (np.nan, 0.0)
-
-
-def distinct(ids: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """(the ids that occur, ascending, and which of them each is): np.unique for small counts, without sorting."""
-    occur = np.flatnonzero(np.bincount(ids))
-    place = np.empty(occur[-1] + 1, np.int64)
-    place[occur] = np.arange(len(occur))
-    return occur, place[ids]
-
-
-class Gathered:
-    """Cells of shelf records spread over the runs that refer to them."""
-
-    def __init__(self, ids, items):
-        unique, self.which = distinct(ids)
-        self.items = [items.get(int(i)) for i in unique]
-
-    def pick(self, block, cell):
-        """(values, u) over a block of runs of `cell(record) -> (value, u)`."""
-        cells = [cell(item) if item is not None else ABSENT for item in self.items]
-        table = np.array(cells, dtype=float).reshape(-1, 2)
-        which = self.which[block]
-        return table[which, 0], table[which, 1]
 
 
 def section_of(swimmer: Item) -> str:
@@ -43,28 +20,71 @@ def section_of(swimmer: Item) -> str:
     return "rod" if "d" in has else "tube" if "D" in has else "strip" if "w" in has and "t" in has else ""
 
 
-def spread_of(block, group, facts, shelf, values, u, batch, swimmers, rigs) -> Spread:
-    spread = Spread()
-    n = len(block)
-    for key in RUN_KEYS:
-        spread.measured(key, values[key][block], u[key][block])
-    _flux_density(spread, block, rigs)
-    _swimmer_lengths(spread, block, swimmers, group)
-    for key in ("mu", "rho", "lam", "E"):
-        spread.values[key] = batch[key].value[block]
-        spread.parts[key] = {s: p[block] for s, p in batch[key].parts.items()}
-    spread.measured("rho_s", *swimmers.pick(block, lambda s: _material_cell(shelf, s, "rho_s")))
-    section = section_of(group)
-    for key in ("omega", "nu"):
-        _by_formula(spread, key, QUANTITIES[key].formula)
-    _section(spread, section, n)
-    _by_formula(spread, "EI", QUANTITIES["EI"].formula)
-    _drag(spread, section)
-    _helix(spread, group.texts["form"], n)
-    for key, row in NUMBERS.items():
-        spread.follow((key,), _keyworded(row.parsed), row.inputs)
-    _undefined(spread, facts.drive[block])
+# what the resolved keys follow from, beside the formulas of their own rows
+FOLLOWS = {
+    "omega": ("f",), "nu": ("mu", "rho"), "EI": ("E", "I_area"), "zeta_n": ("mu", "L_tail", "a"),
+    "zeta_t": ("mu", "L_tail", "a"), "A22": ("R_helix", "pitch", "L_tail", "a", "mu"),
+}  # fmt: skip
+
+
+def needed(registry: Registry, wanted: tuple[str, ...]) -> frozenset[str]:
+    """Every key that some numbers follow from, themselves included; all keys where none is named."""
+    if not wanted:
+        return frozenset((*registry.keys, "A22"))
+    found, waiting = set(), list(wanted)
+    while waiting:
+        key = waiting.pop()
+        if key not in found:
+            found.add(key)
+            waiting += registry.numbers[key].inputs if key in registry.numbers else FOLLOWS.get(key, ())
+            waiting += ("rho",) if key == "mu" else ()  # a viscosity may be read as nu
+    return frozenset(found)
+
+
+def spread_of(gathered: Gathering, block, registry: Registry, wanted: tuple[str, ...] = ()) -> Spread:
+    """The values and parts of a block of runs alike in section, form and drive.
+
+    block: their row indices; wanted: only what these numbers follow from.
+    """
+    group = gathered.shelf.swimmers[int(gathered.facts.swimmer[block[0]])]
+    spread = measured_of(gathered, block, group)
+    follow(spread, group, registry, needed(registry, wanted))
+    undefined(spread, gathered.facts.drive[block], registry, wanted)
     return spread
+
+
+def measured_of(gathered: Gathering, block, group: Item) -> Spread:
+    """What was measured, set, read or looked up for a block of runs: everything that the rest follows from."""
+    spread = Spread()
+    for key in RUN_KEYS:
+        spread.measured(key, gathered.values[key][block], gathered.u[key][block])
+    _flux_density(spread, block, gathered.rigs)
+    _swimmer_lengths(spread, block, gathered.swimmers, group)
+    for key in BATCH_KEYS:
+        spread.values[key] = gathered.batch[key].value[block]
+        spread.parts[key] = {s: p[block] for s, p in gathered.batch[key].parts.items()}
+    densities = gathered.swimmers.pick(block, lambda s: _material_cell(gathered.shelf, s, "rho_s"))
+    spread.measured("rho_s", *densities)
+    return spread
+
+
+def follow(spread: Spread, group: Item, registry: Registry, keys: frozenset[str]) -> None:
+    """Enter those of `keys` that follow from what was measured: resolved quantities, then numbers."""
+    section, form, n = section_of(group), group.texts["form"], len(spread.values["f"])
+    for key in ("omega", "nu"):
+        if key in keys:
+            _by_formula(spread, key, QUANTITIES[key].formula)
+    if keys & {"I_area", "a"}:
+        _section(spread, section, n)
+    if "EI" in keys:
+        _by_formula(spread, "EI", QUANTITIES["EI"].formula)
+    if keys & {"zeta_n", "zeta_t"}:
+        _drag(spread, section, registry.coefficient)
+    if "A22" in keys:
+        _helix(spread, form, n)
+    for key, row in registry.numbers.items():
+        if key in keys:
+            spread.follow((key,), _keyworded(row.parsed), row.inputs)
 
 
 def _keyworded(parsed):
@@ -131,22 +151,18 @@ def _section(spread, section, n) -> None:
             spread.measured(key, np.full(n, np.nan), np.zeros(n))
 
 
-def _drag(spread, section) -> None:
+def _drag(spread, section, coefficient_name) -> None:
     """Resistive coefficients by the house drag model; a strip that bends in t moves broadside."""
-    model = rods.HOUSE_MODEL
-    if section == "strip":
-        inputs = ("mu", "L_tail", "w", "t")
+    inputs = ("mu", "L_tail", "w", "t") if section == "strip" else ("mu", "L_tail", "a")
+    model = coefficient_name if coefficient_name in rods.MODELS else rods.HOUSE_MODEL
 
-        def function(mu, L_tail, w, t):
-            return rods.resistive_coefficients(
-                model=model, L=L_tail, a=sections.strip_radius(w=w, t=t), mu=mu, flatness=t / (w + t)
-            )
-
-    else:
-        inputs = ("mu", "L_tail", "a")
-
-        def function(mu, L_tail, a):
-            return rods.resistive_coefficients(model=model, L=L_tail, a=a, mu=mu)
+    def function(mu, L_tail, a=None, w=None, t=None):
+        flatness = 0.5 if w is None else t / (w + t)
+        a = a if w is None else sections.strip_radius(w=w, t=t)
+        zeta_n, zeta_t = rods.resistive_coefficients(model=model, L=L_tail, a=a, mu=mu, flatness=flatness)
+        if coefficient_name != model:
+            zeta_n = coefficient(coefficient_name, dict(L_tail=L_tail, a=a, mu=mu))
+        return zeta_n, zeta_t
 
     spread.follow(("zeta_n", "zeta_t"), function, inputs)
 
@@ -164,9 +180,10 @@ def _helix(spread, form, n) -> None:
         spread.values["A22"], spread.parts["A22"] = np.zeros(n), {}
 
 
-def _undefined(spread, drives) -> None:
+def undefined(spread: Spread, drives, registry: Registry, wanted: tuple[str, ...] = ()) -> None:
     """Numbers that are absent by rule: a divisor consistent with zero, a drive they are not made for."""
-    for key, row in NUMBERS.items():
+    for key in wanted or registry.numbers:
+        row = registry.numbers[key]
         absent = np.zeros(len(drives), bool)
         if row.not_zero:
             spread_u = np.hypot(spread.own(row.not_zero), spread.shared(row.not_zero))

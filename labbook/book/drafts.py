@@ -1,69 +1,120 @@
 """Drafts: one record as typed, read and checked as far as it can be without the book."""
 
-import hashlib
-import json
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Iterable, Iterator, Mapping, Sequence
+from hashlib import blake2b
+from itertools import groupby, repeat, zip_longest
+from operator import attrgetter
 from typing import NamedTuple
 
-from labbook.book.clock import read_date, read_moment
+from labbook.book.cells import EMPTY, Cell, CellsRead
 from labbook.book.records import Kind, kind
 from labbook.errors import LabbookError, Refusal, Refusals
-from labbook.registry.quantities import QUANTITIES
-from labbook.registry.typed import Typed, printed, printed_uncertainty, read, read_uncertainty
-from labbook.registry.written import shown
-
-LONGEST_TEXT = 4_000
-LONGEST_CODE = 64
+from labbook.registry.typed import Typed
 
 
-@dataclass(frozen=True)
-class Draft:
-    """A record read from cells.
+class Layout:
+    """The columns that the cells of some drafts stand in, in the order in which they were given."""
 
-    texts: column -> text (dates and moments as stored); typed: column -> Typed; said: column -> the typed
-    quantity as a text that reads the same anywhere; warned: (column, sentence) pairs that want a confirmation;
-    entries: each typed quantity in JSON; told: each cell's column and content, in any order.
-    """
+    def __init__(self, kind: str, columns: Iterable[str]):
+        self.kind, self.columns = kind, tuple(columns)
+        self.place = {c: i for i, c in enumerate(self.columns)}
+        self.by_name = [self.place[c] for c in sorted(self.columns)]
 
-    kind: str
-    texts: dict[str, str]
-    typed: dict[str, Typed]
-    said: dict[str, str] = field(default_factory=dict)
-    warned: tuple[tuple[str, str], ...] = ()
-    entries: Sequence[str] = ()
-    told: Sequence[str] = ()
 
-    def stored(self) -> str:
-        """The typed quantities as the book stores them, in JSON."""
-        return "{" + ", ".join(self.entries) + "}"
+class Draft(NamedTuple):
+    """A record read from cells: one a column of its layout."""
+
+    layout: Layout
+    cells: tuple[Cell, ...]
+
+    @property
+    def kind(self) -> str:
+        """The kind of record."""
+        return self.layout.kind
+
+    def text(self, column: str) -> str | None:
+        """The text in a column, dates and moments as stored; None for an empty one and for a quantity."""
+        place = self.layout.place.get(column)
+        return None if place is None else self.cells[place].text
+
+    def quantity(self, column: str) -> Typed | None:
+        """The quantity in a column; None for an empty one and for a text."""
+        place = self.layout.place.get(column)
+        return None if place is None else self.cells[place].typed
+
+    @property
+    def texts(self) -> dict[str, str]:
+        """Column -> text, dates and moments as stored."""
+        return {c: cell.text for c, cell in self._pairs() if cell.text is not None}
+
+    @property
+    def typed(self) -> dict[str, Typed]:
+        """Column -> quantity."""
+        return {c: cell.typed for c, cell in self._pairs() if cell.typed is not None}
+
+    @property
+    def warned(self) -> list[tuple[str, str]]:
+        """(column, sentence) pairs that want a confirmation."""
+        return [(c, cell.warning) for c, cell in self._pairs() if cell.warning]
+
+    def _pairs(self):
+        return zip(self.layout.columns, self.cells, strict=True)
 
     def document(self) -> dict[str, Typed]:
         """The typed quantities as stored: five fields each."""
-        return dict(self.typed)
+        return self.typed
 
     def content(self) -> dict[str, str]:
         """Column -> text that says the same wherever it is typed, for comparing records."""
-        return self.texts | self.said
+        return self.texts | {c: cell.said for c, cell in self._pairs() if cell.typed is not None}
 
     def fingerprint(self) -> str:
-        """Digest of the content: equal for equal rows."""
-        return hashlib.blake2b("\x1f".join(sorted(self.told)).encode(), digest_size=16).hexdigest()
+        """Digest of the content: equal for equal rows, in whatever order their columns stand."""
+        return fingerprints([self])[0]
+
+    def filled(self, **texts: str) -> "Draft":
+        """The draft with these texts in columns that hold none."""
+        missing = {c: Cell(text) for c, text in texts.items() if self.text(c) is None}
+        cells = dict(self._pairs()) | missing
+        return Draft(Layout(self.kind, cells), tuple(cells.values()))
 
 
-class _Cell(NamedTuple):
-    """What one cell's text came to: a text, a Typed with its printed form and warning, or a refusal."""
-
-    text: str | None = None
-    typed: Typed | None = None
-    said: str = ""
-    warning: str = ""
-    entry: str = ""
-    told: str = ""
-    refusal: Refusal | None = None
+def _by_layout(drafts: Iterable[Draft]) -> Iterator[tuple[Layout, list[tuple[Cell, ...]]]]:
+    """Each stretch of drafts alike in layout: the layout and, a column each, their cells."""
+    for layout, alike in groupby(drafts, key=attrgetter("layout")):
+        yield layout, list(zip(*(draft.cells for draft in alike), strict=True))
 
 
-_EMPTY = _Cell()
+def in_columns(drafts: Iterable[Draft]) -> dict[str, list[Cell]]:
+    """Column -> one cell a draft, for the columns that any of the drafts has."""
+    found: dict[str, list[Cell]] = {}
+    n = 0
+    for layout, columns in _by_layout(drafts):
+        for column, cells in zip(layout.columns, columns, strict=True):
+            found.setdefault(column, [EMPTY] * n).extend(cells)
+        n += len(columns[0])
+        for cells in found.values():
+            cells += [EMPTY] * (n - len(cells))
+    return found
+
+
+def fingerprints(drafts: Iterable[Draft]) -> list[str]:
+    """Digest of each draft's content: equal for equal rows, in whatever order their columns stand."""
+    found = []
+    for layout, columns in _by_layout(drafts):
+        told = [[cell.told for cell in columns[i]] for i in layout.by_name]
+        lines = ["\x1f".join(filter(None, row)) for row in zip(*told, strict=True)]
+        found += [blake2b(line.encode(), digest_size=16).hexdigest() for line in lines]
+    return found
+
+
+def typed_in_json(drafts: Iterable[Draft]) -> list[str]:
+    """The typed quantities of each draft as the book stores them."""
+    found = []
+    for _, columns in _by_layout(drafts):
+        entries = [[cell.entry for cell in cells] for cells in columns]
+        found += ["{" + ", ".join(filter(None, row)) + "}" for row in zip(*entries, strict=True)]
+    return found
 
 
 class DraftReader:
@@ -77,42 +128,44 @@ class DraftReader:
         decimal_comma: bool = False,
     ):  # fmt: skip
         self.kind = kind(name)
-        self.units = units or {}
-        self.decimal_comma = decimal_comma
-        self.columns = [(i, c, {}) for i, c in enumerate(columns) if c]
-        self.in_order = all(i == place for place, (i, _, _) in enumerate(self.columns))
-        self.key_at = next((i for i, c in enumerate(columns) if c == "key"), None)
+        units = units or {}
+        self.layout = Layout(name, [c for c in columns if c])
+        self.width = len(columns)
+        self.places = [i for i, c in enumerate(columns) if c]
+        self.columns = [CellsRead(self.kind, c, units.get(c), decimal_comma) for c in self.layout.columns]
+        self.doubts_all = name in ("swimmer", "reading") or not set(self.kind.required) <= set(columns)
 
-    def read(self, cells: Sequence[str | None]) -> tuple[Draft, list[Refusal]]:
-        """A draft from one row's cells, and everything that is refused in it; empty cells are absent."""
-        texts: dict[str, str] = {}
-        typed: dict[str, Typed] = {}
-        said: dict[str, str] = {}
-        warned, entries, told, refused = [], [], [], {}
-        has_key = self.key_at is not None and self.key_at < len(cells)
-        row_key = str(cells[self.key_at] or "").strip() if has_key else ""
-        given = cells if self.in_order else [cells[i] for i, _, _ in self.columns if i < len(cells)]
-        for (_, column, cache), written in zip(self.columns, given, strict=False):  # a short row ends early
-            known = written if column != "value" else (row_key, written)
-            try:
-                cell = cache[known]
-            except KeyError:
-                cell = cache[known] = self._cell(column, written, row_key)
-            if cell is _EMPTY:
-                continue
-            text, one, printed_, warning, entry, content, refusal = cell
-            if text is not None:
-                texts[column] = text
-                told.append(content)
-            elif one is not None:
-                told.append(content)
-                typed[column] = one
-                said[column] = printed_
-                entries.append(entry)
-                if warning:
-                    warned.append((column, warning))
-            elif refusal is not None:
-                refused[column] = refusal
+    def read(self, rows: Sequence[Sequence[str | None]]) -> tuple[list[Draft], list[tuple[int, Refusal]]]:
+        """Drafts of some rows' cells, and all that is refused in them with its row; empty cells are absent."""
+        given = list(zip_longest(*rows))  # by column; what a short row lacks is absent
+        nothing = [None] * len(rows)
+        written = [given[i] if i < len(given) else nothing for i in self.places]
+        read = []
+        for column, texts in zip(self.columns, written, strict=True):
+            if column.by_key:
+                texts = zip(self._keys(written, nothing), texts, strict=True)
+            read.append([column[text] for text in texts])
+        cells = zip(*read, strict=True) if read else [()] * len(rows)
+        drafts = list(map(Draft, repeat(self.layout), cells))
+        return drafts, [(i, r) for i in self._doubtful(read, len(rows)) for r in self._findings(drafts[i])]
+
+    def _keys(self, written, nothing) -> list[str]:
+        """The text that each row has in its column `key`."""
+        place = self.layout.place.get("key")
+        return [str(text or "").strip() for text in (nothing if place is None else written[place])]
+
+    def _doubtful(self, read: list[list[Cell]], n: int) -> Iterable[int]:
+        """The rows in which something may be wrong: none in a clean sheet of runs."""
+        if self.doubts_all:
+            return range(n)
+        doubted = [cells for column, cells in zip(self.columns, read, strict=True) if column.doubtful]
+        return sorted({i for cells in doubted for i, cell in enumerate(cells) if cell.doubtful})
+
+    def _findings(self, draft: Draft) -> list[Refusal]:
+        """Everything that is refused in one row."""
+        texts, typed = draft.texts, draft.typed
+        cells = zip(self.layout.columns, draft.cells, strict=True)
+        refused = {c: cell.refusal for c, cell in cells if cell.refusal is not None}
         findings = list(refused.values())
         for column in self.kind.required:
             if column not in texts and column not in typed and column not in refused:
@@ -120,37 +173,7 @@ class DraftReader:
                     continue  # what a value is follows from its key
                 reason = f"is missing, and every {self.kind.name} needs it"
                 findings.append(Refusal(column, None, reason, _hint(self.kind, column)))
-        findings += _impossible(self.kind.name, texts, typed)
-        return Draft(self.kind.name, texts, typed, said, tuple(warned), entries, told), findings
-
-    def _cell(self, column: str, written: str | None, row_key: str) -> _Cell:
-        row, text = self.kind, "" if written is None else str(written).strip()
-        if not text:
-            return _EMPTY
-        try:
-            if column in row.typed:
-                key = row.typed[column] or row_key
-                if key not in QUANTITIES:
-                    return _EMPTY  # the unknown key is refused at its own column
-                one = read(key, text, self.units.get(column), self.decimal_comma)
-                said = printed(key, one)
-                return _Cell(
-                    None, one, said, _implausible(column, key, one), _entry(column, one), f"{column}\x1e{said}"
-                )
-            if column in row.spreads:
-                one = read_uncertainty(row.spreads[column], text, self.units.get(column))
-                said = printed_uncertainty(one)
-                return _Cell(None, one, said, "", _entry(column, one), f"{column}\x1e{said}")
-            if column in row.texts:
-                content = _text(row, column, text)
-                return _Cell(content, told=f"{column}\x1e{content}")
-        except Refusal as refusal:
-            return _Cell(refusal=Refusal(column, refusal.typed, refusal.reason, refusal.remedy))
-        return _Cell(refusal=Refusal(column, None, f"a {row.name} has no such column", _columns(row)))
-
-
-def _entry(column: str, one: Typed) -> str:
-    return f'"{column}": {json.dumps(one, ensure_ascii=False)}'
+        return findings + _impossible(self.kind.name, texts, typed)
 
 
 def read_draft(
@@ -163,7 +186,8 @@ def read_draft(
 
     units: column -> the header's unit. Empty cells are absent.
     """
-    return DraftReader(name, list(cells), units, decimal_comma).read(list(cells.values()))
+    (draft,), findings = DraftReader(name, list(cells), units, decimal_comma).read([list(cells.values())])
+    return draft, [refusal for _, refusal in findings]
 
 
 def whole(result: tuple[Draft, list[Refusal]]) -> Draft:
@@ -179,31 +203,12 @@ def all_of(findings: list[Refusal]) -> LabbookError:
     return findings[0] if len(findings) == 1 else Refusals(findings)
 
 
-def _columns(row: Kind) -> str:
-    return f"it has {', '.join(row.columns)}"
-
-
 def _hint(row: Kind, column: str) -> str:
     if column in row.words:
         return f"one of {', '.join(row.words[column])}"
     if column in row.moments:
         return "e.g. 2026-03-01T14:32"
     return ""
-
-
-def _text(row: Kind, column: str, text: str) -> str:
-    if column in row.words and text not in row.words[column]:
-        raise Refusal(column, text, "is not known here", f"one of {', '.join(row.words[column])}")
-    if column in row.dates:
-        return read_date(column, text)
-    if column in row.moments:
-        return read_moment(column, text)
-    named = column in ("code", "by", "series", "of") or column in row.refers
-    if named and (len(text) > LONGEST_CODE or any(ord(c) < 32 for c in text)):
-        raise Refusal(column, text[:40], f"must be one line of at most {LONGEST_CODE} characters")
-    if len(text) > LONGEST_TEXT:
-        raise Refusal(column, text[:40] + "...", f"is longer than {LONGEST_TEXT} characters")
-    return text
 
 
 def _impossible(name, texts, typed) -> list[Refusal]:
@@ -229,15 +234,3 @@ def _impossible(name, texts, typed) -> list[Refusal]:
     if name == "run" and texts.get("state", "kept") == "kept" and "why" in texts:
         found.append(Refusal("why", texts["why"], "belongs to a void run", "put it into the note"))
     return found
-
-
-def _implausible(column: str, key: str, one: Typed) -> str:
-    """The sentence for a value outside its quantity's plausible range, '' inside it."""
-    quantity = QUANTITIES[key]
-    if quantity.low <= one.value <= quantity.high:
-        return ""
-    low, high = (shown(key, v, None, one.unit) for v in (quantity.low, quantity.high))
-    return (
-        f"{column}: {one.text} lies outside the usual {low} to {high} for a "
-        f"{quantity.kind or quantity.name}: is the unit right?"
-    )

@@ -15,6 +15,7 @@ from labbook.book.drafts import Draft, all_of, read_draft, whole
 from labbook.book.opening import writing
 from labbook.book.plausibility import run_warnings
 from labbook.book.records import KINDS
+from labbook.book.registry_rows import registry_of
 from labbook.book.run_rows import derive_again, facts_of, shelf_for
 from labbook.book.shelf import document, read_shelf
 from labbook.book.tables import fluid, reading, rig, run, swimmer
@@ -184,7 +185,9 @@ def _warned_again(connection, row, values, touched) -> list[tuple[str, str]]:
         return []
     amended = (row["id"], row["code"], values["swimmer_id"], values["fluid_id"], values["rig_id"],
                values["at"], values["drive"], values["typed"], "kept")  # fmt: skip
-    floats = derive(facts_of([amended]), shelf_for(connection, [amended])).floats[0]
+    floats = derive(
+        facts_of([amended]), shelf_for(connection, [amended]), registry_of(connection)
+    ).floats[0]
     return run_warnings(connection, values["swimmer_id"], watched(floats), 2**62, leave_out=row["id"])
 
 

@@ -77,7 +77,8 @@ def lines_from(connection: Connection, query: Select) -> list[Line]:
 
 def _line(row, owners) -> Line:
     before, after = (json.loads(row[side]) if row[side] else {} for side in ("before", "after"))
-    changes = tuple((k, _text(before.get(k)), _text(after.get(k))) for k in {**before, **after})
+    told = ((k, _text(before.get(k)), _text(after.get(k))) for k in {**before, **after})
+    changes = tuple(c for c in told if c[1] != c[2])
     place = (row["kind"], row["subject"]) if row["kind"] in (*SHELF, "run") else owners.get(row["subject"])
     return Line(
         row["id"], row["at"], row["by"], row["act"], row["kind"], row["subject"], changes, row["why"] or "",

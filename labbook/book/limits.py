@@ -2,7 +2,6 @@
 
 import math
 
-from labbook.book.asking import check_key
 from labbook.errors import Refusal
 from labbook.registry.quantities import QUANTITIES
 from labbook.registry.typed import read
@@ -23,7 +22,7 @@ def read_limit(key: str, text: str) -> float | None:
     text = text.strip()
     if not text:
         return None
-    row = QUANTITIES.get(check_key(key))
+    row = QUANTITIES.get(key)
     if row is None or not row.units:
         return _number(key, text)
     try:
@@ -75,6 +74,8 @@ def range_in_words(key: str, low: float, high: float) -> str:
     symbol = QUANTITIES[key].symbol if key in QUANTITIES else key
     unit = limit_unit(key)
     tail = f" {unit}" if unit else ""
+    if math.isinf(low) and math.isinf(high):
+        return f"any {symbol}"
     if not math.isfinite(high):
         return f"{symbol} from {written_limit(key, low)}{tail}"
     if not math.isfinite(low):

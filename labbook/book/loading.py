@@ -1,16 +1,17 @@
 """Many records in one act: a sheet or a shelf folder, whole or not at all, and the same one twice adds nothing."""
 
-from collections import Counter
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
+from typing import NamedTuple
 
 from sqlalchemy import Connection, Engine, select
 
 from labbook.book import chain
 from labbook.book.arrivals import Arrival, Findings, place_runs
-from labbook.book.drafts import Draft, read_draft
+from labbook.book.drafts import Draft, fingerprints, read_draft
 from labbook.book.ledger import cells_of, handle, settle, uses
 from labbook.book.opening import writing
+from labbook.book.published_points import put_points
 from labbook.book.records import LOADING_ORDER
 from labbook.book.run_rows import derive_again
 from labbook.book.stocking import Batches, put, stocked_cells, write_reading
@@ -18,8 +19,7 @@ from labbook.book.tables import SHELF, reading, run
 from labbook.errors import Refusal
 
 
-@dataclass(frozen=True)
-class SheetRow:
+class SheetRow(NamedTuple):
     """One row of a sheet as read: its draft and where it stands ('runs.csv line 12')."""
 
     draft: Draft
@@ -62,7 +62,9 @@ def load(
     """
     by = handle(by)
     findings = Findings(refused=list(refused))
-    kinds = {name: [r for r in rows if r.draft.kind == name] for name in LOADING_ORDER}
+    kinds: dict[str, list[SheetRow]] = {name: [] for name in LOADING_ORDER}
+    for row in rows:
+        kinds[row.draft.kind].append(row)
     with writing(engine) as connection:
         added: dict[str, int] = {}
         known = 0
@@ -85,6 +87,10 @@ def load(
             connection, arrivals, by, findings, confirm=confirm, progress=lambda n: progress("runs", n)
         )
         added["run"] = len(written)
+        points = [(r.draft, r.where) for r in kinds["published"]]
+        added["published point"] = put_points(connection, points, findings)
+        known += len(points) - added["published point"]
+        progress("published points", len(points))
         settle(findings, confirm)
         if any(added.values()):
             chain.append(
@@ -102,7 +108,7 @@ def _fresh_shelf(connection, name, rows: list[SheetRow], findings: Findings) -> 
     fresh, here = [], {}
     stored = {r["code"]: r for r in connection.execute(select(table)).mappings()}
     for row in _parents_first(rows) if name == "swimmer" else rows:
-        code = row.draft.texts.get("code", "")
+        code = row.draft.text("code")
         if not code:  # refused when the sheet was read
             continue
         if code in here:
@@ -116,7 +122,7 @@ def _fresh_shelf(connection, name, rows: list[SheetRow], findings: Findings) -> 
         draft = row.draft
         if findings.refused:
             # put all the same, so that rows which name it are not refused too: nothing of it will stay
-            draft = replace(draft, texts={"kind": "", "form": "", **draft.texts})
+            draft = draft.filled(kind="", form="")
         try:
             put(connection, name, draft)
         except Refusal as refusal:
@@ -129,13 +135,13 @@ def _fresh_shelf(connection, name, rows: list[SheetRow], findings: Findings) -> 
 
 def _parents_first(rows: list[SheetRow]) -> list[SheetRow]:
     """Swimmers ordered so that a parent precedes those cut from it."""
-    waiting, codes, ordered = list(rows), {r.draft.texts.get("code") for r in rows}, []
+    waiting, codes, ordered = list(rows), {r.draft.text("code") for r in rows}, []
     placed: set = set()
     while waiting:
-        ready = [r for r in waiting if (p := r.draft.texts.get("parent")) not in codes or p in placed]
+        ready = [r for r in waiting if (p := r.draft.text("parent")) not in codes or p in placed]
         ready = ready or waiting  # a circle: let the reference check name it
         ordered += ready
-        placed |= {r.draft.texts.get("code") for r in ready}
+        placed |= {r.draft.text("code") for r in ready}
         done = {id(r) for r in ready}
         waiting = [r for r in waiting if id(r) not in done]
     return ordered
@@ -153,12 +159,11 @@ def _refuse_difference(before: dict, row: SheetRow, code: str, findings: Finding
 
 def _numbered(rows: list[SheetRow]) -> list[tuple[SheetRow, str]]:
     """Each row with its fingerprint and which equal row of the sheet it is, so that honest repeats survive."""
-    seen: Counter = Counter()
+    seen: dict[str, int] = {}
     numbered = []
-    for row in rows:
-        print_ = row.draft.fingerprint()
-        seen[print_] += 1
-        numbered.append((row, f"{print_}:{seen[print_]}"))
+    for row, print_ in zip(rows, fingerprints(row.draft for row in rows), strict=True):
+        seen[print_] = nth = seen.get(print_, 0) + 1
+        numbered.append((row, f"{print_}:{nth}"))
     return numbered
 
 
@@ -187,11 +192,11 @@ def _arrivals(connection: Connection, rows: list[SheetRow], findings: Findings) 
     """The run rows that the book does not hold yet."""
     numbered = _numbered(rows)
     stored = _stored_rows(connection, [s for _, s in numbered])
-    coded = {r.draft.texts["code"] for r in rows if "code" in r.draft.texts}
+    coded = {r.draft.text("code") for r in rows} - {None}
     in_book = _coded_runs(connection, coded)
     fresh, here = [], {}
     for row, sheet_row in numbered:
-        code = row.draft.texts.get("code")
+        code = row.draft.text("code")
         if sheet_row in stored:
             continue
         if code is not None:

@@ -18,6 +18,7 @@ from labbook.book import stored_view
 from labbook.book.clock import now
 from labbook.book.tables import book
 from labbook.errors import BookProblem
+from labbook.registry.group import at_birth
 
 BUSY_SECONDS = 30
 CACHE_KIB = 64 * 1024
@@ -166,8 +167,9 @@ def create(target: str | Path) -> Engine:
     try:
         with _said_plainly(engine):
             if engine.dialect.name == "sqlite":
-                with engine.connect() as connection:
-                    connection.connection.driver_connection.execute("PRAGMA journal_mode=WAL")
+                with engine.connect() as connection:  # with 8 KiB a page holds three stored rows, not one
+                    for pragma in ("page_size=8192", "journal_mode=WAL"):
+                        connection.connection.driver_connection.execute(f"PRAGMA {pragma}")
             with engine.connect() as connection:
                 if inspect(connection).get_table_names():
                     raise BookProblem(f"{engine.url.database} is not empty: open it, or choose another.")
@@ -175,8 +177,7 @@ def create(target: str | Path) -> Engine:
                 command.upgrade(_config(connection.execution_options(writes=True)), "head")
             with writing(engine) as connection:
                 stored_view.build(connection)
-                fingerprint = stored_view.registry_fingerprint()
-                connection.execute(insert(book).values(made=now(), registry=fingerprint))
+                connection.execute(insert(book).values(made=now(), registry=at_birth().fingerprint))
     except BaseException:
         engine.dispose()
         if path is not None:  # ours since _claim, and no book yet

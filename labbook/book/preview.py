@@ -12,9 +12,10 @@ from labbook.book.clock import now
 from labbook.book.derive import derive
 from labbook.book.drafts import read_draft
 from labbook.book.plausibility import enough_runs, run_warnings
+from labbook.book.registry_rows import registry_of
 from labbook.book.run_facts import facts_from
 from labbook.book.shelf import read_shelf
-from labbook.book.stored_view import KEYS, SENTENCES
+from labbook.book.stored_view import SENTENCES
 from labbook.book.tables import fluid, rig, swimmer
 from labbook.errors import Refusal
 from labbook.registry.regimes import regimes_of
@@ -59,17 +60,18 @@ def preview(connection: Connection, cells: Mapping[str, str]) -> Preview:
     facts = facts_from(
         [(ids["swimmer"], ids["fluid"], ids["rig"], draft.texts["at"], drive, draft.document())]
     )
-    derived = derive(facts, shelf)
+    registry = registry_of(connection)
+    derived = derive(facts, shelf, registry)
     row = derived.floats[0]
-    values = {k: _number(row[3 * i]) for i, k in enumerate(KEYS)}
-    u = {k: _number(np.hypot(row[3 * i + 1], row[3 * i + 2])) for i, k in enumerate(KEYS)}
+    values = {k: _number(row[3 * i]) for i, k in enumerate(derived.keys)}
+    u = {k: _number(np.hypot(row[3 * i + 1], row[3 * i + 2])) for i, k in enumerate(derived.keys)}
     said = {s: derived.sentences[s][0] for s in SENTENCES}
     warned = list(draft.warned)
     if enough_runs(connection, [ids["swimmer"]], 2**62):
         warned += run_warnings(connection, ids["swimmer"], watched(row), 2**62)
     return Preview(
-        values, u, {k: s for k, s in said.items() if not s.startswith("absent")}, regimes_of(values),
-        why_absent(values, said, of.code, drive), marks_of(derived.marks[0], None, values), refused, warned,
+        values, u, {k: s for k, s in said.items() if not s.startswith("absent")}, regimes_of(values, registry.regimes), why_absent(values, said, of.code, drive, registry),
+        marks_of(derived.marks[0], None, values, registry), refused, warned,
     )  # fmt: skip
 
 

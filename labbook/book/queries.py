@@ -10,12 +10,12 @@ from sqlalchemy import Connection, case, func, select
 
 from labbook.book.asking import Question, check_key, holds
 from labbook.book.block_spread import section_of
+from labbook.book.dialect_columns import Dialects, restated_frame
+from labbook.book.registry_rows import registry_of
 from labbook.book.shelf import document, item_of
-from labbook.book.stored_view import KEYS, SENTENCES, column_of, resolved
+from labbook.book.stored_view import SENTENCES, resolved, view_column
 from labbook.book.tables import SHELF, fluid, ledger, ledger_run, material, reading, rig, run, swimmer
 from labbook.errors import Refusal
-from labbook.registry.quantities import QUANTITIES
-from labbook.registry.regimes import REGIMES
 
 # text columns of a frame of runs -> where they come from
 RUN_TEXTS = ("code", "at", "by", "swimmer", "fluid", "material", "rig", "drive", "series", "video", "state",
@@ -31,33 +31,40 @@ def frame(
     connection: Connection,
     question: Question,
     *,
-    keys: Sequence[str] = KEYS,
+    keys: Sequence[str] | None = None,
     texts: Sequence[str] = RUN_TEXTS,
     spread: bool = True,
     newest: int | None = None,
+    dialects: Dialects | None = None,
 ) -> pd.DataFrame:
     """One row a run: text columns, then per key the SI value, u_, u_own_ and u_shared_ (if `spread`).
 
-    Oldest first; with `newest`, only that many of the newest, newest first. NaN is absent.
-    attrs['units'] maps key to SI unit.
+    keys: all of the book's where left out. Oldest first; with `newest`, only that many of the newest, newest first. NaN is absent.
+    dialects: number -> choices: its columns are restated, and attrs['dialects'] says so; what is asked for is
+    always read in the house dialect. attrs['units'] maps key to SI unit.
     """
+    registry = registry_of(connection)
+    keys = registry.keys if keys is None else keys
     for key in keys:
-        check_key(key)
+        check_key(key, registry)
     text_columns = [_column(name) for name in texts]
+    if dialects:
+        text_columns.append(resolved.c.swimmer_id)
     prefixes = ("", "u_own_", "u_shared_") if spread else ("",)
-    floats = [resolved.c[p + column_of(k)] for k in keys for p in prefixes]
+    floats = [view_column(k, p) for k in keys for p in prefixes]
     needs_run = question.needs_run() or any(n in _FROM_RUN or n == "rig" for n in texts)
     source = resolved.join(run, run.c.id == resolved.c.run_id) if needs_run else resolved
-    query = select(*text_columns, *floats).select_from(source).where(*question.conditions())
+    query = select(*text_columns, *floats).select_from(source).where(*question.conditions(registry))
     if newest is not None:
         query = query.order_by(resolved.c.at.desc(), resolved.c.run_id.desc()).limit(newest)
     rows = _fetch(connection, query)
     if newest is None and len(texts) and rows and "at" in texts:
         at = list(texts).index("at")
         rows.sort(key=lambda r: r[at])
-    table = _table(connection, rows, texts, keys, prefixes)
-    table.attrs["units"] = {k: QUANTITIES[k].unit if k in QUANTITIES else "1" for k in keys}
-    return table
+    ids = np.array([r[len(texts)] for r in rows], dtype=np.int64) if dialects else None
+    table = _table(connection, rows, texts, keys, prefixes, len(text_columns))
+    table.attrs["units"] = {k: registry.unit(k) for k in keys}
+    return table if ids is None else restated_frame(connection, registry, table, ids, dialects)
 
 
 def _column(name: str):
@@ -75,15 +82,15 @@ def _fetch(connection: Connection, query) -> list[tuple]:
     return connection.exec_driver_sql(str(compiled), parameters).cursor.fetchall()
 
 
-def _table(connection, rows, texts, keys, prefixes) -> pd.DataFrame:
-    n, width = len(texts), len(prefixes)
+def _table(connection, rows, texts, keys, prefixes, first_float: int) -> pd.DataFrame:
+    width = len(prefixes)
     columns: dict[str, object] = {}
-    lists = list(zip(*rows, strict=True)) if rows else [()] * (n + width * len(keys))
-    for name, values in zip(texts, lists[:n], strict=True):
+    lists = list(zip(*rows, strict=True)) if rows else [()] * (first_float + width * len(keys))
+    for name, values in zip(texts, lists[: len(texts)], strict=True):
         # object, or pandas would turn an absent text into NaN beside one that is there
         columns[name] = pd.Series(_text_column(connection, name, values), dtype=None if name == "at" else object)
     for i, key in enumerate(keys):
-        first = n + width * i
+        first = first_float + width * i
         numbers = [np.array(values, dtype=float) for values in lists[first : first + width]]
         columns[key] = numbers[0]
         if width == 3:
@@ -120,21 +127,26 @@ def refuse_unknown(connection: Connection, question: Question) -> None:
 
 def count(connection: Connection, question: Question) -> int:
     """How many runs the question finds."""
-    return connection.scalar(_from(question, func.count()).where(*question.conditions()))
+    conditions = question.conditions(registry_of(connection))
+    return connection.scalar(_from(question, func.count()).where(*conditions))
 
 
 def regime_counts(connection: Connection, question: Question) -> dict[str, int]:
     """For each regime, how many of the question's runs (its own regimes left aside) lie in it."""
-    sums = [func.sum(case((holds(r), 1), else_=0)).label(f"n{i}") for i, r in enumerate(REGIMES.values())]
-    row = connection.execute(_from(question, *sums).where(*question.conditions(regimes=False))).one()
-    return {name: int(n or 0) for name, n in zip(REGIMES, row, strict=True)}
+    registry = registry_of(connection)
+    sums = [func.sum(case((holds(r), 1), else_=0)).label(f"n{i}") for i, r in enumerate(registry.regimes.values())]
+    if not sums:
+        return {}
+    row = connection.execute(_from(question, *sums).where(*question.conditions(registry, regimes=False))).one()
+    return {name: int(n or 0) for name, n in zip(registry.regimes, row, strict=True)}
 
 
-def key_counts(connection: Connection, keys: Iterable[str] = KEYS) -> dict[str, int]:
-    """For each key, how many kept runs have it."""
-    keys = list(keys)
-    counts = [func.count(resolved.c[column_of(k)]).label(f"n{i}") for i, k in enumerate(keys)]
-    row = connection.execute(select(*counts).where(resolved.c.state == "kept")).one()
+def key_counts(connection: Connection, keys: Iterable[str] | None = None) -> dict[str, int]:
+    """For each key (all of the book's where none are named), how many kept runs have it."""
+    registry = registry_of(connection)
+    keys = [check_key(k, registry) for k in (registry.keys if keys is None else keys)]
+    counts = [func.count(view_column(k)).label(f"n{i}") for i, k in enumerate(keys)]
+    row = connection.execute(select(*counts).select_from(resolved).where(resolved.c.state == "kept")).one()
     return dict(zip(keys, row, strict=True))
 
 

@@ -79,12 +79,19 @@ KINDS: dict[str, Kind] = {
             {"drive": DRIVES, "state": STATES}, {"swimmer": "swimmer", "fluid": "fluid", "rig": "rig"}, {},
             (), ("at",),
         ),
+        Kind(
+            "published", "published", ("series", "citation", "x", "x_dialect", "y", "y_dialect", "note"),
+            ("series", "citation", "x", "x_value", "y", "y_value"),
+            {"x_value": "pure", "y_value": "pure",
+             **_same("L_tail", "L_body", "d", "w", "t", "D", "d_in", "R_helix", "pitch")},
+            {}, {}, {},
+        ),
     )
 }  # fmt: skip
 
 SHEETS = {k.sheet: k.name for k in KINDS.values()}
 # a sheet may name what an earlier one brings
-LOADING_ORDER = ("fluid", "material", "swimmer", "rig", "reading", "run")
+LOADING_ORDER = ("fluid", "material", "swimmer", "rig", "reading", "run", "published")
 
 
 def kind(name: str) -> Kind:

@@ -1,12 +1,16 @@
 """What was typed on a block of runs, as columns."""
 
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
+from labbook.book.cells import Cell
 from labbook.book.clock import local
 from labbook.registry.quantities import RUN_KEYS
 from labbook.registry.typed import DIGITS
+
+KEYS = frozenset((*RUN_KEYS, "T_end"))
 
 
 @dataclass
@@ -41,21 +45,35 @@ class RunFacts:
 def facts_from(rows) -> RunFacts:
     """Columns from (swimmer_id, fluid_id, rig_id, at, drive, typed document) rows."""
     n = len(rows)
-    keys = (*RUN_KEYS, "T_end")
-    values = {k: np.full(n, np.nan) for k in keys}
-    u = {k: np.zeros(n) for k in keys}
-    digits = {k: np.zeros(n, bool) for k in keys}
-    swimmer, fluid, rig, days = (np.zeros(n, np.int64) for _ in range(4))
-    drive = np.empty(n, dtype=object)
-    ordinals: dict[str, int] = {}
-    for i, (swimmer_id, fluid_id, rig_id, at, how, typed) in enumerate(rows):
-        swimmer[i], fluid[i], rig[i], drive[i] = swimmer_id, fluid_id, rig_id or 0, how
-        if at not in ordinals:
-            ordinals[at] = local(at).toordinal()
-        days[i] = ordinals[at]
-        for key, (_, _, value, spread, origin) in typed.items():
+    values, u, digits = _absent(n, np.nan), _absent(n, 0.0), _absent(n, False)
+    for i, row in enumerate(rows):
+        for key, (_, _, value, spread, origin) in row[5].items():
             values[key][i] = value
             u[key][i] = spread
             if origin == DIGITS:
                 digits[key][i] = True
-    return RunFacts(values, u, digits, swimmer, fluid, rig, days, drive)
+    return _facts(values, u, digits, *([row[k] for row in rows] for k in range(5)))
+
+
+def facts_of_cells(cells: Mapping[str, Sequence[Cell]], swimmer, fluid, rig, at, drive) -> RunFacts:
+    """Columns from the cells of each quantity and a list of each of the rest (rig None for none)."""
+    n = len(swimmer)
+    values, u, digits = _absent(n, np.nan), _absent(n, 0.0), _absent(n, False)
+    for key in KEYS & cells.keys():
+        values[key] = np.array([c.value for c in cells[key]])
+        u[key] = np.array([c.u for c in cells[key]])
+        digits[key] = np.array([c.digits for c in cells[key]])
+    return _facts(values, u, digits, swimmer, fluid, rig, at, drive)
+
+
+def _absent(n: int, cell) -> dict[str, np.ndarray]:
+    return {k: np.full(n, cell) for k in KEYS}
+
+
+def _facts(values, u, digits, swimmer, fluid, rig, at, drive) -> RunFacts:
+    ordinals = {moment: local(moment).toordinal() for moment in set(at)}
+    days = [ordinals[moment] for moment in at]
+    ids = (np.array(c, dtype=np.int64) for c in (swimmer, fluid, [r or 0 for r in rig], days))
+    how = np.empty(len(drive), dtype=object)
+    how[:] = drive
+    return RunFacts(values, u, digits, *ids, how)

@@ -2,7 +2,7 @@
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 
 import pandas as pd
 from sqlalchemy import Connection, select
@@ -10,10 +10,13 @@ from sqlalchemy import Connection, select
 from labbook.book.absence import marks_of, why_absent
 from labbook.book.asking import Question
 from labbook.book.clock import local
+from labbook.book.dialect_columns import Dialects
 from labbook.book.queries import RUN_TEXTS, frame
-from labbook.book.stored_view import KEYS, SENTENCES
+from labbook.book.registry_rows import registry_of
+from labbook.book.stored_view import SENTENCES
 from labbook.book.tables import run
 from labbook.errors import Refusal
+from labbook.registry.group import Registry
 from labbook.registry.regimes import regimes_of
 
 
@@ -21,7 +24,8 @@ from labbook.registry.regimes import regimes_of
 class RunSheet:
     """One run: text columns, typed documents, values (SI) with u, u_own, u_shared, and how they came about.
 
-    sentences: 'viscosity: fit of 3 readings of 2026-03-01' and the like, absent ones left out.
+    sentences: 'viscosity: fit of 3 readings of 2026-03-01' and the like, absent ones left out; dialects: number
+    -> words, for numbers whose values are not in the house dialect (regimes always are).
     """
 
     texts: dict[str, str | None]
@@ -35,11 +39,12 @@ class RunSheet:
     why_absent: dict[str, str]
     marks: dict[str, list[str]]
     logged: str | None = None
+    dialects: dict[str, str] = field(default_factory=dict)
 
     def row(self) -> dict:
         """The run as one flat record, for JSON."""
         flat: dict = dict(self.texts)
-        for key in KEYS:
+        for key in self.values:
             flat[key] = self.values[key]
             flat[f"u_{key}"], flat[f"u_own_{key}"] = self.u[key], self.u_own[key]
             flat[f"u_shared_{key}"] = self.u_shared[key]
@@ -48,17 +53,38 @@ class RunSheet:
             "regimes": self.regimes,
             "why_absent": self.why_absent,
             "marks": self.marks,
-        }
+        } | ({"dialects": self.dialects} if self.dialects else {})
 
 
 _TEXTS = (*RUN_TEXTS, *SENTENCES, "marks", "confirmed", "typed")
 
 
-def sheets(connection: Connection, question: Question, newest: int | None = None) -> Iterator[RunSheet]:
-    """The sheets of the runs that a question finds."""
+def sheets(
+    connection: Connection, question: Question, newest: int | None = None, dialects: Dialects | None = None
+) -> Iterator[RunSheet]:
+    """The sheets of the runs that a question finds, some numbers in other dialects if asked."""
     found = frame(connection, question, texts=_TEXTS, newest=newest)
+    registry = registry_of(connection)
+    if not dialects:
+        yield from (sheet_from(row, registry) for row in found.to_dict("records"))
+        return
+    spoken = frame(connection, question, keys=tuple(dialects), texts=("code",), newest=newest, dialects=dialects)
+    place = {code: i for i, code in enumerate(spoken["code"])}
     for row in found.to_dict("records"):
-        yield sheet_from(row)
+        yield _in_dialects(sheet_from(row, registry), spoken, place[row["code"]])
+
+
+def _in_dialects(sheet: RunSheet, spoken: pd.DataFrame, i: int) -> RunSheet:
+    """A sheet with the numbers of one row of a restated frame; a run that lost one says why."""
+    words = {n: w for n, w in spoken.attrs["dialects"].items() if w != "house"}
+    row = spoken.iloc[i]
+    more = {p: {n: _number(row[f"{p}{n}"]) for n in words} for p in ("", "u_", "u_own_", "u_shared_")}
+    lost = {n: why[i] for n, why in spoken.attrs["lost"].items() if why[i]}
+    return replace(
+        sheet, values=sheet.values | more[""], u=sheet.u | more["u_"], u_own=sheet.u_own | more["u_own_"],
+        u_shared=sheet.u_shared | more["u_shared_"], dialects=words,
+        why_absent=sheet.why_absent | {n: f"dialect {words[n]}: {why}" for n, why in lost.items()},
+    )  # fmt: skip
 
 
 def run_sheet(connection: Connection, code: str) -> RunSheet:
@@ -67,7 +93,7 @@ def run_sheet(connection: Connection, code: str) -> RunSheet:
     if stored is None:
         raise Refusal("run", code, "the book has no such run")
     row = frame(connection, _Only(state="all", run_id=stored[0]), texts=_TEXTS).to_dict("records")[0]
-    return sheet_from(row, stored[1])
+    return sheet_from(row, registry_of(connection), stored[1])
 
 
 @dataclass(frozen=True)
@@ -76,24 +102,25 @@ class _Only(Question):
 
     run_id: int = 0
 
-    def conditions(self, *, regimes: bool = True):
+    def conditions(self, registry: Registry, *, regimes: bool = True):
         return [run.c.id == self.run_id]
 
     def needs_run(self) -> bool:
         return True
 
 
-def sheet_from(row: dict, logged: str | None = None) -> RunSheet:
+def sheet_from(row: dict, registry: Registry, logged: str | None = None) -> RunSheet:
     """A sheet from one row of a frame with all columns."""
     texts = {k: _plain(row[k]) for k in RUN_TEXTS}
-    values = {k: _number(row[k]) for k in KEYS}
-    u = {p: {k: _number(row[f"{p}{k}"]) for k in KEYS} for p in ("u_", "u_own_", "u_shared_")}
+    values = {k: _number(row[k]) for k in registry.keys}
+    u = {p: {k: _number(row[f"{p}{k}"]) for k in registry.keys} for p in ("u_", "u_own_", "u_shared_")}
     said = {s: row[s] for s in SENTENCES}
     return RunSheet(
         texts, row["typed"], values, u["u_"], u["u_own_"], u["u_shared_"],
         {s: text for s, text in said.items() if text and not text.startswith("absent")},
-        regimes_of(values), why_absent(values, said, texts["swimmer"] or "", texts["drive"] or ""),
-        marks_of(row["marks"], row["confirmed"], values), logged,
+        regimes_of(values, registry.regimes),
+        why_absent(values, said, texts["swimmer"] or "", texts["drive"] or "", registry),
+        marks_of(row["marks"], row["confirmed"], values, registry), logged,
     )  # fmt: skip
 
 

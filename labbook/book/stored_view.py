@@ -1,21 +1,35 @@
 """The wide stored view: one row a run, per key a value, u_own and u_shared, built from the registry at any time."""
 
 import hashlib
-import json
 from collections.abc import Sequence
+from functools import lru_cache
 
 import numpy as np
-from sqlalchemy import Column, Connection, Float, ForeignKey, Index, Integer, MetaData, String, Table, Text
+from sqlalchemy import (
+    Column,
+    ColumnElement,
+    Connection,
+    Float,
+    ForeignKey,
+    Index,
+    Integer,
+    MetaData,
+    String,
+    Table,
+    Text,
+    column,
+    update,
+)
 from sqlalchemy import inspect as inspect_database
 
 from labbook.book.tables import metadata as facts
 from labbook.registry.catalogue import NUMBERS
-from labbook.registry.quantities import QUANTITIES, RESOLVED_KEYS
-from labbook.registry.regimes import REGIMES
+from labbook.registry.quantities import RESOLVED_KEYS
 
 VIEW_NAME = "resolved"
 
-KEYS: tuple[str, ...] = RESOLVED_KEYS + tuple(NUMBERS)
+BIRTH_KEYS: tuple[str, ...] = RESOLVED_KEYS + tuple(NUMBERS)
+PREFIXES = ("", "u_own_", "u_shared_")
 
 
 def column_of(key: str) -> str:
@@ -23,24 +37,26 @@ def column_of(key: str) -> str:
     return f"{key}_cap" if len(key) == 1 and key.isupper() else key
 
 
-# the frame's names and the table's, in one order: value, u_own_, u_shared_ of each key
-FRAME_COLUMNS: tuple[str, ...] = tuple(p + k for k in KEYS for p in ("", "u_own_", "u_shared_"))
-FLOAT_COLUMNS: tuple[str, ...] = tuple(p + column_of(k) for k in KEYS for p in ("", "u_own_", "u_shared_"))
 # copied from the run so that one covering index answers a query
 COPIED = ("at", "state", "swimmer_id", "fluid_id", "material_id")
 SENTENCES = ("mu_from", "rho_from", "lam_from", "E_from")
-COLUMNS: tuple[str, ...] = ("run_id", *COPIED, *SENTENCES, "marks", "digest", *FLOAT_COLUMNS)
+TOLD = ("run_id", *COPIED, *SENTENCES, "marks", "digest")  # what a row holds beside its floats
 
 
-def registry_fingerprint() -> str:
-    """Digest of everything that the stored numbers follow from: keys, formulas and bands."""
-    told = [[k, q.unit, q.formula] for k, q in QUANTITIES.items()]
-    told += [[k, n.formula, n.not_zero, list(n.only_drives)] for k, n in NUMBERS.items()]
-    told += [[r.name, r.number, r.low, r.high] for r in REGIMES.values()]
-    return hashlib.sha256(json.dumps(told).encode()).hexdigest()
+@lru_cache(maxsize=64)
+def float_columns(keys: tuple[str, ...]) -> tuple[str, ...]:
+    """The columns of some keys: value, u_own_, u_shared_ of each."""
+    return tuple(p + column_of(k) for k in keys for p in PREFIXES)
 
 
-def _table() -> Table:
+def own_columns(key: str) -> tuple[str, ...]:
+    """The columns of a group's own number; its digest stands apart, so that adding one touches no other's."""
+    return (*float_columns((key,)), f"digest_{key}")
+
+
+@lru_cache(maxsize=64)
+def table_of(own: tuple[str, ...] = ()) -> Table:
+    """The stored view of a book with these own numbers."""
     metadata = MetaData(naming_convention=facts.naming_convention)
     facts.tables["run"].to_metadata(metadata)
     for name in ("swimmer", "fluid", "material", "rig"):
@@ -57,7 +73,8 @@ def _table() -> Table:
         *(Column(name, Text) for name in SENTENCES),
         Column("marks", Text),
         Column("digest", String(32), nullable=False),
-        *(Column(name, Float(53)) for name in FLOAT_COLUMNS),
+        *(Column(name, Float(53)) for name in float_columns(BIRTH_KEYS)),
+        *(column for key in own for column in _own(key)),
     )
     # three covering indexes: the regime query, the plot of any swimmer, and the span of Re
     Index("ix_resolved_regimes", table.c.state, table.c.at, table.c.run_id, table.c.Re_omega, table.c.Sp,
@@ -69,30 +86,67 @@ def _table() -> Table:
     return table
 
 
-resolved = _table()
+def _own(key: str) -> list[Column]:
+    *floats, digest = own_columns(key)
+    return [*(Column(name, Float(53)) for name in floats), Column(digest, String(32))]
 
 
-def build(connection: Connection) -> None:
-    """Drop the stored view and make it again, empty, with the registry's columns."""
+# what every book has; columns of own numbers are asked for by `view_column`
+resolved = table_of()
+
+
+def view_column(key: str, prefix: str = "") -> ColumnElement:
+    """The column of a key of any book's view, own numbers included (the key must be checked before)."""
+    name = prefix + column_of(key)
+    if name in resolved.c:
+        return resolved.c[name]
+    own = column(name, Float(53))
+    own.table = resolved
+    return own
+
+
+def build(connection: Connection, own: tuple[str, ...] = ()) -> None:
+    """Drop the stored view and make it again, empty, with columns for these own numbers."""
     resolved.drop(connection, checkfirst=True)
-    resolved.create(connection)
+    table_of(own).create(connection)
 
 
-def built(connection: Connection) -> bool:
-    """Whether the view stands with exactly the registry's columns."""
+def built(connection: Connection, own: tuple[str, ...] = ()) -> bool:
+    """Whether the view stands with these columns; it may keep empty ones of withdrawn numbers."""
+    return set(table_of(own).c.keys()) <= _columns(connection)
+
+
+def _columns(connection: Connection) -> set[str]:
     inspector = inspect_database(connection)
-    if not inspector.has_table(VIEW_NAME):
-        return False
-    return {c["name"] for c in inspector.get_columns(VIEW_NAME)} == set(COLUMNS)
+    return {c["name"] for c in inspector.get_columns(VIEW_NAME)} if inspector.has_table(VIEW_NAME) else set()
+
+
+def add_number(connection: Connection, key: str) -> None:
+    """Give the view the columns of an own number, empty."""
+    there = _columns(connection)
+    for new in (c for c in _own(key) if c.name not in there):
+        kind = new.type.compile(connection.dialect)
+        connection.exec_driver_sql(f'ALTER TABLE {VIEW_NAME} ADD COLUMN "{new.name}" {kind}')
+
+
+def empty_number(connection: Connection, key: str) -> None:
+    """Empty the columns of a withdrawn number; dropping them would write the whole view anew for each."""
+    view = table_of((key,))
+    connection.execute(update(view).values(dict.fromkeys(own_columns(key))).where(view.c[f"digest_{key}"].is_not(None)))
+
+
+def own_digests(run_ids: Sequence[int], key: str, floats: np.ndarray) -> list[str | None]:
+    """One digest a row over its run id, an own number's key and the bits of its value and uncertainties."""
+    return digests(run_ids, floats, [(key,)] * len(run_ids))
 
 
 def digests(run_ids: Sequence[int], floats: np.ndarray, texts: Sequence[Sequence[str | None]]) -> list[str]:
     """One digest a row over its run id, its texts and the bits of its floats (NaN is absence)."""
     block = np.ascontiguousarray(floats, dtype="<f8") + 0.0  # -0.0 and 0.0 are one value to a database
     block[np.isnan(block)] = np.nan  # one bit pattern for absence
+    bits, width = block.tobytes(), block.itemsize * block.shape[1]
     result = []
-    for run_id, row, text in zip(run_ids, block, texts, strict=True):
-        told = hashlib.blake2b(row.tobytes(), digest_size=16)
-        told.update("\x1f".join([str(run_id), *(t or "" for t in text)]).encode())
-        result.append(told.hexdigest())
+    for i, (run_id, text) in enumerate(zip(run_ids, texts, strict=True)):
+        told = "\x1f".join([str(run_id), *[t or "" for t in text]]).encode()
+        result.append(hashlib.blake2b(bits[i * width : (i + 1) * width] + told, digest_size=16).hexdigest())
     return result

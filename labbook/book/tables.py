@@ -11,6 +11,7 @@ from sqlalchemy import (
     String,
     Table,
     Text,
+    UniqueConstraint,
 )  # fmt: skip
 
 NAMING = {
@@ -158,6 +159,39 @@ ledger_run = Table(
     metadata,
     Column("run_id", ForeignKey("run.id"), primary_key=True),
     Column("ledger_id", ForeignKey("ledger.id"), primary_key=True),
+)
+
+# the group's own registry: each change is a new version, the old ones stay
+registry_row = Table(
+    "registry_row",
+    metadata,
+    Column("id", Integer, primary_key=True),
+    Column("kind", String(16), nullable=False),  # number, regime, house
+    Column("key", String(64), nullable=False),
+    Column("version", Integer, nullable=False),
+    Column("content", JSON(none_as_null=True)),  # NULL: withdrawn
+    Column("at", String(20), nullable=False),
+    Column("by", String(64), nullable=False),
+    Column("why", Text),
+    UniqueConstraint("kind", "key", "version"),
+)
+
+# points that others printed: drawn beside the runs, never counted among them
+published = Table(
+    "published",
+    metadata,
+    Column("id", Integer, primary_key=True),
+    Column("series", String(64), nullable=False, index=True),
+    Column("citation", Text, nullable=False),
+    Column("x", String(24), nullable=False),
+    Column("x_dialect", Text),
+    Column("y", String(24), nullable=False),
+    Column("y_dialect", Text),
+    _typed(),
+    Column("note", Text),
+    Column("state", String(8), nullable=False),
+    Column("why", Text),
+    Column("sheet_row", String(80), unique=True),
 )
 
 SHELF = {"fluid": fluid, "material": material, "swimmer": swimmer, "rig": rig}

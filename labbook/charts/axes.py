@@ -83,9 +83,11 @@ def title(key: str, dialect: str = HOUSE, numbers: Mapping[str, Number] = NUMBER
     return f"{symbol} {row.name} ({unit})" if unit else f"{symbol} {row.name}"
 
 
-def house_words(keys: Iterable[str]) -> str:
+def house_words(keys: Iterable[str], numbers: Mapping[str, Number] = NUMBERS) -> str:
     """The numbers among some keys with the house dialect of each, in sentences; '' where none is a number."""
-    named = [f"{title(key)} ({NUMBERS[key].dialect})" for key in dict.fromkeys(keys) if key in NUMBERS]
+    named = [
+        f"{title(key, numbers=numbers)} ({numbers[key].dialect})" for key in dict.fromkeys(keys) if key in numbers
+    ]
     return f"{'. '.join(named)}." if named else ""
 
 

@@ -23,10 +23,9 @@ class Band:
 
 def bands_of(key: str, low: float, high: float, regimes: Iterable[Regime] | None = None) -> list[Band]:
     """The bands of a number that overlap low to high, in ascending order; a key without regimes has none."""
-    chosen = REGIMES.values() if regimes is None else regimes
-    rows = sorted((r for r in chosen if r.number == key), key=lambda r: (r.low, r.high))
+    rows = sorted(_on(key, regimes), key=lambda r: (r.low, r.high))
     return [
-        Band(r.name, max(r.low, low), min(r.high, high), band_hue(r.name, i), r.low > low, r.high < high, r)
+        Band(r.name, max(r.low, low), min(r.high, high), band_hue(r, i), r.low > low, r.high < high, r)
         for i, r in enumerate(rows)
         if r.low < high and r.high > low
     ]
@@ -34,5 +33,10 @@ def bands_of(key: str, low: float, high: float, regimes: Iterable[Regime] | None
 
 def limits_of(key: str, regimes: Iterable[Regime] | None = None) -> list[float]:
     """The finite limits of a number's regimes, ascending."""
+    return sorted({v for r in _on(key, regimes) for v in (r.low, r.high) if math.isfinite(v)})
+
+
+def _on(key: str, regimes: Iterable[Regime] | None) -> list[Regime]:
+    """The regimes on this number alone: one on two numbers has no place on a single axis."""
     chosen = REGIMES.values() if regimes is None else regimes
-    return sorted({v for r in chosen if r.number == key for v in (r.low, r.high) if math.isfinite(v)})
+    return [r for r in chosen if r.numbers == (key,)]

@@ -2,6 +2,8 @@
 
 from dataclasses import dataclass
 
+from labbook.registry.regimes import Regime
+
 FONT = "Source Sans, Source Sans Pro, DejaVu Sans, sans-serif"
 LABEL_SIZE = 12
 TITLE_SIZE = 13
@@ -85,9 +87,17 @@ BAND_HUES: dict[str, str] = {
 _SPARE_HUES = ("#5B7FC7", "#3FA34D", "#E0A21B", "#A65FA8", "#0E8F98")
 
 
-def band_hue(name: str, position: int = 0) -> str:
-    """The hue of a regime, drawn at 20 % opacity; a group's own regime takes one by its position."""
-    return BAND_HUES.get(name, _SPARE_HUES[position % len(_SPARE_HUES)])
+# the colours that a group may give a regime, by name: Okabe & Ito (2008)
+REGIME_HUES: dict[str, str] = {
+    "orange": "#E69F00", "sky": "#56B4E9", "green": "#009E73", "yellow": "#F0E442", "blue": "#0072B2",
+    "purple": "#CC79A7",
+}  # fmt: skip
+
+
+def band_hue(regime: Regime, position: int = 0) -> str:
+    """The hue of a regime, drawn at 20 % opacity: its own colour, that at birth, else one by its position."""
+    own = REGIME_HUES.get(regime.colour)
+    return own or BAND_HUES.get(regime.name, _SPARE_HUES[position % len(_SPARE_HUES)])
 
 
 def text_width(text: str, size: float = LABEL_SIZE) -> float:

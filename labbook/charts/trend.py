@@ -7,13 +7,14 @@ import altair as alt
 import numpy as np
 import pandas as pd
 
-from labbook.charts import axes, drawable, trend_layers, trend_marks
+from labbook.charts import axes, drawable, trend_layers, trend_marks, trend_shared
 from labbook.charts.bands import bands_of
-from labbook.charts.palette import theme
+from labbook.charts.palette import OTHER, series, theme
 from labbook.errors import Refusal
 from labbook.registry.catalogue import NUMBERS, Number
 
-BARS = {"own": "u_own_", "shared": "u_shared_", "total": "u_", "none": ""}
+BARS = {"own": "u_own_", "shared": "u_shared_", "total": "u_", "none": "",
+        trend_shared.SHARED: "u_own_"}  # fmt: skip
 SPACE = " "  # in 1 204: a line must not break there
 
 
@@ -45,6 +46,8 @@ def trend(
     height: int = 380,
     x_title: str = "",
     y_title: str = "",
+    x_label: str = "",
+    y_label: str = "",
     left_out: Mapping[str, int] | None = None,
     numbers: Mapping[str, Number] = NUMBERS,
     regimes=None,
@@ -53,11 +56,12 @@ def trend(
 
     frame: one row per run with SI columns x, y, their u_ columns, `code`, `state` and the group's; a column n
     says that a row stands for n runs (binned in the database), and such a row needs no code.
-    bars: whose standard uncertainty is drawn, 'own', 'shared', 'total' or 'none'.
+    bars: whose standard uncertainty is drawn, 'own', 'shared', 'total' or 'none'; 'shared band' draws the own
+    one and, behind the marks, how far each group's runs may move together (not for binned rows).
     picked: code of the run ringed in rust; in_hand: x, y, u_x, u_y of the new run, a rust dot.
     curve: columns x, y and, where known, low, high (a band) and label.
-    x_title, y_title: replace the registry's titles (another dialect). left_out: runs the caller already
-    dropped, by reason. numbers, regimes: the book's own rows in place of those at birth.
+    x_title, y_title, x_label, y_label: replace the registry's titles and symbols (another dialect).
+    left_out: runs the caller already dropped, by reason. numbers, regimes: the book's own rows in place of those at birth.
     The selection parameter 'pick' returns the field `code`.
     Errors: Refusal for an unknown column, key or kind of bars.
     """
@@ -66,7 +70,8 @@ def trend(
     if group is not None and group not in frame.columns:
         raise Refusal("group", group, "the frame has no such column")
     u_x, u_y = f"{BARS[bars]}{x}", f"{BARS[bars]}{y}"
-    wanted = ("code", "state", "n", "U", "u_U", x, y, u_x, u_y, f"u_{x}", f"u_{y}", group)
+    families = [f"u_shared_{k}" for k in (x, y) if bars == trend_shared.SHARED]
+    wanted = ("code", "state", "n", "U", "u_U", x, y, u_x, u_y, f"u_{x}", f"u_{y}", *families, group)
     frame = frame[[c for c in dict.fromkeys(wanted) if c in frame.columns]]
     shown, reasons = drawable.split(frame, x=x, y=y, log_x=log_x, log_y=log_y, numbers=numbers)
     for reason, count in (left_out or {}).items():
@@ -93,15 +98,19 @@ def trend(
         y_domain = _with_headroom(y_domain, log_y)
     plane = trend_layers.Plane(
         x, y, x_domain, y_domain, log_x, log_y,
-        x_title or axes.title(x, numbers=numbers), y_title or axes.title(y, numbers=numbers), dark,
+        x_title or axes.title(x, numbers=numbers), y_title or axes.title(y, numbers=numbers),
+        x_label or axes.label(x, numbers), y_label or axes.label(y, numbers), dark,
         width if isinstance(width, int) else trend_layers.NARROWEST, height,
     )
     layers = []
     if bands:
         layers += trend_layers.band_areas(plane, bands_of(x, *plane.x_domain, regimes),
                                           bands_of(y, *plane.y_domain, regimes))
-    layers += trend_marks.marks(plane, shown, names=names, group=group, u_x=u_x, u_y=u_y,
-                                bars=bars != "none", numbers=numbers)
+    told: list[str] = []
+    if families:
+        behind, told = _shared(plane, shown, names)
+        layers += behind
+    layers += trend_marks.marks(plane, shown, names=names, group=group, u_x=u_x, u_y=u_y, bars=bars != "none")
     if curve is not None and len(curve):  # over the marks, which would hide it where there are many
         layers += trend_layers.curves(plane, curve)
     if bands:
@@ -116,7 +125,18 @@ def trend(
     barred = bool({u_x, u_y} & set(shown.columns)) and len(shown) > 0
     notes = _notes(bars if barred else "none", largest, names, in_hand is not None and point is None,
                    bool(picked) and not len(ring))
-    return Trend(chart, drawn, reasons, caption(drawn, reasons, notes))
+    return Trend(chart, drawn, reasons, caption(drawn, reasons, [*notes, *told]))
+
+
+def _shared(plane: trend_layers.Plane, shown: pd.DataFrame, names: list[str]) -> tuple[list, list[str]]:
+    """The shared bands and what is said of them; a grid of many runs and 'other' groups have none."""
+    if "n" in shown.columns:
+        return [], ["No shared bands on a grid of many runs: narrow the filter first"]
+    one_family = shown[shown["_group"] != OTHER] if names else shown
+    bands = trend_shared.family_bands(one_family, plane.x, plane.y, one_family["_group"] if names else None)
+    hues = {n: s.colour for n, s in trend_marks.looks_of(names, plane.dark).items()}
+    told = trend_shared.shared_words(one_family, bands, plane)
+    return trend_shared.shared_layers(plane, bands, hues, series(plane.dark)[0].colour), told
 
 
 def _with_headroom(domain: tuple[float, float], log: bool, share: float = 0.06) -> tuple[float, float]:
@@ -155,7 +175,8 @@ def _notes(bars, largest, names, hand_lost, ring_lost) -> list[str]:
     if largest > 1:
         notes.append(f"One mark stands for up to {counted(largest)}, a larger mark for more")
     if bars != "none":
-        kind = {"own": "the run's own part of one", "shared": "the shared part of one", "total": "one"}[bars]
+        own = "the run's own part of one"
+        kind = {"own": own, trend_shared.SHARED: own, "shared": "the shared part of one", "total": "one"}[bars]
         notes.append(f"Bars: {kind} standard uncertainty" + (", on marks of one run" if largest > 1 else ""))
     if drawable.OTHER in names:
         notes.append("The six groups with most runs are named, the rest are 'other'")

@@ -24,7 +24,7 @@ HUE = {"expr": "datum.hue"}
 
 @dataclass(frozen=True)
 class Plane:
-    """The frame that all layers share: keys, domains, kinds of axis, titles and theme."""
+    """The frame that all layers share: keys, domains, kinds of axis, titles, short labels and theme."""
 
     x: str
     y: str
@@ -34,6 +34,8 @@ class Plane:
     log_y: bool
     x_title: str
     y_title: str
+    x_label: str
+    y_label: str
     dark: bool
     width: int
     height: int

@@ -6,20 +6,17 @@ import altair as alt
 import numpy as np
 import pandas as pd
 
-from labbook.charts import axes
-from labbook.charts.palette import OTHER, TITLE_SIZE, other_series, paper, series, text_width
+from labbook.charts.palette import OTHER, TITLE_SIZE, Series, other_series, paper, series, text_width
 from labbook.charts.trend_layers import HUE, Plane, bar_ends, short
 from labbook.registry.written import written
 
 
-def marks(plane: Plane, shown: pd.DataFrame, *, names, group, u_x, u_y, bars, numbers) -> list[alt.Chart]:
+def marks(plane: Plane, shown: pd.DataFrame, *, names, group, u_x, u_y, bars) -> list[alt.Chart]:
     """Bars, then one mark per row: colour and shape by group in one legend, size by its number of runs."""
     data = mark_table(plane, shown, u_x, u_y, bars)
     several = "n" in shown.columns and bool((shown["n"] > 1).any())
-    looks = [*series(plane.dark)[: len(names)]]
-    if OTHER in names:
-        looks[-1] = other_series(plane.dark)
-    hues = {n: s.colour for n, s in zip(names, looks, strict=True)}
+    looks = looks_of(names, plane.dark)
+    hues = {n: s.colour for n, s in looks.items()}
     plain = series(plane.dark)[0].colour
     layers = []
     if bars:
@@ -38,8 +35,7 @@ def marks(plane: Plane, shown: pd.DataFrame, *, names, group, u_x, u_y, bars, nu
                 .encode(**places)
             )
     tips = [alt.Tooltip("code:N", title="run"),
-            alt.Tooltip("x_text:N", title=axes.label(plane.x, numbers)),
-            alt.Tooltip("y_text:N", title=axes.label(plane.y, numbers))]
+            alt.Tooltip("x_text:N", title=plane.x_label), alt.Tooltip("y_text:N", title=plane.y_label)]
     encoding = dict(x=plane.across("x"), y=plane.up("y"))
     if names:
         legend = alt.Legend(columns=legend_columns(names, plane.width), symbolStrokeWidth=0.5)
@@ -47,7 +43,7 @@ def marks(plane: Plane, shown: pd.DataFrame, *, names, group, u_x, u_y, bars, nu
         encoding["fill"] = alt.Fill("group:N", title=group, legend=legend,
                                     scale=alt.Scale(domain=names, range=list(hues.values())))
         encoding["shape"] = alt.Shape("group:N", title=group, legend=legend,
-                                      scale=alt.Scale(domain=names, range=[s.shape for s in looks]))
+                                      scale=alt.Scale(domain=names, range=[s.shape for s in looks.values()]))
         tips.append(alt.Tooltip("group:N", title=group))
     if several:
         encoding["size"] = alt.Size("n:Q", legend=None, scale=alt.Scale(
@@ -64,6 +60,14 @@ def marks(plane: Plane, shown: pd.DataFrame, *, names, group, u_x, u_y, bars, nu
         .encode(tooltip=tips, **encoding).add_params(pick)
     )
     return layers
+
+
+def looks_of(names: list[str], dark: bool) -> dict[str, Series]:
+    """Colour and shape of each group, in the legend's order."""
+    looks = [*series(dark)[: len(names)]]
+    if OTHER in names:
+        looks[-1] = other_series(dark)
+    return dict(zip(names, looks, strict=True))
 
 
 def legend_columns(names: list[str], width: int) -> int:

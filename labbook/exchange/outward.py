@@ -18,8 +18,14 @@ def harmless(value):
 
 
 def frame_as_csv(table: pd.DataFrame, comment: str = "") -> str:
-    """CSV of a frame in SI: `key [unit]` headers, full precision, empty for absent."""
+    """CSV of a frame in SI: `key [unit]` headers, full precision, empty for absent.
+
+    A frame with numbers in other dialects than the house's has a column `dialect` that says so on every row.
+    """
     units = table.attrs.get("units", {})
+    spoken = "; ".join(f"{n}: {w}" for n, w in table.attrs.get("dialects", {}).items() if w != "house")
+    if spoken:
+        table = table.assign(dialect=spoken)
     out = io.StringIO()
     if comment:
         out.write("".join(f"# {line}\n" for line in comment.splitlines()))

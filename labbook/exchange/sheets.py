@@ -6,6 +6,7 @@ import re
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from datetime import date, datetime, time
+from operator import itemgetter
 from pathlib import Path
 from zipfile import BadZipFile
 
@@ -17,8 +18,10 @@ from labbook.book.drafts import DraftReader
 from labbook.book.loading import SheetRow
 from labbook.book.records import KINDS, LOADING_ORDER, SHEETS, kind
 from labbook.errors import Refusal
+from labbook.exchange.collector import paused_collector
 
 LARGEST_FILE = 512 * 1024 * 1024
+AT_A_TIME = 1_000  # rows between two words about the progress
 _HEADER = re.compile(r"\s*([A-Za-z_]\w*)\s*(?:\[([^\]]*)\]|\(([^)]*)\))?\s*")
 
 
@@ -33,6 +36,7 @@ class Table:
     decimal_comma: bool = False
 
 
+@paused_collector()
 def read_tables(path: str | Path) -> list[Table]:
     """The sheets of a folder, a workbook or one CSV file, in the order in which they must be loaded."""
     path = Path(path)
@@ -64,6 +68,7 @@ def _read_csv(path: Path, kind_name: str | None) -> Table:
     return table_from_text(text, path.name, kind_name)
 
 
+@paused_collector()
 def table_from_text(text: str, name: str, kind_name: str | None = None) -> Table:
     """A sheet from CSV text; its kind follows from the file name or from the columns where none is given."""
     if "\0" in text:
@@ -73,7 +78,7 @@ def table_from_text(text: str, name: str, kind_name: str | None = None) -> Table
     delimiter = ";" if semicolon else "\t" if "\t" in first and "," not in first else ","
     reader = csv.reader(io.StringIO(text), delimiter=delimiter)
     try:
-        lines = [(reader.line_num, cells) for cells in reader if any(c.strip() for c in cells)]
+        lines = [(reader.line_num, cells) for cells in reader if any(map(str.strip, cells))]
     except csv.Error as error:
         raise Refusal("sheet", name, f"cannot be read as CSV ({error})") from None
     if not lines:
@@ -143,18 +148,26 @@ def read_rows(
             refused.append(placed(table.name, refusal))
             continue
         reader = DraftReader(table.kind, columns, units, table.decimal_comma)
-        for count, (line, cells) in enumerate(table.rows, start=1):
-            where = f"{table.name} line {line}"
-            if len(cells) > len(columns) and any(c.strip() for c in cells[len(columns) :]):
-                refused.append(Refusal(where, None, f"has {len(cells)} cells for {len(columns)} columns"))
-                continue
-            draft, findings = reader.read(cells)
-            refused += [placed(where, r) for r in findings]
-            rows.append(SheetRow(draft, where))
-            if count % 1000 == 0:
-                progress(f"reading {table.name}", 1000)
-        progress(f"reading {table.name}", len(table.rows) % 1000)
+        for start in range(0, len(table.rows), AT_A_TIME):
+            part = table.rows[start : start + AT_A_TIME]
+            fresh, found = _read_some(reader, table.name, part)
+            rows += fresh
+            refused += found
+            progress(f"reading {table.name}", len(part))
     return rows, refused
+
+
+def _read_some(reader: DraftReader, name: str, lines) -> tuple[list[SheetRow], list[Refusal]]:
+    """Drafts of some (line number, cells) of a sheet, and what is refused, in the order of the lines."""
+    drafts, found = reader.read([cells for _, cells in lines])
+    where, width = [f"{name} line {n}" for n, _ in lines], reader.width
+    too_long = {i for i, (_, cells) in enumerate(lines) if any(map(str.strip, cells[width:]))}
+    refused = [(i, placed(where[i], refusal)) for i, refusal in found if i not in too_long]
+    for i in too_long:
+        said = f"has {len(lines[i][1])} cells for {width} columns"
+        refused.append((i, Refusal(where[i], None, said)))
+    rows = [row for i, row in enumerate(map(SheetRow, drafts, where)) if i not in too_long]
+    return rows, [refusal for _, refusal in sorted(refused, key=itemgetter(0))]
 
 
 def _columns(table: Table) -> tuple[list[str], dict[str, str]]:

@@ -2,7 +2,7 @@
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, fields
 
 from labbook.errors import Refusal
 from labbook.registry.formula import Formula, parse, pure
@@ -45,26 +45,32 @@ class Number:
         left_over = parsed.dimension({k: q.dimension for k, q in QUANTITIES.items()})
         if not pure(left_over):
             raise Refusal(
-                self.key, self.formula, f"not a pure number: {written_dimension(left_over)} is left over"
+                "formula", self.formula, f"not a pure number: {written_dimension(left_over)} is left over"
             )
         missing = [k for k in parsed.keys if k not in self.example]
         if missing:
-            raise Refusal(self.key, None, f"the worked example lacks {', '.join(missing)}")
+            raise Refusal("example", None, f"the worked example lacks {', '.join(missing)}")
         if not 0 < self.tolerance <= 0.05:
             raise Refusal(self.key, self.tolerance, "the example's tolerance must lie in 0 to 5 %")
         try:
             found = float(parsed.value(self.example))
         except (ArithmeticError, TypeError, ValueError):
-            raise Refusal(self.key, self.formula, "has no value for the worked example") from None
+            raise Refusal("formula", self.formula, "has no value for the worked example") from None
         if not math.isclose(found, self.answer, rel_tol=self.tolerance):
             raise Refusal(
-                self.key, self.answer, f"the worked example gives {found:.6g}",
+                "answer", self.answer, f"the worked example gives {found:.6g}",
                 "mend formula, example or answer",
             )
 
     @property
     def inputs(self) -> tuple[str, ...]:
+        """The keys of its formula, in order of first appearance."""
         return self.parsed.keys
+
+    def content(self) -> dict:
+        """The row as plain JSON-able values, its key aside; `Number(key, **content)` makes it again."""
+        told = {f.name: getattr(self, f.name) for f in fields(self) if f.init and f.name != "key"}
+        return told | {"example": dict(self.example), "only_drives": list(self.only_drives)}
 
 
 ROTATING_DRIVES = ("field", "motor")

@@ -1,47 +1,143 @@
-"""The sperm number's dialects, one row each, and the call that restates a house value in another dialect."""
+"""Dialects: the choices by which papers define a number differently, their formulas, and published rows."""
 
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass
+from fractions import Fraction
 
 import numpy as np
 
 from labbook.errors import Refusal
 from labbook.physics import rods
 from labbook.registry.formula import parse, pure
+from labbook.registry.published_dialects import PUBLISHED
 from labbook.registry.quantities import QUANTITIES, written_dimension
 
-HOUSE = {"length": "L_tail", "rate": "omega", "coefficient": rods.HOUSE_MODEL, "power": 0.25}
-
 # coefficients that papers put in place of zeta_n, as multiples of mu; log_slender is 4 pi mu/ln(L_tail/a)
-_MULTIPLES = {"mu": 1.0, "four_pi_mu": 4.0 * math.pi, "eight_pi_mu": 8.0 * math.pi}
+MULTIPLES = {"mu": 1.0, "four_pi_mu": 4.0 * math.pi, "eight_pi_mu": 8.0 * math.pi}
 
-CHOICES = {
-    "length": ("L_tail", "L_body"),
-    "rate": ("omega", "f"),
-    "coefficient": (*rods.MODELS, *_MULTIPLES, "log_slender"),
-    "power": (0.25, 1),
+# choice -> option -> the text that takes the choice's place; a drag model's value stands as zeta_n
+_OPTIONS: dict[str, dict[object, str]] = {
+    "length": {"L_tail": "L_tail", "L_body": "L_body"},
+    "rate": {"omega": "omega", "f": "f"},
+    "amplitude": {"peak_to_peak": "A_tip", "half": "(A_tip / 2)"},
+    "breadth": {"diameter": "(2 * a)", "radius": "a"},
+    "coefficient": {
+        **dict.fromkeys(rods.MODELS, "zeta_n"),
+        "mu": "mu", "four_pi_mu": "4 * pi * mu", "eight_pi_mu": "8 * pi * mu", "log_slender": "zeta_n",
+    },
+    "power": {
+        0.25: "{length} * ({coefficient} * {rate} / EI)**0.25",
+        1: "{coefficient} * {rate} * {length}**4 / EI",
+    },
+}  # fmt: skip
+
+_TEMPLATES = {
+    "Re": "rho * U * {length} / mu",
+    "Re_omega": "rho * {rate} * {length}**2 / mu",
+    "Wo": "{length} * ({rate} / nu)**0.5",
+    "Sp": "{power}",
+    "St": "{rate} * {amplitude} / U",
+    "Sw": "{rate} * {amplitude} * {length} / nu",
+    "stride": "U / ({rate} * {length})",
+    "U_scaled": "U / ({rate} * {length} * theta0**2)",
+    "De": "lam * {rate}",
+    "Mn": "m_mag * B * {length} / EI",
+    "slenderness": "{length} / {breadth}",
 }
 
+AT_BIRTH: dict[str, dict[str, object]] = {
+    "Re": {"length": "L_body"},
+    "Re_omega": {"length": "L_tail", "rate": "omega"},
+    "Wo": {"length": "L_tail", "rate": "omega"},
+    "Sp": {"length": "L_tail", "rate": "omega", "coefficient": rods.HOUSE_MODEL, "power": 0.25},
+    "St": {"rate": "f", "amplitude": "peak_to_peak"},
+    "Sw": {"length": "L_body", "rate": "omega", "amplitude": "peak_to_peak"},
+    "stride": {"length": "L_body", "rate": "f"},
+    "U_scaled": {"length": "L_tail", "rate": "omega"},
+    "De": {"rate": "omega"},
+    "Mn": {"length": "L_tail"},
+    "slenderness": {"length": "L_tail", "breadth": "diameter"},
+}
 
-def completed(choices: Mapping[str, object]) -> dict[str, object]:
-    """The choices with the house's where one is left out; Refusal for an unknown choice."""
-    for name, chosen in choices.items():
-        if name not in CHOICES:
-            raise Refusal("dialect", name, "is not a choice", f"one of {', '.join(CHOICES)}")
-        if chosen not in CHOICES[name]:
-            raise Refusal(name, chosen, "is not a choice", f"one of {', '.join(map(str, CHOICES[name]))}")
-    return HOUSE | dict(choices)
+CHOICES: dict[str, dict[str, tuple]] = {
+    number: {name: tuple(_OPTIONS[name]) for name in house} for number, house in AT_BIRTH.items()
+}
+
+Choices = Mapping[str, object]
+
+
+def completed(number: str, choices: Choices, house: Choices | None = None) -> dict[str, object]:
+    """Every choice of a number: the ones given, else the house's, else those at birth.
+
+    Options may be texts ('1', '0.25'). Errors: Refusal for an unknown number, choice or option.
+    """
+    if number not in CHOICES:
+        raise Refusal("dialect", number, "no number of this key has dialects", f"one of {', '.join(CHOICES)}")
+    chosen = dict(AT_BIRTH[number])
+    for given in (house or {}, choices):
+        if not isinstance(given, Mapping):
+            reason = "is no mapping of choices"
+            raise Refusal(f"dialect of {number}", given, reason, "give e.g. {'rate': 'f'}")
+        chosen |= {name: _option(number, name, option) for name, option in given.items()}
+    return chosen
+
+
+def _option(number: str, name: str, given: object) -> object:
+    options = CHOICES[number].get(name)
+    if options is None:
+        remedy = f"one of {', '.join(CHOICES[number])}"
+        raise Refusal(f"dialect of {number}", name, "is no choice of this number", remedy)
+    for option in options:
+        if str(given).strip() == option or (not isinstance(option, str) and _number(given) == option):
+            return option
+    raise Refusal(f"{name} of {number}", given, "is not an option", f"one of {', '.join(map(str, options))}")
+
+
+def _number(given: object) -> Fraction | None:
+    try:
+        return Fraction(str(given).strip())
+    except (ValueError, ZeroDivisionError):
+        return None
+
+
+def formula_of(number: str, choices: Choices, house: Choices | None = None) -> str:
+    """A dialect's formula as text over the vocabulary; a drag model or log_slender stands as zeta_n in it."""
+    chosen = completed(number, choices, house)
+    texts = {name: _OPTIONS[name][option] for name, option in chosen.items()}
+    return _TEMPLATES[number].format(**texts).format(**texts)  # twice: a power's text has places of its own
+
+
+def read_choices(text: str) -> tuple[str, dict[str, object]]:
+    """('Sp', {'rate': 'f', 'power': 1}) of 'Sp=rate:f,power:1', ('Sp', {}) of 'Sp=house'.
+
+    Errors: Refusal for a text of another form, an unknown number, choice or option, or a choice made twice.
+    """
+    number, equals, rest = (part.strip() for part in text.partition("="))
+    pairs = [] if rest == "house" else [part.partition(":") for part in rest.split(",")]
+    names = [name.strip() for name, _, _ in pairs]
+    if not equals or not all(name.strip() and colon and option.strip() for name, colon, option in pairs):
+        raise Refusal("dialect", text, "cannot be read", "write e.g. Sp=rate:f,power:1 or Sp=house")
+    if len(set(names)) < len(names):
+        raise Refusal("dialect", text, "makes a choice twice", "write e.g. Sp=rate:f,power:1")
+    chosen = completed(number, dict(zip(names, (option for _, _, option in pairs), strict=True)))
+    return number, {name: chosen[name] for name in names}
+
+
+def written_choices(number: str, choices: Choices, house: Choices | None = None) -> str:
+    """'rate f, power 1': where a dialect departs from the house; 'house' where it does not."""
+    at_home, chosen = completed(number, {}, house), completed(number, choices, house)
+    return ", ".join(f"{n} {o}" for n, o in chosen.items() if o != at_home[n]) or "house"
 
 
 def coefficient(name: str, inputs: Mapping[str, object]):
     """A dialect's resistive coefficient, always with L_tail.
 
-    inputs: SI values or arrays of L_tail, a, mu; w and t of a strip; wavelength for the two models that need
-    it. Answer in Pa.s. Errors: Refusal for a missing input.
+    inputs: SI values or arrays (real or complex) of L_tail, a, mu; w and t of a strip; wavelength for the
+    two models that need it. Answer in Pa.s. Errors: Refusal for a missing input.
     """
-    if name in _MULTIPLES:
-        return _MULTIPLES[name] * _input(inputs, "mu")
+    if name in MULTIPLES:
+        return MULTIPLES[name] * _input(inputs, "mu")
     L, a, mu = (_input(inputs, key) for key in ("L_tail", "a", "mu"))
     if name == "log_slender":
         return 4.0 * math.pi * mu / np.log(L / a)
@@ -54,45 +150,24 @@ def coefficient(name: str, inputs: Mapping[str, object]):
     )[0]
 
 
-def restated(value, *, choices: Mapping[str, object], inputs: Mapping[str, object]):
-    """House sperm numbers in another dialect.
-
-    value: scalar or array of house values; choices: some of length, rate, coefficient, power (the rest are
-    the house's); inputs: SI scalars or arrays of what the change needs: L_tail and L_body for a length; the
-    house's zeta_n and what `coefficient` needs for a coefficient. A frame will do. NaN stays NaN.
-    Errors: Refusal for an unknown choice or a missing input.
-    """
-    chosen = completed(choices)
-    answer = np.asarray(value, dtype=float)
-    if chosen["length"] != HOUSE["length"]:
-        answer = answer * (_input(inputs, chosen["length"]) / _input(inputs, HOUSE["length"]))
-    ratio = 1.0
-    if chosen["rate"] != HOUSE["rate"]:
-        ratio = ratio / (2.0 * math.pi)
-    if chosen["coefficient"] != HOUSE["coefficient"]:
-        ratio = ratio * (coefficient(chosen["coefficient"], inputs) / _input(inputs, "zeta_n"))
-    answer = answer * ratio**0.25
-    return answer if chosen["power"] == HOUSE["power"] else answer**4
-
-
 def _input(inputs, key):
     if key not in inputs:
-        raise Refusal(key, None, "is needed to restate the sperm number")
-    return np.asarray(inputs[key], dtype=float)
+        raise Refusal(key, None, "is needed for this resistive coefficient")
+    return np.asarray(inputs[key])
 
 
 @dataclass(frozen=True)
 class Dialect:
     """An alternative definition of a number; construction proves it pure and recomputes its worked example.
 
-    of: the number; choices: where it departs from the house; formula: text over the vocabulary, in which
-    zeta_n stands for the chosen coefficient; example: SI inputs with the house's zeta_n; answer: from
-    outside; tolerance: relative, from the digits of the answer.
-    Errors: Refusal where the formula is not pure, or formula, restated house value and answer disagree.
+    of: the number; choices: where it departs from the house at birth; formula: text over the vocabulary, in
+    which zeta_n stands for the chosen coefficient; example: SI inputs with the zeta_n of the house at birth;
+    answer: from outside; tolerance: relative, from the digits of the answer.
+    Errors: Refusal where the formula is not pure, or formula, choices and answer disagree.
     """
 
     of: str
-    choices: Mapping[str, object]
+    choices: Choices
     formula: str
     source: str
     example: Mapping[str, float]
@@ -101,64 +176,28 @@ class Dialect:
 
     def __post_init__(self):
         field = f"dialect of {self.of}"
-        if self.of != "Sp":
-            raise Refusal("dialect", self.of, "only the sperm number has dialects")
+        chosen = completed(self.of, self.choices)
         if not self.source.strip():
             raise Refusal(field, self.formula, "a dialect needs a source")
         if not 0 < self.tolerance <= 1e-2:
             raise Refusal(field, self.tolerance, "the example's tolerance must lie in 0 to 1 %")
-        chosen = completed(self.choices)
-        parsed = parse(self.formula, QUANTITIES)
-        left_over = parsed.dimension({key: row.dimension for key, row in QUANTITIES.items()})
+        written = parse(self.formula, QUANTITIES)
+        left_over = written.dimension({key: row.dimension for key, row in QUANTITIES.items()})
         if not pure(left_over):
             reason = f"not a pure number: {written_dimension(left_over)} is left over"
             raise Refusal(field, self.formula, reason)
         spoken = dict(self.example)
-        if chosen["coefficient"] != HOUSE["coefficient"]:
+        if chosen.get("coefficient", rods.HOUSE_MODEL) != rods.HOUSE_MODEL:
             spoken["zeta_n"] = float(coefficient(chosen["coefficient"], self.example))
-        missing = [key for key in parsed.keys if key not in spoken]
+        built = parse(formula_of(self.of, chosen), QUANTITIES)
+        missing = [key for key in dict.fromkeys((*written.keys, *built.keys)) if key not in spoken]
         if missing:
             raise Refusal(field, self.formula, f"the worked example lacks {', '.join(missing)}")
-        found = parsed.value(spoken)
+        found, again = written.value(spoken), built.value(spoken)
         if not math.isclose(found, self.answer, rel_tol=self.tolerance):
             raise Refusal(field, self.answer, f"the worked example gives {found:.6g}")
-        house = parse(_HOUSE_FORMULA, QUANTITIES).value(self.example)
-        again = restated(house, choices=self.choices, inputs=self.example)
         if not math.isclose(found, again, rel_tol=1e-12):
             raise Refusal(field, self.formula, f"the choices give {again:.6g}, the formula {found:.6g}")
 
 
-_HOUSE_FORMULA = "L_tail * (zeta_n * omega / EI)**0.25"
-_TRADE = "common practice, no source"
-_SPHEROID = "Wiggins & Goldstein, Phys. Rev. Lett. 80:3879 (1998), with the slender-spheroid coefficient"
-
-# A silicone rod of 1.5 MPa in 1 Pa.s: L 20 mm, d 1 mm, 2 Hz; zeta_n by the finite-cylinder fit at L/d = 20,
-# written out from Tirado & Garcia de la Torre, J. Chem. Phys. 71:2581 (1979). The body is 24 mm long.
-_ROD = dict(
-    L_tail=0.020, L_body=0.024, a=5e-4, mu=1.0, f=2.0, omega=4.0 * math.pi, EI=7.3631078e-8,
-    zeta_n=4.0 * math.pi / (math.log(20.0) + 0.839 + 0.185 / 20.0 + 0.233 / 400.0),
-)  # fmt: skip
-
-
-def _row(choices, formula, source, answer, tolerance=1e-5):
-    return Dialect("Sp", choices, formula, source, _ROD, answer, tolerance)
-
-
-# the answers were recomputed independently; five or six figures, so 1e-5 (2e-5 for five)
-DIALECTS: tuple[Dialect, ...] = (
-    _row({}, _HOUSE_FORMULA,
-         "Tirado & Garcia de la Torre, J. Chem. Phys. 71:2581 (1979), for zeta_n", 3.07367),
-    _row({"coefficient": "spheroid_asymptotic"}, _HOUSE_FORMULA, _SPHEROID, 3.00847),
-    _row({"coefficient": "cylinder_two_term"}, _HOUSE_FORMULA,
-         "Cox, J. Fluid Mech. 44:791 (1970), for zeta_n", 3.06623),
-    _row({"coefficient": "log_slender"}, _HOUSE_FORMULA, _TRADE, 3.10560),
-    _row({"coefficient": "mu"}, "L_tail * (mu * omega / EI)**0.25", _TRADE, 2.28595),
-    _row({"coefficient": "four_pi_mu"}, "L_tail * (4 * pi * mu * omega / EI)**0.25", _TRADE, 4.30397),
-    _row({"coefficient": "eight_pi_mu"}, "L_tail * (8 * pi * mu * omega / EI)**0.25", _TRADE, 5.11832),
-    _row({"coefficient": "spheroid_asymptotic", "rate": "f"}, "L_tail * (zeta_n * f / EI)**0.25",
-         _TRADE, 1.90020),
-    _row({"coefficient": "spheroid_asymptotic", "power": 1}, "zeta_n * omega * L_tail**4 / EI", _TRADE,
-         81.918, 2e-5),
-    # the house answer times 24/20
-    _row({"length": "L_body"}, "L_body * (zeta_n * omega / EI)**0.25", _TRADE, 3.688404),
-)
+DIALECTS: tuple[Dialect, ...] = tuple(Dialect(*row) for row in PUBLISHED)

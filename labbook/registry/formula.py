@@ -66,6 +66,10 @@ class Formula:
         """The formula's value for SI inputs (scalars or arrays, real or complex)."""
         return _value(self.tree, inputs)
 
+    def divisors(self) -> frozenset[str]:
+        """The keys that it divides by: where one of them is zero, the formula has no value."""
+        return frozenset(_divisors(self.tree, below=False))
+
     def dimension(self, dimensions: Mapping[str, Dimension]) -> Dimension:
         """The formula's dimension, from its inputs' dimensions; Refusal where a sum mixes kinds."""
         return _dimension(self.tree, dimensions, self.text)
@@ -151,6 +155,22 @@ def _value(node, inputs):
             return _power(_value(base, inputs), exponent)
         case Sum(left=left, right=right, sign=sign) | Product(left=left, right=right, sign=sign):
             return _ARITHMETIC[sign](_value(left, inputs), _value(right, inputs))
+
+
+def _divisors(node, below: bool):
+    """The keys below a fraction bar; a bar below a bar lifts them up again."""
+    match node:
+        case Leaf(key=key):
+            if below and key:
+                yield key
+        case Power(base=base, exponent=exponent):
+            yield from _divisors(base, below != (exponent < 0))
+        case Product(left=left, right=right, sign=sign):
+            yield from _divisors(left, below)
+            yield from _divisors(right, below != (sign == "/"))
+        case Sum(left=left, right=right):
+            yield from _divisors(left, below)
+            yield from _divisors(right, below)
 
 
 def _power(base, exponent: Fraction):

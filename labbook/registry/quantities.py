@@ -33,7 +33,7 @@ def written_dimension(exponents: Dimension) -> str:
 class Quantity:
     """One quantity: key, symbol as written, name, SI unit, dimension, accepted units, plausible range in SI.
 
-    of: which record it is typed on ('run', 'fluid', 'material', 'swimmer', 'rig') or 'derived'.
+    of: which record it is typed on ('run', 'fluid', 'material', 'swimmer', 'rig', 'published') or 'derived'.
     sign: 'positive', 'not negative' or 'any'; kind: the plural noun used when a wrong unit is refused.
     formula: for derived quantities that are a formula over the vocabulary.
     """
@@ -146,6 +146,9 @@ QUANTITIES: dict[str, Quantity] = {
                  "not negative", "mass fraction"),
         Quantity("grade", "ν₂₅", "nominal kinematic viscosity at 25 degC", "m2/s", "L^2 T^-1",
                  ("m2/s", "mm2/s", "cSt", "St"), 1e-7, 2.0, "fluid", kind="kinematic viscosity"),
+        # typed on a published point
+        Quantity("pure", "Π", "value of a dimensionless number", "1", "", ("1",), of="published", sign="any",
+                 kind="pure number"),
         # derived
         Quantity("omega", "ω", "angular frequency", "rad/s", "T^-1", formula="2 * pi * f"),
         Quantity("I_area", "I", "second moment of area", "m4", "L^4"),
@@ -164,7 +167,7 @@ RIG_KEYS = tuple(k for k, q in QUANTITIES.items() if q.of == "rig")
 READING_KEYS = ("mu", "nu", "rho", "lam", "E")
 # what a run's stored row holds: everything typed on run, swimmer, fluid and material, and what follows
 RESOLVED_KEYS = tuple(
-    k for k, q in QUANTITIES.items() if q.of != "rig" and k not in ("glycerol", "grade")
+    k for k, q in QUANTITIES.items() if q.of not in ("rig", "published") and k not in ("glycerol", "grade")
 )
 
 

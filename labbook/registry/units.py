@@ -1,6 +1,8 @@
 """The one file that knows pint: spellings of units, conversion to SI and back, what a wrong unit measures."""
 
 import re
+from collections.abc import Iterable
+from fractions import Fraction
 from functools import lru_cache
 
 import pint
@@ -142,3 +144,24 @@ def si_dimension(key: str) -> dict[str, float]:
     unit = QUANTITIES[key].unit
     text = "" if unit == "1" else _pint_text(unit)
     return {name: float(power) for name, power in _pint_registry().Unit(text).dimensionality.items()}
+
+
+def pure_products(keys: Iterable[str]) -> list[dict[str, Fraction]]:
+    """As many independent pure products of powers as the quantities allow, as {key: exponent}.
+
+    One for each quantity beyond the rank of their dimensions (Buckingham, Phys. Rev. 4:345 (1914)), by pint
+    from the SI units alone; which of the equivalent sets it finds is pint's affair. Pixels count for nothing.
+    Errors: Refusal for an unknown key.
+    """
+    dimensions = {key: _without_counts(key) for key in dict.fromkeys(keys)}
+    found = [{key: Fraction(1)} for key, powers in dimensions.items() if not powers]
+    rest = {key: powers for key, powers in dimensions.items() if powers}
+    if rest:  # pint cannot be asked about pure numbers alone
+        for product in _pint_registry().pi_theorem(rest):
+            found.append({key: Fraction(power).limit_denominator(1000) for key, power in product.items()})
+    return found
+
+
+def _without_counts(key: str) -> dict[str, float]:
+    quantity(key)
+    return {name: power for name, power in si_dimension(key).items() if name != "[printing_unit]"}

@@ -7,6 +7,7 @@ import pytest
 
 from labbook.app import live
 from labbook.book.preview import Preview
+from labbook.registry.catalogue import NUMBERS
 
 WHY = "needs rho: no density"
 
@@ -24,12 +25,12 @@ def warned(page):
 
 def test_an_empty_strip_says_why_once_everything_it_takes_is_typed(seen):
     cells = {"f": "1 Hz", "T": "20 degC"}
-    assert live.lacking(cells, seen) == [f"Re_ω: {WHY}"]
-    assert live.lacking({**cells, "U": "1 mm/s"}, seen) == [f"Re_ω, Re: {WHY}"]
+    assert live.lacking(cells, seen, NUMBERS) == [f"Re_ω: {WHY}"]
+    assert live.lacking({**cells, "U": "1 mm/s"}, seen, NUMBERS) == [f"Re_ω, Re: {WHY}"]
 
 
 def test_what_is_not_typed_yet_is_not_asked_for(seen):
-    assert live.lacking({"f": "1 Hz"}, seen) == [] and live.lacking({"T": "20 degC"}, seen) == []
+    assert live.lacking({"f": "1 Hz"}, seen, NUMBERS) == [] and live.lacking({"T": "20 degC"}, seen, NUMBERS) == []
 
 
 def test_a_warning_that_waits_stands_once_and_goes_with_the_value(open_page, demo_copy):

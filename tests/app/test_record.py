@@ -7,7 +7,7 @@ from html import unescape
 import pytest
 
 from labbook.api import Book
-from labbook.app import record, record_parts
+from labbook.app import record, record_budget, record_parts
 from labbook.book import queries
 from labbook.book.curves import viscosity_frames
 from labbook.errors import Refusal
@@ -158,7 +158,7 @@ def test_a_cell_without_unit_takes_its_headers(text, unit, shown):
     [(0.0123, 1.0, "0.012"), (1e-18, 1.5, "0"), (634.0, 2e4, "630"), (6.54e-12, 5e-9, "6.5e-12"), (None, 1.0, "")],
 )
 def test_a_part_of_the_uncertainty_has_two_digits(u, value, text):
-    assert record_parts._spread(u, value) == text
+    assert record_budget.part_in_words(u, value) == text
 
 
 def test_text_from_the_book_is_escaped(open_page, target):

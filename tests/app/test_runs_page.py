@@ -1,20 +1,26 @@
 """The Runs page: address to filter and back, the query in words, the table, downloads, empty states."""
 
+import csv
+import json
 import math
 import re
 import shlex
 
 import numpy as np
 import pytest
+from click.testing import CliRunner
 
 from labbook.api import Book
-from labbook.app import runs_table
+from labbook.app import runs, runs_table
+from labbook.app.column_width import wide_enough
 from labbook.book import addresses, queries
 from labbook.book.asking import Question
 from labbook.book.easing import eased
 from labbook.book.limits import in_limit_unit, limits, range_in_words
 from labbook.charts.histogram import BINS, histogram
+from labbook.cli import main
 from labbook.errors import Refusal
+from labbook.registry.group import Registry, at_birth
 
 
 @pytest.fixture
@@ -60,14 +66,14 @@ FULL = Question(
 
 def test_an_address_says_a_question_and_is_read_back_to_the_same(book):
     known = book.ask(queries.choices)
-    again, said = addresses.read_question(addresses.parameters(FULL), known)
+    again, said = addresses.read_question(addresses.parameters(FULL), known, at_birth())
     assert said == []
     assert again == FULL
 
 
 def test_an_address_keeps_twelve_digits_of_a_limit(book):
     asked = Question(ranges={"Sp": (1.23456789, 3.0)})
-    again, _ = addresses.read_question(addresses.parameters(asked), book.ask(queries.choices))
+    again, _ = addresses.read_question(addresses.parameters(asked), book.ask(queries.choices), at_birth())
     assert again.ranges["Sp"][0] == 1.23456789
 
 
@@ -86,10 +92,37 @@ def test_an_address_keeps_twelve_digits_of_a_limit(book):
     ],
 )
 def test_what_an_address_says_wrongly_is_named_and_the_rest_is_used(book, given, word):
-    asked, said = addresses.read_question(given | {"swimmer": ["reed-01"]}, book.ask(queries.choices))
+    asked, said = addresses.read_question(given | {"swimmer": ["reed-01"]}, book.ask(queries.choices), at_birth())
     assert len(said) == 1
     assert word in said[0]
     assert asked == Question(swimmers=("reed-01",))
+
+
+SPOKEN = ["Sp=rate:f,power:1", "St=amplitude:half"]
+
+
+def test_an_address_says_dialects_and_is_read_back_to_the_same():
+    dialects, said = addresses.read_dialects(SPOKEN, at_birth())
+    assert said == [] and addresses.dialect_texts(dialects, at_birth()) == SPOKEN
+    assert dialects["Sp"] == {"length": "L_tail", "rate": "f", "coefficient": "cylinder_finite", "power": 1}
+
+
+def test_the_house_dialect_needs_no_words_and_an_address_is_read_in_the_groups_house():
+    assert addresses.read_dialects(["Sp=house", "Re=length:L_body"], at_birth()) == ({}, [])
+    ours = Registry(house={"Sp": {"rate": "f"}})
+    dialects, _ = addresses.read_dialects(["Sp=power:1"], ours)
+    assert dialects["Sp"]["rate"] == "f" and addresses.dialect_texts(dialects, ours) == ["Sp=power:1"]
+    assert addresses.read_dialects(["Sp=rate:f"], ours) == ({}, [])
+
+
+@pytest.mark.parametrize(("text", "word"), [
+    ("Sp=rate:rpm", "'rpm'"), ("wall=x:1", "'wall'"), ("Sp", "Sp=rate:f,power:1"), ("", "''"),
+    ("Sp=rate:f,rate:f", "twice"), ("St=rate:omega", "already"),
+])  # fmt: skip
+def test_a_dialect_that_cannot_be_read_is_said_and_the_others_are_used(text, word):
+    dialects, said = addresses.read_dialects([*SPOKEN, text], at_birth())
+    assert len(said) == 1 and word in said[0]
+    assert addresses.dialect_texts(dialects, at_birth()) == SPOKEN
 
 
 # ---- limits: the expected values are the SI definitions of the units
@@ -212,16 +245,96 @@ def test_equal_values_written_differently_keep_both_texts(book):
     runs = book.frame(Question(), keys=("U",), texts=("code", "typed"), newest=3)
     runs["U"], runs["u_U"] = [1e-3] * 3, [1e-4] * 3
     runs["typed"] = [{"U": [text, "mm/s", 1e-3, 1e-4, "stated"]} for text in ("1.0(1)", "1.00(10)", "1.0(1)")]
-    label, values, texts = runs_table._numeric(runs, "U")
+    label, values, texts = runs_table._numeric(runs, "U", "U")
     assert label == "U (mm/s)"
     assert [texts[v] for v in values] == ["1.0(1)", "1.00(10)", "1.0(1)"]
+
+
+def headings(page):
+    """column -> heading of the table."""
+    return {k: c.get("label") for k, c in json.loads(page.at.dataframe[0].proto.columns).items()}
+
+
+def test_a_dialect_restates_its_column_and_its_heading_says_so(page, book):
+    page.go(columns="Sp,U_scaled,regime", dialect=["Sp=rate:f,power:1", "U_scaled=rate:f"])
+    shown = page.at.dataframe[0].value
+    house = book.frame(Question(), keys=("Sp", "U_scaled"), newest=len(shown)).set_index("code")
+    house = house.loc[shown["code"]]
+    # physics.md section 9: Sp^4/(2 pi) and 2 pi U/(omega L theta0^2); equal but for the last bits, as above
+    assert house["Sp"].notna().any()
+    wanted = (house["Sp"] ** 4 / (2 * math.pi)).to_numpy()
+    assert shown["Sp"].to_numpy() == pytest.approx(wanted, rel=1e-12, nan_ok=True)
+    wanted = (house["U_scaled"] * 2 * math.pi).to_numpy()
+    assert shown["U_scaled"].to_numpy() == pytest.approx(wanted, rel=1e-12, nan_ok=True)
+    found = headings(page)
+    assert found["Sp"] == "Sp (rate f, power 1)" and found["U_scaled"] == "U/(f L_tail θ₀²) (rate f)"
+    assert "regimes and ranges are read in the house dialect" in words(page)
+    page.go(columns="Sp,U_scaled,regime")
+    assert headings(page)["Sp"] == "Sp" and "house dialect" not in words(page)
+    # regimes stay those of the house dialect
+    assert shown["regime"].tolist() == page.at.dataframe[0].value["regime"].tolist()
+    working = set(book.runs(regime="working tail", columns=())["code"]) & set(shown["code"])
+    assert working and set(shown["code"][shown["regime"].str.contains("working tail")]) == working
+
+
+def test_a_dialect_is_chosen_in_the_popover_for_each_number_shown(page):
+    page.go(columns="f,Sp,St")
+    offered = [s.key for s in page.at.selectbox if s.key and s.key.startswith("runs:dialect")]
+    assert offered == ["runs:dialect:Sp", "runs:dialect:St"]
+    page.at.selectbox(key="runs:dialect:St").set_value("amplitude half")
+    page.run()
+    page.at.selectbox(key="runs:dialect:Sp").set_value("other…")
+    page.run()
+    page.at.selectbox(key="runs:dialect:Sp:power").set_value(1)
+    page.run()
+    assert sorted(asked_for(page, "dialect")) == ["Sp=power:1", "St=amplitude:half"]
+    assert headings(page)["St"] == "St (amplitude half)"
+    page.at.selectbox(key="runs:dialect:St").set_value("house")
+    page.run()
+    assert asked_for(page, "dialect") == ["Sp=power:1"]
+
+
+def test_a_bad_dialect_is_said_on_the_page(page):
+    page.go(columns="Sp", dialect=["Sp=rate:rpm", "St=rate:omega"])
+    assert any("'rpm'" in s for s in page.said())
+    assert headings(page)["Sp"] == "Sp"
+
+
+def test_the_link_and_the_command_say_the_dialects(page):
+    page.go(dialect=SPOKEN)
+    link, command = (c.value for c in page.at.code)
+    assert "dialect=Sp%3Drate%3Af%2Cpower%3A1" in link
+    told = shlex.split(command)
+    assert [told[i + 1] for i, word in enumerate(told) if word == "--dialect"] == SPOKEN
+    done = CliRunner().invoke(main, [*told[1:], "--as", "csv", "--newest", "3"])
+    assert done.exit_code == 0, done.output
+    said = {row["dialect"] for row in csv.DictReader(done.stdout.splitlines())}
+    assert said == {"Sp: rate f, power 1; St: amplitude half"}
+
+
+def test_downloads_hold_the_restated_values_and_say_so(book):
+    registry = book.registry
+    dialects, _ = addresses.read_dialects(SPOKEN, registry)
+    first, *table = runs.as_csv(book, Question(), ("f", "Sp"), dialects, registry).splitlines()
+    assert "Sp in dialect rate f, power 1; regimes and ranges are read in the house dialect" in first
+    rows = {row["code"]: row for row in csv.DictReader(table)}
+    assert {row["dialect"] for row in rows.values()} == {"Sp: rate f, power 1"}, "St is no column"
+    house = book.frame(Question(), keys=("Sp",), texts=("code",)).dropna()
+    assert len(house) > 500
+    for run in house.itertuples():
+        assert float(rows[run.code]["Sp"]) == pytest.approx(run.Sp**4 / (2 * math.pi), rel=1e-12)
+        # only the value moves the uncertainty: d ln(Sp^4) = 4 d ln Sp
+        u = 4 * run.u_own_Sp / run.Sp * float(rows[run.code]["Sp"])
+        assert float(rows[run.code]["u_own_Sp"]) == pytest.approx(u, rel=1e-9)
+    plain = runs.as_csv(book, Question(), ("f", "Sp"), {}, registry).splitlines()
+    assert "dialect" not in plain[0] and "dialect" not in plain[1]
 
 
 def test_mixed_units_stay_in_the_cells(book):
     runs = book.frame(Question(), keys=("U",), texts=("code", "typed"), newest=2)
     runs["U"] = [1e-3, 2e-3]
     runs["typed"] = [{"U": ["1.0", "mm/s", 1e-3, 0, "digits"]}, {"U": ["2000 um/s", "um/s", 2e-3, 0, "digits"]}]
-    label, values, texts = runs_table._numeric(runs, "U")
+    label, values, texts = runs_table._numeric(runs, "U", "U")
     assert label == "U"
     assert [texts[v] for v in values] == ["1.0 mm/s", "2000 um/s"]
 
@@ -263,6 +376,6 @@ def test_an_empty_book_teaches(open_page, tmp_path):
 
 def test_a_column_is_as_wide_as_its_longest_cell_needs():
     # measured in Chromium with the table's font: '1.532(14)' takes 53 pixels, a cell's two edges 16
-    wide = runs_table.wide_enough("Sp", ["1.532(14)", "2.2"])
+    wide = wide_enough("Sp", ["1.532(14)", "2.2"])
     assert 53 + 16 <= wide < 53 + 16 + 20
-    assert runs_table.wide_enough("U/(ω L_tail θ₀²)", []) > runs_table.wide_enough("Sp", [])
+    assert wide_enough("U/(ω L_tail θ₀²)", []) > wide_enough("Sp", [])

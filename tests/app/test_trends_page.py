@@ -2,11 +2,14 @@
 
 import csv
 import json
+import math
+import re
 import sqlite3
 from contextlib import closing
 
 import pytest
 import streamlit as st
+from streamlit.dataframe_util import convert_arrow_bytes_to_pandas_df
 from streamlit.testing.v1 import AppTest
 
 from labbook import Book
@@ -133,24 +136,166 @@ def test_an_unknown_run_is_said_beside_the_chart(page):
     assert "R-9999999" in texts(app) and chart(app)
 
 
-def test_another_dialect_is_on_the_axis_and_takes_the_bands_away(page):
-    house, spoken = chart(page()), chart(page(dialect="zeta_n eight_pi_mu"))
-    assert "8π" in str(layers(spoken)["runs"]["encoding"]["x"])
-    assert "bands_x" in layers(house) and "bands_x" not in layers(spoken)
-    assert not any(p["mark"]["type"] == "line" for p in spoken["layer"])
+def rows_behind(app, name):
+    """The rows of a layer, which Streamlit sends beside the specification."""
+    wanted = layers(chart(app))[name]["data"]["name"]
+    found = [d for c in app.get("vega_lite_chart") for d in c.proto.datasets if d.name == wanted]
+    return convert_arrow_bytes_to_pandas_df(found[0].data.data)
 
 
-def test_many_runs_are_counted_on_a_grid_and_only_in_the_house_dialect(page, monkeypatch):
+def marks_of(app):
+    """{run: (x, y)} of the marks."""
+    return {row.code: (row.x, row.y) for row in rows_behind(app, "runs").itertuples()}
+
+
+def test_another_dialect_moves_the_marks_and_is_on_the_axis(page):
+    app = page(dialect="Sp=rate:f,power:1")
+    house, spoken = marks_of(page()), marks_of(app)
+    assert house.keys() == spoken.keys() and len(house) > 500
+    for code, (x, y) in spoken.items():
+        # physics.md section 9: Sp^4/(2 pi); five digits are 5e-5, in the fourth power four times that and its own
+        assert x == pytest.approx(house[code][0] ** 4 / (2 * math.pi), rel=3e-4)
+        assert y == house[code][1]
+    encoding = layers(chart(app))["runs"]["encoding"]
+    assert encoding["x"]["axis"]["title"] == ["Sp = ζ_n f L_tail⁴/EI, dialect rate f, power 1"]
+    assert "Sp (rate f, power 1)" in str(encoding["tooltip"])
+
+
+def test_bands_of_a_restated_number_are_hidden_and_one_line_says_why(page):
+    house, spoken = page(y="Re_omega"), page(y="Re_omega", dialect="Sp=coefficient:eight_pi_mu")
+    assert "8π" in str(layers(chart(spoken))["runs"]["encoding"]["x"])
+    assert {"bands_x", "bands_y"} <= layers(chart(house)).keys()
+    assert "bands_y" in layers(chart(spoken)) and "bands_x" not in layers(chart(spoken))
+    assert "regimes and ranges are read in the house dialect" in texts(spoken)
+    assert "read in the house dialect" not in texts(house)
+
+
+def test_y_has_a_dialect_too(page):
+    house, spoken = marks_of(page(y="stride")), marks_of(page(y="stride", dialect="stride=rate:omega"))
+    assert len(house) > 100
+    for code, (x, y) in spoken.items():
+        # U/(omega L) is U/(f L) over 2 pi; both are rounded to five digits, so to 5e-5 each
+        assert x == house[code][0] and y == pytest.approx(house[code][1] / (2 * math.pi), rel=1.1e-4)
+
+
+def test_a_bad_dialect_is_said_in_a_sentence_and_the_rest_is_shown(page):
+    app = page(dialect=["Sp=rate:rpm", "U_scaled=rate:f", "wall=x:1"])
+    said = texts(app)
+    assert "rate of Sp &#x27;rpm&#x27;" in said and "wall" in said
+    title = str(layers(chart(app))["runs"]["encoding"]["y"]["axis"]["title"])
+    assert "U/(f L_tail θ₀²)" in title and "rate f" in title
+    assert app.selectbox(key="trends:dialect:Sp").value == "house"
+    assert app.selectbox(key="trends:dialect:U_scaled").value == "rate f"
+
+
+def test_a_dialect_is_chosen_by_name_or_choice_by_choice(page):
+    app = page()
+    offered = app.selectbox(key="trends:dialect:Sp").options
+    assert offered[0] == "house" and offered[-1] == "other…" and "coefficient mu" in offered
+    app.selectbox(key="trends:dialect:Sp").set_value("coefficient mu").run()
+    assert value(app, "dialect") == "Sp=coefficient:mu"
+    app.selectbox(key="trends:dialect:Sp").set_value("other…").run()
+    assert value(app, "dialect") == "Sp=coefficient:mu", "nothing moves before a choice is made"
+    assert app.selectbox(key="trends:dialect:Sp:coefficient").value == "mu"
+    app.selectbox(key="trends:dialect:Sp:coefficient").set_value("cylinder_finite").run()
+    assert "dialect" not in app.query_params
+    app.selectbox(key="trends:dialect:Sp:power").set_value(1).run()
+    app.selectbox(key="trends:dialect:Sp:rate").set_value("f").run()
+    assert value(app, "dialect") == "Sp=rate:f,power:1"
+    assert "ζ_n f L_tail⁴/EI" in str(layers(chart(app))["runs"]["encoding"]["x"])
+    app.selectbox(key="trends:dialect:Sp").set_value("house").run()
+    assert "dialect" not in app.query_params
+    assert not [s for s in app.selectbox if s.key == "trends:dialect:Sp:power"]
+
+
+def test_an_axis_without_dialects_offers_none(page):
+    app = page(x="T", y="wall")
+    assert not [s.key for s in app.selectbox if s.key and s.key.startswith("trends:dialect")]
+
+
+def test_runs_without_a_value_in_a_dialect_are_counted_with_the_reason(page, demo_book):
+    (have,), = by_hand(demo_book, "select count(Sp) from resolved where state = 'kept'")
+    app = page(dialect="Sp=coefficient:lighthill")  # no tail of the demo's is a helix
+    assert f"{have} no Sp in this dialect (needs a helix pitch)" in texts(app)
+
+
+def test_a_grid_of_many_runs_is_restated_as_a_whole(page, monkeypatch, demo_book):
     defaults = plotting.plot_frame.__kwdefaults__
     monkeypatch.setattr(plotting.plot_frame, "__kwdefaults__", defaults | {"most": 100})
     st.cache_data.clear()
     st.cache_resource.clear()
-    app = page(dialect="rate f, zeta_n spheroid_asymptotic")
+    app = page(dialect="Sp=rate:f,power:1", bars="shared band")
     st.cache_data.clear()
     st.cache_resource.clear()
-    assert "in the house dialect" in texts(app) and "One mark stands for up to" in texts(app)
-    assert "(ζ_n ω/EI)" in str(layers(chart(app))["runs"]["encoding"]["x"])
-    assert app.selectbox(key="trends:dialect").disabled
+    runs = layers(chart(app))["runs"]["encoding"]["x"]
+    assert "One mark stands for up to" in texts(app) and "dialect rate f, power 1" in str(runs)
+    (low, high), = by_hand(demo_book, """select min(Sp), max(Sp) from resolved
+        where state = 'kept' and Sp > 0 and U_scaled > 0""")  # fmt: skip
+    # cells stand at means, the outermost ones mostly at one run: within the axis' own margin of a few per cent
+    span = [math.log10(v**4 / (2 * math.pi)) for v in (low, high)]
+    found = [math.log10(v) for v in runs["scale"]["domain"]]
+    assert found == pytest.approx(span, abs=0.06 * (span[1] - span[0]))
+    assert "No shared bands on a grid of many runs" in texts(app)
+
+
+def curve_of(app):
+    """Rows of x and y of the theory's curve."""
+    return rows_behind(app, "curve")[["x", "y"]].to_numpy()
+
+
+def test_the_curve_follows_a_change_of_rate_and_power_exactly(page):
+    house, spoken = curve_of(page()), curve_of(page(dialect=["Sp=rate:f,power:1", "U_scaled=rate:f"]))
+    # physics.md section 9, and U/(f L) = 2 pi U/(omega L); five digits are 5e-5, in the fourth power 5 times that
+    assert spoken[:, 0] == pytest.approx(house[:, 0] ** 4 / (2 * math.pi), rel=3e-4)
+    assert spoken[:, 1] == pytest.approx(house[:, 1] * 2 * math.pi, rel=1.1e-4)
+
+
+@pytest.mark.parametrize(("dialect", "why"), [
+    ("Sp=coefficient:mu", "cylinder_finite as the coefficient in Sp"),
+    ("Sp=length:L_body", "L_tail as the length in Sp"),
+    ("U_scaled=length:L_body", "L_tail as the length in U_scaled"),
+])  # fmt: skip
+def test_no_curve_where_each_swimmer_would_have_its_own(page, dialect, why):
+    app = page(dialect=dialect)
+    assert "curve" not in layers(chart(app)) and f"no theory here: the curve needs {why}" in texts(app)
+    assert not [t for t in app.toggle if t.key == "trends:theory"]
+
+
+def test_in_a_house_of_the_groups_own_the_curve_is_right_or_absent(demo_copy, page, monkeypatch):
+    house = curve_of(page())
+    with Book.open(demo_copy) as book:
+        book.adopt_dialect("Sp", {"rate": "f", "power": 1}, why="as in our papers", by="wren")
+    monkeypatch.setenv("LABBOOK_OPEN", str(demo_copy))
+    app = page()
+    moved = curve_of(app)
+    assert moved[:, 0] == pytest.approx(house[:, 0] ** 4 / (2 * math.pi), rel=3e-4)
+    assert moved[:, 1] == pytest.approx(house[:, 1], rel=1.1e-4)
+    assert "Sp = ζ_n f L_tail⁴/EI, house dialect" in str(layers(chart(app))["runs"]["encoding"]["x"])
+    with Book.open(demo_copy) as book:
+        book.adopt_dialect("Sp", {"coefficient": "mu"}, why="again", by="wren")
+    app = page()
+    assert "curve" not in layers(chart(app)) and "no theory here" in texts(app)
+    # the dialect at birth is one of the others now, and there the curve is as it was
+    back = curve_of(page(dialect="Sp=rate:omega,power:0.25,coefficient:cylinder_finite"))
+    assert back[:, 0] == pytest.approx(house[:, 0], rel=2e-5)
+
+
+def test_in_a_house_of_another_drag_model_the_curve_is_that_models(demo_copy, page, monkeypatch):
+    with Book.open(demo_copy) as book:
+        book.adopt_dialect("Sp", {"coefficient": "spheroid_asymptotic"}, why="as in our papers", by="wren")
+    monkeypatch.setenv("LABBOOK_OPEN", str(demo_copy))
+    curve = curve_of(page())
+    # physics.md section 8: fastest at Sp = 2.090123 for b/L = 0.1; heads of the demo differ a little, 3 %
+    assert curve[curve[:, 1].argmax(), 0] == pytest.approx(2.090, rel=0.03)
+
+
+def test_shared_bands_stand_behind_the_own_bars(page):
+    app = page(bars="shared band")
+    spec = chart(app)
+    names = [part.get("name") for part in spec["layer"]]
+    assert names.index("shared_bands") < names.index("runs") and "bars_y" in names
+    assert "what a family shares (fluid, material, swimmer), 2 u; more runs do not shrink it" in texts(app)
+    assert "along x a family may move by" in texts(app)
 
 
 def test_the_theory_can_be_taken_away(page):
@@ -177,44 +322,66 @@ from labbook.app import session, trend_figure
 from labbook.app.trend_choices import chosen
 from labbook.book.asking import Question
 from labbook.book.plotting import plot_frame
-choices, _ = chosen()
+registry = session.registry()
+choices, _ = chosen(registry)
 asked = Question(fluids=("sil5000-a",))
-from labbook.charts.dialect_axis import INPUTS
-rows = session.book().ask(plot_frame, asked, choices.x, choices.y, choices.group, also=INPUTS)
-figure = trend_figure.Figure(rows, choices, asked, None, session.book())
+rows = session.book().ask(plot_frame, asked, choices.x, choices.y, choices.group, dialects=choices.dialects)
+figure = trend_figure.Figure(rows, choices, asked, None, session.book(), registry)
 st.session_state["files"] = {"svg": figure.svg(), "png": figure.png(), "csv": figure.csv()}
 """
 
 
-def test_saved_figures_carry_filter_dialect_date_and_book(demo_book, monkeypatch):
-    monkeypatch.setenv("LABBOOK_OPEN", str(demo_book))
-    app = AppTest.from_string(FIGURE, default_timeout=60).run()
-    assert not app.exception
-    files = app.session_state["files"]
-    assert files["png"].startswith(b"\x89PNG")
-    first, header, *rows = files["csv"].decode().splitlines()
+@pytest.fixture
+def files(demo_book, monkeypatch):
+    def saved(book=demo_book, **address):
+        monkeypatch.setenv("LABBOOK_OPEN", str(book))
+        app = AppTest.from_string(FIGURE, default_timeout=60)
+        for name, given in address.items():
+            app.query_params[name] = given
+        app.run()
+        assert not app.exception
+        return app.session_state["files"]
+
+    return saved
+
+
+def test_saved_figures_carry_filter_dialect_date_and_book(files, demo_book):
+    saved = files()
+    assert saved["png"].startswith(b"\x89PNG")
+    first, header, *rows = saved["csv"].decode().splitlines()
     for said in ("in sil5000-a", "power: 1/4", "demo.db", "drawn"):
         assert said in first
-    assert "in sil5000-a" in files["svg"].decode() and "demo.db" in files["svg"].decode()
-    assert header.startswith("code,at,by,swimmer")
+    assert "in sil5000-a" in saved["svg"].decode() and "demo.db" in saved["svg"].decode()
+    assert header.startswith("code,at,by,swimmer") and "dialect" not in header
     (kept,), = by_hand(demo_book, """select count(*) from run join fluid on fluid.id = fluid_id
         where fluid.code = 'sil5000-a' and state = 'kept'""")  # fmt: skip
     assert len(rows) == kept
 
 
-def test_a_csv_in_another_dialect_holds_the_restated_values(demo_book, monkeypatch):
-    monkeypatch.setenv("LABBOOK_OPEN", str(demo_book))
-    app = AppTest.from_string(FIGURE, default_timeout=60)
-    app.query_params["dialect"] = "length L_body"
-    app.run()
-    assert not app.exception
-    first, *table = app.session_state["files"]["csv"].decode().splitlines()
+def test_files_in_another_dialect_hold_the_restated_values_and_say_so(files, demo_book):
+    saved = files(dialect="Sp=length:L_body")
+    first, *table = saved["csv"].decode().splitlines()
     rows = list(csv.DictReader(table))
-    column = "Sp (length L_body)"
-    assert column in rows[0] and f"u_{column}" in rows[0] and "Sp" not in rows[0]
-    assert "L_body (" in first and "house dialect of Sp" not in first
-    house = dict(by_hand(demo_book, "select run.code, Sp * L_body / L_tail from run join resolved on run_id = run.id"))
-    compared = [(float(r[column]), house[r["code"]]) for r in rows if r[column]]
-    assert compared
+    assert {row["dialect"] for row in rows} == {"Sp: length L_body"}
+    assert "dialect length L_body" in first and "Regimes and ranges are read in the house dialect" in first
+    drawn = re.sub(r"<[^>]*>", " ", saved["svg"].decode())
+    assert "L_body (ζ_n ω/EI)^(1/4), dialect length L_body" in drawn
+    restated = "select run.code, Sp * L_body / L_tail from run join resolved on run_id = run.id"
+    house = dict(by_hand(demo_book, restated))
+    compared = [(float(r["Sp"]), house[r["code"]]) for r in rows if r["Sp"]]
+    assert len(compared) > 50
     for given, wanted in compared:  # a ratio of two stored floats: rounding alone
         assert given == pytest.approx(wanted, rel=1e-12)
+
+
+def test_a_number_of_the_groups_own_is_an_axis_and_files_name_its_version(files, demo_copy, page, monkeypatch):
+    own = dict(key="Lm", name="slimness", formula="L_tail / L_body", compares="tail to whole", source="own",
+               example="L_tail = 20 mm, L_body = 25 mm", answer="0.80")  # fmt: skip
+    with Book.open(demo_copy) as book:
+        book.define_number(**own, by="wren")
+        book.define_number(**(own | {"name": "tail's share"}), by="wren", why="a better name")
+    first = files(book=demo_copy, x="Lm")["csv"].decode().splitlines()[0]
+    assert "Lm = L_tail/L_body, tail's share, the group's own number, version 2" in first
+    app = page(x="Lm")
+    assert "Lm = L_tail/L_body, the group's own" in str(layers(chart(app))["runs"]["encoding"]["x"])
+    assert "runs drawn" in texts(app)

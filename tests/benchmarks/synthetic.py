@@ -15,6 +15,7 @@ from labbook.book.run_facts import RunFacts
 from labbook.book.run_rows import stored_rows, write_stored
 from labbook.book.shelf import read_shelf
 from labbook.book.tables import run
+from labbook.registry.group import at_birth
 from labbook.registry.quantities import RUN_KEYS
 
 SPANS = {"f": (0.1, 5.0), "theta0": (0.05, 0.3), "U": (1e-5, 1e-3), "A_tip": (1e-3, 5e-3), "T": (291.0, 298.0),
@@ -74,7 +75,7 @@ def big_book(path: Path, n: int) -> Book:
             part = columns.slice(start, start + BATCH)
             rows = [_facts_row(part, i, start + i + 1) for i in range(len(part))]
             write_many(connection, run, RUN_COLUMNS, [_run_row(r) for r in rows])
-            write_stored(connection, *stored_rows(rows, part, derive(part, shelf)))
+            write_stored(connection, *stored_rows(rows, derive(part, shelf, at_birth())))
     return book
 
 

@@ -13,8 +13,8 @@ from labbook.book.asking import Question
 from labbook.book.derive import BATCH, derive
 from labbook.book.queries import frame, regime_counts
 from labbook.book.shelf import read_shelf
-from labbook.book.stored_view import KEYS
 from labbook.exchange import sheets
+from labbook.registry.group import at_birth
 
 SHEET_ROWS = 100_000
 
@@ -28,7 +28,7 @@ def test_derive(tmp_path):
 
     def ours():
         for start in range(0, RUNS, BATCH):
-            derive(columns.slice(start, start + BATCH), shelf)
+            derive(columns.slice(start, start + BATCH), shelf, at_birth())
 
     strip = np.isin(columns.swimmer, [i for i, s in shelf.swimmers.items() if s.texts["section"] == "strip"])
     glycerol = columns.fluid == next(i for i, f in shelf.fluids.items() if f.code == "gly")
@@ -44,7 +44,7 @@ def test_derive(tmp_path):
     noted("derive one run : pint, one run", mine / RUNS, pint_row, 1 / 200)
     # the hand-written formulas are the same ones: their Sp and ours agree where the fluid does
     block = columns.slice(0, 1000)
-    Sp = derive(block, shelf).floats[:, 3 * KEYS.index("Sp")]
+    Sp = derive(block, shelf, at_birth()).of("Sp")[:, 0]
     own = numbers_by_hand([v[:1000] for v in typed], strip[:1000], glycerol[:1000], oil)["Sp"]
     assert np.allclose(Sp[glycerol[:1000]], own[glycerol[:1000]], rtol=1e-6)
 

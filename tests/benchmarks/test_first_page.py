@@ -11,7 +11,7 @@ import pytest
 from measured import noted
 from playwright.sync_api import sync_playwright
 
-from labbook.api import make_demo
+from labbook.demo import make_demo
 
 _PLACE = Path(__file__).parent.parent / "browser" / "conftest.py"
 _SPEC = importlib.util.spec_from_file_location("browser_fixtures", _PLACE)

@@ -9,9 +9,10 @@ import pytest
 from sqlalchemy import event
 
 from labbook import Book
-from labbook.book import plotting
+from labbook.book import plot_grid, plotting
 from labbook.book.asking import Question
-from labbook.book.plotting import GROUPS, plot_columns, plot_frame
+from labbook.book.plot_source import GROUPS
+from labbook.book.plotting import plot_columns, plot_frame
 from labbook.charts import drawable
 from labbook.errors import Refusal
 
@@ -48,6 +49,88 @@ def test_the_grid_counts_as_the_chart_does_run_by_run(demo, asked, x, y, log):
     assert grid.frame["n"].sum() == len(shown)
 
 
+DIALECTS = (
+    {"Sp": {"rate": "f", "power": 1}},
+    {"Sp": {"coefficient": "eight_pi_mu", "length": "L_body"}, "U_scaled": {"length": "L_body", "rate": "f"}},
+    {"Sp": {"coefficient": "lighthill"}, "U_scaled": {"rate": "f"}},  # needs a helix pitch, which no tail has
+)  # fmt: skip
+
+
+@pytest.mark.parametrize("dialects", DIALECTS, ids=str)
+@pytest.mark.parametrize("asked", QUESTIONS, ids=lambda q: q.in_words())
+@pytest.mark.parametrize(("log", "group"), [(True, "swimmer"), (False, "by"), (True, None)])
+def test_a_grid_in_another_dialect_counts_as_the_chart_does_run_by_run(demo, asked, dialects, log, group):
+    axes = ("Sp", "U_scaled", group)
+    single = demo.ask(plot_frame, asked, *axes, dialects=dialects)
+    grid = demo.ask(plot_frame, asked, *axes, log_x=log, log_y=log, most=0, dialects=dialects)
+    shown, reasons = drawable.split(single.frame, x="Sp", y="U_scaled", log_x=log, log_y=log)
+    for why, runs in single.left_out.items():
+        reasons[why] = reasons.get(why, 0) + runs
+    assert grid.left_out == reasons
+    assert grid.frame["n"].sum() == len(shown)
+    assert single.dialects == grid.dialects and set(grid.dialects) == set(dialects)
+    if len(shown):
+        assert ("lighthill" in str(dialects)) is False
+        told = np.log if log else np.asarray
+        for key in ("Sp", "U_scaled"):
+            # the mean of cell means is that of all runs; the order of a sum of hundreds leaves 1e-12
+            mean = np.average(told(grid.frame[key]), weights=grid.frame["n"])
+            assert mean == pytest.approx(told(shown[key]).mean(), rel=1e-12)
+        if group:
+            counted = grid.frame["n"].groupby(grid.frame[group]).sum().to_dict()
+            assert counted == shown[group].value_counts().to_dict()
+
+
+def test_a_grid_in_another_dialect_stands_at_the_restated_values(demo, demo_book):
+    # physics.md section 9: f for omega and the fourth power are Sp^4/(2 pi), worked here on plain SQL
+    house = dict(by_hand(demo_book, "select run.code, Sp from run join resolved on run_id = run.id"))
+    u = dict(by_hand(demo_book, "select run.code, u_own_Sp from run join resolved on run_id = run.id"))
+    spoken = DIALECTS[0]
+    for most in (0, 5000):
+        found = demo.ask(plot_frame, Question(), "Sp", "U_scaled", "swimmer", most=most, dialects=spoken).frame
+        named = found[found["code"].notna() & found["Sp"].notna()]
+        assert len(named) > 50
+        wanted = np.array([house[c] ** 4 / (2 * math.pi) for c in named["code"]])
+        # exp(log(x)) of a cell loses a last digit
+        assert named["Sp"].to_numpy() == pytest.approx(wanted, rel=1e-12)
+        bars = wanted * 4 * np.array([u[c] / house[c] for c in named["code"]])
+        assert named["u_own_Sp"].to_numpy() == pytest.approx(bars, rel=1e-9)
+    found = demo.ask(plot_frame, Question(), "Sp", "U_scaled", dialects=spoken)
+    assert found.dialects == {"Sp": "rate f, power 1"}
+
+
+def test_a_run_without_a_value_in_a_dialect_is_counted_with_the_reason(demo, demo_book):
+    (have,), = by_hand(demo_book, "select count(Sp) from resolved where state = 'kept'")
+    reason = "no Sp in this dialect (needs a helix pitch)"
+    for most in (0, 5000):
+        found = demo.ask(plot_frame, Question(), "Sp", "U", most=most, dialects=DIALECTS[2])
+        assert found.left_out[reason] == have > 0
+        assert found.dialects == {"Sp": "coefficient lighthill"}, "U has no dialect and U_scaled is not drawn"
+
+
+def test_a_run_without_x_is_counted_as_that_whatever_its_y_lost(demo, demo_book):
+    (without, lost), = by_hand(demo_book, """select sum(U_scaled is null),
+        sum(U_scaled is not null and Sp is not null) from resolved where state = 'kept'""")  # fmt: skip
+    single = demo.ask(plot_frame, Question(), "U_scaled", "Sp", dialects=DIALECTS[2])
+    grid = demo.ask(plot_frame, Question(), "U_scaled", "Sp", most=0, dialects=DIALECTS[2])
+    reason = "no Sp in this dialect (needs a helix pitch)"
+    assert single.left_out[reason] == grid.left_out[reason] == lost > 0
+    told = [why for why in grid.left_out if why.endswith("without U_scaled")]
+    assert sum(grid.left_out[why] for why in told) == without > 0
+
+
+def test_the_house_dialect_by_any_words_is_counted_by_the_database(demo, monkeypatch):
+    monkeypatch.setattr(plotting, "dialect_grid", None)  # would raise if it were called
+    house = {"Sp": {"rate": "omega"}, "Re": {"length": "L_tail"}}  # Re is on no axis
+    grid = demo.ask(plot_frame, Question(), "Sp", "U_scaled", most=0, dialects=house)
+    assert grid.binned and grid.dialects == {}
+
+
+def test_an_unknown_dialect_is_refused(demo):
+    with pytest.raises(Refusal):
+        demo.ask(plot_frame, Question(), "Sp", "U", dialects={"Sp": {"rate": "rpm"}})
+
+
 def test_a_small_answer_is_given_run_by_run_and_a_large_one_on_a_grid(demo):
     assert not demo.ask(plot_frame, Question(), "Sp", "U_scaled").binned
     assert demo.ask(plot_frame, Question(), "Sp", "U_scaled", most=100).binned
@@ -82,7 +165,7 @@ def test_no_two_cells_of_a_group_lie_in_one_place(demo):
     grid = demo.ask(plot_frame, Question(), "Sp", "U_scaled", "fluid", most=0).frame
     span = [np.log(grid[k]) for k in ("Sp", "U_scaled")]
     cells = [np.floor((s - s.min()) / (np.ptp(s) * (1 + 1e-9)) * n)
-             for s, n in zip(span, (plotting.COLUMNS, plotting.ROWS), strict=True)]  # fmt: skip
+             for s, n in zip(span, (plot_grid.COLUMNS, plot_grid.ROWS), strict=True)]  # fmt: skip
     # the means of the outermost cells shift the grid a little: a cell may be split over that edge, not more
     assert len(set(zip(grid["fluid"], *cells, strict=True))) > 0.9 * len(grid)
     assert len(grid) > 100
@@ -151,7 +234,7 @@ def test_the_plot_of_every_run_reads_nothing_but_its_index(demo, demo_book):
 
 def test_sqlite_without_mathematics_gives_the_same(demo, monkeypatch):
     builtin = demo.ask(plot_frame, Question(), "Sp", "U_scaled", "swimmer", most=0)
-    monkeypatch.setattr(plotting, "_MATHEMATICS", "an option that no SQLite has")
+    monkeypatch.setattr(plot_grid, "_MATHEMATICS", "an option that no SQLite has")
     taught = demo.ask(plot_frame, Question(), "Sp", "U_scaled", "swimmer", most=0)
     assert taught.left_out == builtin.left_out
     assert taught.frame["n"].tolist() == builtin.frame["n"].tolist()

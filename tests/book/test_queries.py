@@ -14,7 +14,7 @@ from click.testing import CliRunner
 from labbook import Refusal
 from labbook.book.asking import Question, holds
 from labbook.book.queries import count, ledger_lines, regime_counts
-from labbook.book.stored_view import KEYS
+from labbook.book.stored_view import BIRTH_KEYS as KEYS
 from labbook.cli import main
 from labbook.exchange.outward import frame_as_csv
 from labbook.registry.catalogue import NUMBERS

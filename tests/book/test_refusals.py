@@ -157,7 +157,7 @@ def test_kinds_that_do_not_stand_on_the_shelf(stocked, counts):
 def test_a_handle_is_needed(stocked, counts, monkeypatch, by):
     before = counts(stocked)
     monkeypatch.delenv("LABBOOK_BY")
-    monkeypatch.setattr("labbook.api.getpass.getuser", lambda: "")
+    monkeypatch.setattr("labbook.places.getpass.getuser", lambda: "")
     with pytest.raises(Refusal, match="a handle of 1 to 64 characters is needed"):
         stocked.record(**RUN, by=by)
     assert counts(stocked) == before
@@ -168,7 +168,7 @@ def test_a_user_without_a_name_is_asked_who(stocked, monkeypatch):
         raise KeyError("getpwuid(): uid not found: 12345")
 
     monkeypatch.delenv("LABBOOK_BY")
-    monkeypatch.setattr("labbook.api.getpass.getuser", nobody)
+    monkeypatch.setattr("labbook.places.getpass.getuser", nobody)
     with pytest.raises(Refusal, match="say who you are with --by"):
         stocked.record(**RUN)
 

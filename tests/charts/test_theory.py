@@ -1,4 +1,4 @@
-"""The trend's curve and the sperm number's dialects, against the physics and the registry's answers."""
+"""The trend's curve in every dialect that it has, against the physics and worked values."""
 
 import math
 
@@ -6,10 +6,9 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from labbook.charts.dialect_axis import dialect_title, dialects, restated_frame
-from labbook.charts.theory import tail_curve
+from labbook.charts.theory import tail_curve, why_no_curve
 from labbook.physics import tails
-from labbook.registry.dialects import DIALECTS
+from labbook.registry.dialects import AT_BIRTH
 
 SWIMMER = {"L_tail": 0.030, "b": 3e-3, "mu": 5.0, "zeta_n": 18.0, "zeta_t": 12.0}
 
@@ -43,25 +42,51 @@ def test_without_such_runs_there_is_no_curve():
     assert tail_curve(pd.DataFrame([{"drive": "free_head_angle", **SWIMMER}]), 0.0, 2.0).empty
 
 
-@pytest.mark.parametrize("dialect", DIALECTS, ids=lambda d: dialect_title(d))
-def test_an_axis_shows_the_value_that_the_dialects_source_gives(dialect):
-    # answers of the registry's rows, recomputed independently of the package; 2 % on the house value as u
-    house = next(d for d in DIALECTS if not d.choices).answer
-    inputs = {**dialect.example, "w": np.nan, "t": np.nan}
-    if dialect.choices:
-        inputs["zeta_n"] = DIALECTS[0].example["zeta_n"]
-    frame = pd.DataFrame([{**inputs, "Sp": house, "u_Sp": 0.02 * house, "u_own_Sp": 0.01 * house}])
-    spoken = restated_frame(frame, dialect).iloc[0]
-    # the answers carry five or six figures
-    assert spoken["Sp"] == pytest.approx(dialect.answer, rel=4e-5)
-    power = 4 if dialect.choices.get("power") == 1 else 1
-    assert spoken["u_Sp"] / spoken["Sp"] == pytest.approx(0.02 * power, rel=1e-12)
-    assert spoken["u_own_Sp"] / spoken["Sp"] == pytest.approx(0.01 * power, rel=1e-12)
+SPOKEN = {"Sp": {"length": "L_tail", "rate": "f", "coefficient": "cylinder_finite", "power": 1},
+          "U_scaled": {"length": "L_tail", "rate": "f"}}  # fmt: skip
 
 
-def test_every_dialect_has_words_and_a_title_of_its_own():
-    named = dialects()
-    assert len(named) == len(DIALECTS) and next(iter(named)) == "house"
-    titles = {dialect_title(d) for d in DIALECTS}
-    assert len(titles) == len(DIALECTS)
-    assert sum("house dialect" in t and "not" not in t for t in titles) == 1
+def test_the_curve_in_other_rates_and_powers_goes_through_the_same_swimmer():
+    runs = pd.DataFrame([{"drive": "free_head_angle", **SWIMMER}])
+    f, EI, theta0 = 0.3, 1e-7, 0.2
+    U = tails.free_speed(drive="free_head_angle", L=0.030, a=5e-4, EI=EI, mu=5.0, f=f, theta0=theta0, b=3e-3,
+                         zeta_n=18.0, zeta_t=12.0)  # fmt: skip
+    first = 18.0 * f * 0.030**4 / EI  # zeta_n f L^4/EI, as the dialect's row has it
+    curve = tail_curve(runs, first, 2 * first, spoken=SPOKEN)
+    assert curve["x"].iloc[[0, -1]].tolist() == pytest.approx([first, 2 * first], rel=1e-12)
+    assert curve["y"].iloc[0] == pytest.approx(U / (f * 0.030 * theta0**2), rel=1e-9)
+
+
+@pytest.mark.parametrize(("Sp", "U_scaled"), [
+    (1.0, 1.67386937e-03), (2.0, 1.56952783e-02), (3.0, 7.64872873e-03), (4.0, 4.14155887e-03),
+])  # fmt: skip
+def test_the_curve_in_a_house_of_another_drag_model_is_the_worked_one(Sp, U_scaled):
+    # physics.md section 8, the table for b/L = 0.1, L/a = 100; its coefficients as section 5 writes them
+    mu = 1.0
+    swimmer = {"L_tail": 0.030, "b": 3e-3, "mu": mu, "zeta_t": 2 * math.pi * mu / (math.log(100) - 0.5),
+               "zeta_n": 4 * math.pi * mu / (math.log(100) + 0.5)}  # fmt: skip
+    runs = pd.DataFrame([{"drive": "free_head_angle", **swimmer}])
+    own = {"Sp": AT_BIRTH["Sp"] | {"coefficient": "spheroid_asymptotic"}, "U_scaled": AT_BIRTH["U_scaled"]}
+    curve = tail_curve(runs, Sp, 2 * Sp, spoken=own, coefficient="spheroid_asymptotic")
+    assert curve["y"].iloc[0] == pytest.approx(U_scaled, rel=1e-8)  # the table has nine figures
+    moved = own | {"Sp": own["Sp"] | {"power": 1}}
+    curve = tail_curve(runs, Sp**4, 2 * Sp**4, spoken=moved, coefficient="spheroid_asymptotic")
+    assert curve["y"].iloc[0] == pytest.approx(U_scaled, rel=1e-8)
+
+
+@pytest.mark.parametrize(("number", "name", "option"), [
+    ("Sp", "length", "L_body"), ("Sp", "coefficient", "mu"), ("Sp", "coefficient", "spheroid_asymptotic"),
+    ("U_scaled", "length", "L_body"),
+])  # fmt: skip
+def test_there_is_no_curve_where_each_swimmer_would_have_one_of_its_own(number, name, option):
+    spoken = SPOKEN | {number: SPOKEN[number] | {name: option}}
+    assert option in why_no_curve("cylinder_finite", spoken) and number in why_no_curve("cylinder_finite", spoken)
+    runs = pd.DataFrame([{"drive": "free_head_angle", **SWIMMER}])
+    assert tail_curve(runs, 1.0, 2.0, spoken=spoken).empty
+    assert why_no_curve("cylinder_finite", SPOKEN) == ""
+
+
+def test_there_is_no_curve_without_a_zeta_t_of_the_same_model():
+    # log_slender is 4 pi mu/ln(L/a), for zeta_n alone
+    spoken = SPOKEN | {"Sp": SPOKEN["Sp"] | {"coefficient": "log_slender"}}
+    assert "zeta_n alone" in why_no_curve("log_slender", spoken)

@@ -10,7 +10,7 @@ import vl_convert
 from labbook.charts import drawable, palette
 from labbook.charts.trend import trend
 from labbook.errors import Refusal
-from labbook.registry.regimes import REGIMES, Regime
+from labbook.registry.regimes import REGIMES, Band, Regime
 
 AXES = dict(x="Sp", y="U_scaled")
 
@@ -79,6 +79,116 @@ def test_colour_and_shape_share_one_legend(samples, options):
     for part in spec["layer"]:
         if part["name"] != "runs":
             assert not {"fill", "color", "stroke", "shape"} & part.get("encoding", {}).keys()
+
+
+def family(count, shared=0.04, swimmer="reed-01", seed=3):
+    """Runs of one family along a line, their y scattered by the run's own 10 %."""
+    random = np.random.default_rng(seed)
+    x = np.geomspace(1.0, 8.0, count)
+    frame = pd.DataFrame({"code": [f"{swimmer}-{i}" for i in range(count)], "state": "kept", "Sp": x})
+    frame["swimmer"] = swimmer
+    frame["U_scaled"] = 0.01 * np.exp(random.normal(0, 0.1, count))
+    for key, own, part in (("Sp", 0.0, 0.02), ("U_scaled", 0.1, shared)):
+        frame[f"u_own_{key}"], frame[f"u_shared_{key}"] = own * frame[key], part * frame[key]
+        frame[f"u_{key}"] = np.hypot(own, part) * frame[key]
+    return frame
+
+
+BANDED = dict(AXES, group="swimmer", bars="shared band")
+
+
+def test_a_shared_band_lies_two_u_around_each_point_of_a_small_family(samples):
+    frame = family(6).sample(frac=1, random_state=1)
+    drawing = trend(frame, **BANDED)
+    rows = samples.rows(drawing.chart.to_dict(), "shared_bands")
+    for row, run in zip(rows, frame.sort_values("Sp").itertuples(), strict=True):
+        # five digits are drawn
+        assert row["x"] == pytest.approx(run.Sp, rel=1e-4)
+        assert (row["low"], row["high"]) == pytest.approx((run.U_scaled * 0.92, run.U_scaled * 1.08), rel=1e-4)
+    assert drawing.caption.endswith(
+        "Bars: the run's own part of one standard uncertainty. Bands: what a family shares (fluid, material, "
+        "swimmer), 2 u; more runs do not shrink it. Here 2 u is 8 % of U/(ω L_tail θ₀²); along x a family may "
+        "move by 4 % of Sp."
+    )
+
+
+@pytest.mark.parametrize("count", [24, 240, 2400])
+def test_a_shared_band_does_not_shrink_with_the_number_of_runs(samples, count):
+    rows = samples.rows(trend(family(count), **BANDED).chart.to_dict(), "shared_bands")
+    half = [(row["high"] - row["low"]) / (row["high"] + row["low"]) for row in rows]
+    # u is 4 % of y; a stretch has the mean square of u around a median y, and y scatters by 10 %
+    assert len(half) == 12 and half == pytest.approx([0.08] * 12, rel=0.15)
+    middle = np.log([(row["high"] + row["low"]) / 0.02 for row in rows])
+    # its middle settles: a median of n has 1.25 times the 10 %/sqrt(n) of a mean; 12 draws, so twice that
+    assert np.sqrt(np.mean(middle**2)) < 2 * 0.125 / np.sqrt(count / 12)
+
+
+def test_a_family_of_few_points_has_bars_of_the_bands_width(samples):
+    families = [family(8), family(1, swimmer="reed-02"), family(2, swimmer="reed-03")]
+    frame = pd.concat(families, ignore_index=True)
+    spec = trend(frame, **BANDED).chart.to_dict()
+    assert {row["family"] for row in samples.rows(spec, "shared_bands")} == {"reed-01"}
+    bars = samples.rows(spec, "shared_bars")
+    assert sorted(row["family"] for row in bars) == ["reed-02", "reed-03", "reed-03"]
+    run = frame[frame["swimmer"] == "reed-02"].iloc[0]
+    (bar,) = [row for row in bars if row["family"] == "reed-02"]
+    assert (bar["low"], bar["high"]) == pytest.approx((run.U_scaled * 0.92, run.U_scaled * 1.08), rel=1e-4)
+
+
+@pytest.mark.parametrize("dark", [True, False])
+def test_shared_bands_lie_behind_the_marks_in_the_familys_hue_with_one_legend(samples, dark):
+    frame = pd.concat([family(30), family(30, swimmer="reed-02", seed=4), family(1, swimmer="reed-03")])
+    spec = trend(frame.reset_index(), **BANDED, dark=dark).chart.to_dict()
+    names = [part["name"] for part in spec["layer"]]
+    looks = palette.series(dark)
+    for name in ("shared_bands", "shared_bars"):
+        assert names.index("bands_x") < names.index(name) < names.index("bars_y") < names.index("runs")
+        assert samples.layer(spec, name)["mark"]["clip"] is True
+        for row in samples.rows(spec, name):
+            assert row["hue"] == looks[int(row["family"][-1]) - 1].colour
+        assert not {"fill", "color", "stroke", "shape"} & samples.layer(spec, name)["encoding"].keys()
+    for version in ("5.20", "6.4"):
+        assert len(vl_convert.vegalite_to_vega(json.dumps(spec), vl_version=version)["legends"]) == 1
+
+
+def test_vega_fills_each_familys_band_in_its_own_hue(samples):
+    frame = pd.concat([family(30), family(30, swimmer="reed-02", seed=4)]).reset_index()
+    spec = trend(frame, **BANDED, width=400, height=300).chart.to_dict()
+    scene = vl_convert.vegalite_to_scenegraph(json.dumps(spec), vl_version="6.4")
+    fills = [area["fill"] for area in _every_mark_named(scene, "shared_bands_marks")]
+    assert set(fills) == {s.colour for s in palette.series(False)[:2]}
+
+
+def _every_mark_named(node, name):
+    if isinstance(node, list):
+        return [mark for part in node for mark in _every_mark_named(part, name)]
+    if not isinstance(node, dict):
+        return []
+    return node["items"] if node.get("name") == name else _every_mark_named(list(node.values()), name)
+
+
+def test_without_a_group_the_whole_is_one_family_and_other_is_none(samples):
+    spec = trend(samples.runs(300), **AXES, bars="shared band").chart.to_dict()
+    assert {row["family"] for row in samples.rows(spec, "shared_bands")} == {""}
+    spec = trend(samples.runs(400, 12), **BANDED).chart.to_dict()
+    assert "other" not in {row["family"] for row in samples.rows(spec, "shared_bands")}
+
+
+def test_a_shared_band_that_reaches_zero_ends_below_the_frame(samples):
+    spec = trend(family(6, shared=0.8), **BANDED).chart.to_dict()
+    floor = samples.layer(spec, "runs")["encoding"]["y"]["scale"]["domain"][0]
+    assert all(0 < row["low"] < floor for row in samples.rows(spec, "shared_bands"))
+    level = trend(family(6, shared=0.8), **BANDED, log_y=False).chart.to_dict()
+    assert all(row["low"] < 0 for row in samples.rows(level, "shared_bands"))
+
+
+def test_where_nothing_is_shared_or_runs_are_counted_on_a_grid_that_is_said(samples):
+    bare = trend(family(6, shared=0.0), **BANDED)
+    assert "nothing of U/(ω L_tail θ₀²) is shared" in bare.caption
+    grid = trend(binned(samples, 1000, 10), **AXES, bars="shared band")
+    assert "No shared bands on a grid of many runs" in grid.caption
+    for drawing in (bare, grid):
+        assert not [p["name"] for p in drawing.chart.to_dict()["layer"] if p["name"].startswith("shared")]
 
 
 def test_more_than_seven_groups(samples):
@@ -249,7 +359,7 @@ def test_bands_of_the_registry_stand_at_their_limits(samples):
 
 
 def test_bands_follow_the_rows_given(samples):
-    own = [Regime("ours", "Sp", 2.0, 3.0, "common practice, no source"), REGIMES["cruising"]]
+    own = [Regime("ours", (Band("Sp", 2.0, 3.0),), "common practice, no source"), REGIMES["cruising"]]
     spec = trend(samples.runs(50), **AXES, regimes=own).chart.to_dict()
     assert [(r["name"], r["low"], r["high"]) for r in samples.rows(spec, "bands_x")] == [("ours", 2.0, 3.0)]
     bare = trend(samples.runs(50), **AXES, bands=False).chart.to_dict()

@@ -8,7 +8,7 @@ import openpyxl
 import pytest
 
 from labbook import Book, LabbookError, Refusal, Refusals
-from labbook.api import demo_folder
+from labbook.demo import demo_folder
 from labbook.exchange.sheets import counted, read_tables
 
 HEADER = "swimmer,fluid,at,f [Hz],T [degC],U [mm/s]\n"
