@@ -6,6 +6,7 @@ from pathlib import Path
 import pandas as pd
 
 from labbook.book import (
+    attaching,
     checking,
     copying,
     defining,
@@ -23,7 +24,7 @@ from labbook.book.dialect_columns import Dialects
 from labbook.book.loading import Loaded, Progress
 from labbook.book.registry_rows import registry_of
 from labbook.errors import Refusal
-from labbook.exchange import sheets
+from labbook.exchange import sheets, track_reducing
 from labbook.exchange.collector import paused_collector
 from labbook.places import current_handle, default_book
 from labbook.registry.group import Registry
@@ -164,6 +165,16 @@ class Book:
         return loading.load(
             self.engine, rows, by, subject=subject, refused=refused, confirm=confirm, progress=progress
         )
+
+    def attach_track(
+        self, code: str, content: bytes, name: str, settings: Mapping | None = None,
+        accept: Sequence[str] = ("U", "A_tip", "f"), *, by: str | None = None, why: str | None = None,
+    ):  # fmt: skip
+        """Reduce a track file for a run, attach it and return the Reduction; settings as track_reducing has them."""
+        given = attaching.conditions(self.engine, code)
+        found, made_with = track_reducing.reduce_track(content, name, settings or {}, given)
+        attaching.attach(self.engine, code, content, name, found, made_with, accept, by or current_handle(), why)
+        return found
 
     # ---- questions
 

@@ -15,6 +15,7 @@ from labbook.book.records import KINDS
 from labbook.book.stocking import stock
 from labbook.cli_ask import draw, numbers, runs
 from labbook.cli_print import Bar, by_option, cells_of
+from labbook.cli_reduce import reduce
 from labbook.cli_registry import budget, dialect, number, published, regime
 from labbook.demo import make_demo
 from labbook.errors import LabbookError, Refusal, Unconfirmed
@@ -236,5 +237,5 @@ def load(book: str, sheet: str, by: str | None, confirm: bool) -> None:
     click.echo(str(loaded))
 
 
-for _command in (runs, numbers, draw, number, regime, dialect, published, budget):
+for _command in (runs, numbers, draw, reduce, number, regime, dialect, published, budget):
     main.add_command(_command)

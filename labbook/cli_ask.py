@@ -8,11 +8,13 @@ import pandas as pd
 from labbook.api import Book
 from labbook.book.asking import Question, check_key
 from labbook.book.clock import local, now
+from labbook.book.published_points import points
 from labbook.book.queries import key_counts, refuse_unknown, regime_counts
 from labbook.charts.axes import house_words
 from labbook.charts.dialect_axis import dialect_title
 from labbook.charts.files import save
 from labbook.charts.trend import trend
+from labbook.charts.trend_shared import SHARED
 from labbook.cli_print import TABLE_KEYS, aligned, runs_table
 from labbook.errors import Refusal
 from labbook.exchange.outward import frame_as_csv, sheets_as_json
@@ -20,6 +22,7 @@ from labbook.registry.catalogue import Number
 from labbook.registry.dialects import CHOICES, DIALECTS, read_choices, written_choices
 from labbook.registry.group import Registry
 
+BARS_BY_WORD = {"own": "own", "shared": "shared", "total": "total", "band": SHARED, "none": "none"}
 _dialect = click.option(
     "--dialect", "dialects", multiple=True, metavar="NUMBER=choice:option,...",
     help="Restate a number, e.g. Sp=rate:f,power:1; may repeat. Ranges and regimes stay in the house dialect.",
@@ -142,14 +145,19 @@ def _number_row(row: Number, registry: Registry, runs: int) -> dict:
 @click.option("-o", "--output", required=True, type=click.Path(), help="fig.svg or fig.png")
 @click.option("--colour", type=click.Choice(["swimmer", "fluid", "material", "by", "series"]), default="swimmer",
               show_default=True)  # fmt: skip
-@click.option("--bars", type=click.Choice(["own", "total", "none"]), default="own", show_default=True)
+@click.option("--bars", type=click.Choice(list(BARS_BY_WORD)), default="own", show_default=True,
+              help="Own, shared or all of u; band: own bars, and how far each group may move together.")  # fmt: skip
+@click.option("--no-published", is_flag=True, help="Without the points that others printed.")
 @click.option("--linear", is_flag=True, help="Linear axes instead of logarithmic ones.")
 @_dialect
 @_question_options
 def draw(
-    book: str, x: str, y: str, output: str, colour: str, bars: str, linear: bool, dialects: tuple[str, ...], **options
-) -> None:
-    """Draw one number or quantity against another into a file, e.g. draw bench.db Sp stride -o fig.svg."""
+    book: str, x: str, y: str, output: str, colour: str, bars: str, no_published: bool, linear: bool,
+    dialects: tuple[str, ...], **options,
+) -> None:  # fmt: skip
+    """Draw one number or quantity against another into a file, e.g. draw bench.db Sp stride -o fig.svg.
+
+    Published points of both numbers are drawn beside the runs, restated to the figure's dialects."""
     question, spoken = _question(**options), _dialects(dialects)
     with Book.open(book) as opened:
         registry = opened.registry
@@ -162,9 +170,11 @@ def draw(
                   for axis, k in (("x", x), ("y", y)) if k in away}
         # bands are read in the house dialect
         regimes = [r for r in registry.regimes.values() if not set(r.numbers) & set(away)]
-        drawn = trend(table, x=x, y=y, group=colour, log_x=not linear, log_y=not linear, bars=bars, width=760,
-                      height=520, numbers=registry.numbers, regimes=regimes, **titles)  # fmt: skip
-        if not drawn.drawn:
+        others = None if no_published else opened.ask(points, x, y, spoken)
+        drawn = trend(table, x=x, y=y, group=colour, log_x=not linear, log_y=not linear, bars=BARS_BY_WORD[bars],
+                      width=760, height=520, numbers=registry.numbers, regimes=regimes, published=others,
+                      **titles)  # fmt: skip
+        if not drawn.drawn + drawn.published:
             raise Refusal("draw", f"{x} {y}", "no run that was found has both", "look at `labbook runs`")
         try:
             said = (f"{question.in_words()}.", drawn.caption, *(f"{t}." for t in titles.values()),
@@ -173,5 +183,8 @@ def draw(
         except OSError as error:
             raise Refusal("output", output, f"cannot be written ({error.strerror})") from None
     click.echo(f"{drawn.drawn} runs drawn into {output}")
+    if others is not None and (n := len(others) + sum(others.attrs["lost"].values())):
+        rest = f", {n - drawn.published} not: the figure says why" if n > drawn.published else ""
+        click.echo(f"{drawn.published} published points drawn beside them{rest}")
     for why, n in drawn.left_out.items():
         click.echo(f"{n} not drawn: {why}")

@@ -77,9 +77,12 @@ def dialect(book: str, choices: str, why: str | None, by: str | None) -> None:
     lines.append(["dialect", *(written_choices(key, side["choices"]) for side in (before, after))])
     for name in ("lowest", "highest"):
         lines.append([f"{name} {key}", *(written(side[name], None) or "-" for side in (before, after))])
+    lines.append(["runs derived again", "", str(after["derived runs"])])
     for name in after["regimes"]:
         lines.append([name, *(str(side["regimes"].get(name, 0)) for side in (before, after))])
     click.echo(aligned(lines, text_columns=1))
+    if "changed with it" in after:
+        click.echo(f"changed with it: {after['changed with it']}")
 
 
 @click.command()

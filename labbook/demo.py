@@ -1,5 +1,6 @@
 """The demo book: the invented group of seeds_demo, loaded as a group would load and amend it."""
 
+import csv
 from pathlib import Path
 
 from labbook.api import Book
@@ -15,7 +16,7 @@ def demo_folder() -> Path:
 
 
 def make_demo(target: Path, progress: Progress = lambda what, n: None) -> Book:
-    """Make the demo book: the shelf folder loaded, then a few entries amended as a group would."""
+    """Make the demo book: the shelf folder loaded, tracks attached, some entries amended as a group would."""
     target.parent.mkdir(parents=True, exist_ok=True)
     part = target.with_name(target.name + ".part")
     for name in (part, Path(f"{part}-wal"), Path(f"{part}-shm")):
@@ -23,6 +24,7 @@ def make_demo(target: Path, progress: Progress = lambda what, n: None) -> Book:
     book = Book.new(part)
     try:
         book.load(demo_folder(), by="sable", progress=progress)
+        _attach_tracks(book, progress)
         _amend_demo(book)
     except LabbookError:
         book.close()
@@ -32,6 +34,26 @@ def make_demo(target: Path, progress: Progress = lambda what, n: None) -> Book:
     for name in (part, Path(f"{part}-wal"), Path(f"{part}-shm")):
         name.unlink(missing_ok=True)
     return Book.open(target)
+
+
+def _attach_tracks(book: Book, progress: Progress) -> None:
+    """Each file of tracks/ to the run it is named after, by the person who logged that run."""
+    folder = demo_folder() / "tracks"
+    runs = book.runs(columns=("f",))
+    people = dict(zip(runs["code"], runs["by"], strict=True))
+    with open(folder / "settings.csv", encoding="utf-8", newline="") as file:
+        rows = list(csv.DictReader(file))
+    for row in rows:
+        code = Path(row["file"]).stem
+        settings = {"axis": row["axis [deg]"], "drift": row["drift"], "columns": _columns(row["columns"])}
+        content = (folder / row["file"]).read_bytes()
+        book.attach_track(code, content, row["file"], settings, by=people[code])
+        progress("reducing tracks", 1)
+
+
+def _columns(text: str) -> dict[str, str]:
+    """{role: header} from 'x=X_head,y=Y_head'."""
+    return dict(one.split("=", 1) for one in text.split(",") if one)
 
 
 def _amend_demo(book: Book) -> None:

@@ -215,15 +215,15 @@ SWIMMERS = (
 
 RIGS = (
     dict(code="coil-1", kind="Helmholtz pair, oscillating", turns="120", radius="95", current_to_B="1.12(1)",
-         scale="21.4(1)", fps="30", u_f="0.001", u_theta0="0.006", u_B="0.03", u_T="0.15",
+         scale="21.4(1)", fps="30.000(3)", u_f="0.001", u_theta0="0.006", u_B="0.03", u_T="0.15",
          calibrated="2025-11-20", note="check coil temperature after 30 min"),
     dict(code="coil-2", kind="three coil pairs, rotating", turns="140", radius="120", current_to_B="1.04(1)",
-         scale="26.8(2)", fps="60", u_f="0.001", u_theta0="0.006", u_B="0.04", u_T="0.15",
+         scale="26.8(2)", fps="60.000(6)", u_f="0.001", u_theta0="0.006", u_B="0.04", u_T="0.15",
          calibrated="2025-12-04"),
-    dict(code="tank-1", kind="motor, swimming tank", scale="182(1)", fps="120", u_f="0.01", u_theta0="0.02",
-         u_T="0.2", calibrated="2026-01-22"),
-    dict(code="bench-1", kind="motor, oil tank", scale="24.9(2)", fps="25", u_f="0.002", u_theta0="0.01",
-         u_T="0.15", calibrated="2025-12-12", note="for hinged bodies"),
+    dict(code="tank-1", kind="motor, swimming tank", scale="182(1)", fps="120.00(2)", u_f="0.01",
+         u_theta0="0.02", u_T="0.2", calibrated="2026-01-22"),
+    dict(code="bench-1", kind="motor, oil tank", scale="24.9(2)", fps="25.000(3)", u_f="0.002",
+         u_theta0="0.01", u_T="0.15", calibrated="2025-06-30", note="for hinged bodies"),
 )
 
 

@@ -87,7 +87,10 @@ class Bench:
         return True
 
     def trial(self, moment, by, swimmer, fluid, rig, f, theta0=None, series="", B=None, A_tip=None):
-        """One trial; returns False, and writes nothing, where its values would look out of place."""
+        """One trial; returns False, and writes nothing, where its values would look out of place.
+
+        A row's truth, (U in m/s, A_tip in m or None, f in Hz), is for demo_tracks: no sheet has that column.
+        """
         rng, day = self.rng, moment.date()
         T = self.T = self.T + 0.03 * rng.standard_normal()
         actual = None if theta0 is None else theta0 * (1.0 + 0.015 * rng.standard_normal())
@@ -112,7 +115,8 @@ class Bench:
             self.seen.setdefault(swimmer.code, []).append((seen, Re, Sp))
         row = dict(swimmer=swimmer.code, fluid=fluid.code, rig=rig, at=f"{moment:%Y-%m-%dT%H:%M}", by=by,
                    f=cells.frequency(by, f, swimmer.form == "helix"), series=series,
-                   drive="field" if swimmer.form == "helix" else "", state="void" if void else "")
+                   drive="field" if swimmer.form == "helix" else "", state="void" if void else "",
+                   truth=(U, tip, f))
         if theta0 is not None and rng.random() > 0.04:
             row["theta0"] = cells.angle(by, theta0, 0.006)
         if has_T:

@@ -1,12 +1,14 @@
-"""Writes the demo's shelf folder beside this file: an invented group, its shelf and a year of trials.
+"""Writes the demo's shelf folder beside this file: an invented group's shelf, year, tracks, others' points.
 
-Run `python seeds_demo/make_demo.py` with labbook installed; the same sheets come out each time.
+Run `python seeds_demo/make_demo.py` with labbook installed; the same sheets and tracks come out each time.
 """
 
 import csv
 from pathlib import Path
 
+import demo_published as published
 import demo_shelf as shelf
+import demo_tracks as tracks
 import demo_trials as trials
 import numpy as np
 
@@ -23,6 +25,8 @@ HEADINGS = {
     "runs": ("swimmer", "fluid", "rig", "at", "by", "f [Hz]", "drive", "theta0 [rad]", "B [mT]", "I_coil [A]",
              "T [degC]", "T_end [degC]", "U [mm/s]", "A_tip [mm]", "h_wall [mm]", "series", "state", "why",
              "note"),
+    "published": ("series", "citation", "x", "x_value", "x_dialect", "y", "y_value", "y_dialect", "L_tail [mm]",
+                  "L_body [mm]", "d [mm]", "note"),
 }
 SIZES = {"rod": ("d",), "strip": ("w", "t"), "tube": ("D", "d_in"), "": ()}
 
@@ -62,17 +66,20 @@ def sheets():
         "swimmers": [swimmer_row(swimmer) for swimmer in shelf.SWIMMERS],
         "rigs": list(shelf.RIGS),
         "runs": trials.runs(np.random.default_rng(SEED + 1)),
+        "published": list(published.POINTS),
     }
 
 
 def main():
     folder = Path(__file__).resolve().parent
-    for name, rows in sheets().items():
+    written = sheets()
+    for name, rows in written.items():
         with open(folder / f"{name}.csv", "w", encoding="utf-8", newline="") as file:
             writer = csv.writer(file, lineterminator="\n")
             writer.writerow(HEADINGS[name])
             for row in rows:
                 writer.writerow([row.get(heading.split(" [")[0], "") for heading in HEADINGS[name]])
+    tracks.write(folder / "tracks", written["runs"], SEED)
 
 
 if __name__ == "__main__":

@@ -3,6 +3,7 @@
 import csv
 import io
 import json
+import re
 
 import pytest
 from click.testing import CliRunner
@@ -133,6 +134,43 @@ def test_published_points_are_entered_and_withdrawn(bench):
     assert run("published", bench, *point).stdout == "pond-2019\n"
     assert "no number" in run("published", bench, *point[:2], "x=Bo", *point[3:], code=1).stderr
     assert "withdrawn" in run("published", bench, "series=pond-2019", "--withdraw", "--why", "error").stdout
+
+
+class TestFigures:
+    POINT = ("series=pond-2019", "citation=Pond & Weir (2019), invented", "x=Sp", "x_value=2.0(1)", "x_dialect=rate:f",
+             "y=stride", "y_value=0.01")  # fmt: skip
+
+    def drawn(self, bench, tmp_path, *options):
+        """What the command says, and the words of the figure."""
+        figure = tmp_path / "fig.svg"
+        said = run("draw", bench, "Sp", "stride", "-o", figure, *options).stdout
+        return said, " ".join(re.sub(r"<[^>]*>", " ", figure.read_text(encoding="utf-8")).split())
+
+    def test_published_points_are_drawn_beside_the_runs_and_not_counted(self, bench, tmp_path):
+        bare, _ = self.drawn(bench, tmp_path)
+        run("published", bench, *self.POINT)
+        said, words = self.drawn(bench, tmp_path)
+        assert said.splitlines()[0] == bare.splitlines()[0] and said.startswith("3 runs drawn")
+        assert "1 published points drawn beside them" in said
+        assert "pond-2019 (Pond &amp; Weir (2019), invented), 1 point" in words
+        without, words = self.drawn(bench, tmp_path, "--no-published")
+        assert without == bare and "pond-2019" not in words
+
+    def test_those_without_a_value_in_the_dialect_are_told(self, bench, tmp_path):
+        run("published", bench, *self.POINT)
+        said, words = self.drawn(bench, tmp_path, "--dialect", "Sp=length:L_body")
+        assert "0 published points drawn beside them, 1 not: the figure says why" in said
+        assert "1 published point not drawn: no Sp in this dialect (needs L_body)" in words
+
+    @pytest.mark.parametrize(("bars", "said"), [
+        ("own", "Bars: the run's own part of one standard uncertainty"),
+        ("shared", "Bars: the shared part of one standard uncertainty"), ("total", "Bars: one standard uncertainty"),
+        ("band", "Bands: what runs of one swimmer share at most (fluid, material, swimmer, rig), 2 u"), ("none", ""),
+    ])  # fmt: skip
+    def test_every_kind_of_bars(self, bench, tmp_path, bars, said):
+        _, words = self.drawn(bench, tmp_path, "--bars", bars)
+        assert said in words and ("Bars:" in words) == (bars != "none") and ("Bands:" in words) == (bars == "band")
+        run("draw", bench, "Sp", "stride", "-o", tmp_path / "fig.svg", "--bars", "some", code=2)
 
 
 def test_a_budget_names_what_to_measure_better(bench):

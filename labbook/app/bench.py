@@ -3,7 +3,7 @@
 import streamlit as st
 
 from labbook.api import Book
-from labbook.app import cautions, live, series, session, today
+from labbook.app import bench_track, cautions, live, series, session, today
 from labbook.book.bench_queries import counts_of_book, kinds_chosen, summary_of
 from labbook.book.queries import recent
 from labbook.book.records import DRIVES
@@ -40,9 +40,10 @@ def page() -> None:
     else:
         left, right = st.columns([46, 54], gap="medium")
         with left:
-            cells = _form(book)
+            cells, track = _form(book)
         with right:
-            live.panel(cells)
+            live.panel(cells | track.cells)
+            bench_track.chart(track)
     today.table()
 
 
@@ -93,10 +94,12 @@ def _usual_rig(book: Book, codes: list[str]) -> str | None:
     return codes[0] if codes else None
 
 
-def _form(book: Book) -> dict[str, str]:
+def _form(book: Book) -> tuple[dict[str, str], bench_track.OnBench]:
+    """The fields: the cells as typed, and the track that waits for the trial."""
     cells: dict[str, str] = dict(_choices(book))
     _fields(SET, cells, 4)
     _fields(SEEN, cells, 2)
+    track = bench_track.offer(cells)
     with st.expander("more: coil current, walls, drive, series, time"):
         _fields(MORE, cells, 3)
         _fields(TEXTS, cells, 3)
@@ -104,11 +107,11 @@ def _form(book: Book) -> dict[str, str]:
             "drive", DRIVES, index=None, key="bench:drive", placeholder="as usual for this swimmer"
         ) or ""  # fmt: skip
     waiting = _waiting(cells)
-    live.warnings(cells, waiting)
+    live.warnings(cells | track.cells, waiting)
     cells["note"] = st.text_input("Note", key="bench:note", placeholder="anything odd about this trial") or ""
     _refusal("note")
-    _log(book, cells, bool(waiting))
-    return cells
+    _log(book, cells, bool(waiting), track)
+    return cells, track
 
 
 def _waiting(cells: dict[str, str]) -> list[str]:
@@ -142,7 +145,7 @@ def _refusal(key: str, cells: dict[str, str] | None = None) -> None:
         session.say_refused(sentence)
 
 
-def _log(book: Book, cells: dict[str, str], confirmed: bool) -> None:
+def _log(book: Book, cells: dict[str, str], confirmed: bool, track: bench_track.OnBench) -> None:
     first, second, last = st.columns([3, 3, 5], vertical_alignment="center")
     label = "It is right, log it" if confirmed else "Log trial"
     if first.button(label, type="primary", key="bench:log", width="stretch"):
@@ -160,7 +163,8 @@ def _log(book: Book, cells: dict[str, str], confirmed: bool) -> None:
             session.spend_token(PLACE)
             st.session_state["bench:last"] = codes[0]
             st.session_state["bench:seen-logged"] = True
-            session.keep_message(f"{codes[0]} is logged: {cells['swimmer']} in {cells['fluid']}, {cells['f']}")
+            more = bench_track.attach(book, codes[0], track)
+            session.keep_message(f"{codes[0]} is logged: {cells['swimmer']} in {cells['fluid']}, {cells['f']}{more}")
         st.rerun()
     if second.button("Series …", key="bench:to-series", width="stretch"):
         st.session_state["bench:as-series"] = True
@@ -170,6 +174,7 @@ def _log(book: Book, cells: dict[str, str], confirmed: bool) -> None:
         with last, st.container(key="lb-last"):
             st.page_link(st.session_state["pages"]["runs"], label=f"last: {code}, open or amend",
                          query_params={"run": code})
+    bench_track.refused()
     general = {k: v for k, v in session.refused(PLACE).items() if k not in cells}
     for sentence in general.values():
         session.say_refused(sentence)

@@ -39,6 +39,20 @@ def cache_key(asked: Question) -> str:
     return json.dumps(addresses.parameters(asked))
 
 
+def in_address(registry: Registry) -> tuple[Question, list[str]]:
+    """The question in the page's address, and one sentence for each part of it that was not understood."""
+    given = {name: st.query_params.get_all(name) for name in addresses.PARAMETERS}
+    asked, said = addresses.read_question(given, known(session.state_of_book()), registry)
+    return asked, [f"In the address, {sentence}" for sentence in said]
+
+
+def in_widgets(place: str, before: Question, registry: Registry) -> tuple[Question, list[str]]:
+    """The question that the widgets ask, and one sentence for each part of it that somebody took away since."""
+    asked = from_widgets(place, before)
+    rest, said = addresses.read_question(addresses.parameters(asked), known(session.state_of_book()), registry)
+    return (rest if said else asked), [f"In the filter, {sentence}" for sentence in said]
+
+
 def touch(place: str) -> None:
     st.session_state[f"{place}:touched"] = True
 
@@ -53,9 +67,12 @@ def key_of(place: str, name: str) -> str:
     return f"{place}:filter:{name}"
 
 
-def into_widgets(place: str, asked: Question) -> None:
-    """Fill the widgets from the address where it says something new."""
+def into_widgets(place: str, asked: Question, registry: Registry) -> None:
+    """Fill the widgets from a question where they do not ask it already."""
     state, told = st.session_state, cache_key(asked)
+    if state.get(key_of(place, "range_key"), FIRST) not in ranged(registry):  # withdrawn while it stood there
+        state[key_of(place, "range_key")] = FIRST
+        show_limits(place)
     if state.get(f"{place}:seen") == told and key_of(place, "regimes") in state:
         return
     state[f"{place}:seen"], state[f"{place}:ranges"] = told, dict(asked.ranges)

@@ -11,7 +11,8 @@ from labbook.app.filter_state import (
     cache_key,
     clear,
     drop_range,
-    from_widgets,
+    in_address,
+    in_widgets,
     into_widgets,
     key_of,
     known,
@@ -25,6 +26,7 @@ from labbook.book import addresses, queries
 from labbook.book.asking import Question
 from labbook.book.limits import in_limit_unit, limit_unit, range_in_words
 from labbook.charts.histogram import histogram
+from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES
 
 PLURAL = {
@@ -34,12 +36,6 @@ PLURAL = {
     "person": "People",
     "series": "Series",
 }
-
-
-def question() -> tuple[Question, list[str]]:
-    """The question in the page's address, and one sentence for each part of it that was not understood."""
-    given = {name: st.query_params.get_all(name) for name in addresses.PARAMETERS}
-    return addresses.read_question(given, known(session.state_of_book()), session.registry())
 
 
 @st.cache_data(max_entries=64, show_spinner=False)
@@ -53,19 +49,18 @@ def row(place: str, *, regimes_open: bool = False) -> Question:
 
     place: keeps the widgets of two pages apart; regimes_open: the regimes stand above the row, not folded.
     """
-    asked, said = question()
-    touched = st.session_state.pop(f"{place}:touched", False)
-    if touched:  # a widget speaks when it was just used, else the address does
-        asked = from_widgets(place, asked)
+    registry = session.registry()
+    asked, said = in_address(registry)
+    if st.session_state.pop(f"{place}:touched", False):  # a widget speaks when just used, else the address does
+        asked, said = in_widgets(place, asked, registry)
         st.session_state.pop(f"{place}:said", None)
-    else:
-        into_widgets(place, asked)
-        if said:  # kept, since the address is mended below and a rerun may follow at once
-            st.session_state[f"{place}:said"] = said
+    into_widgets(place, asked, registry)
+    if said:  # kept, since the address is mended below and a rerun may follow at once
+        st.session_state[f"{place}:said"] = said
     with st.container(key=f"lb-filter-{place}"):
-        _widgets(place, asked, regimes_open)
+        _widgets(place, asked, regimes_open, registry)
     for sentence in st.session_state.get(f"{place}:said", ()):
-        session.say_refused(f"In the address, {sentence}")
+        session.say_refused(sentence)
     write(asked)
     return asked
 
@@ -73,7 +68,7 @@ def row(place: str, *, regimes_open: bool = False) -> Question:
 # ---- the widgets
 
 
-def _widgets(place: str, asked: Question, regimes_open: bool) -> None:
+def _widgets(place: str, asked: Question, regimes_open: bool, registry: Registry) -> None:
     if regimes_open:
         _regimes(place, asked)
     with st.container(horizontal=True, gap="xsmall", vertical_alignment="center"):
@@ -82,7 +77,7 @@ def _widgets(place: str, asked: Question, regimes_open: bool) -> None:
                 _regimes(place, asked)
         ranges = [range_in_words(key, *span) for key, span in asked.ranges.items()]
         with st.popover(_label("Range", ranges)):
-            _ranges(place, asked)
+            _ranges(place, asked, registry)
         options = known(session.state_of_book())
         for name, field in addresses.CHOSEN.items():
             with st.popover(_label(PLURAL[name], getattr(asked, field))):
@@ -149,11 +144,11 @@ def _regimes(place: str, asked: Question) -> None:
     )
 
 
-def _ranges(place: str, asked: Question) -> None:
-    numbers = session.registry().numbers
+def _ranges(place: str, asked: Question, registry: Registry) -> None:
+    numbers = registry.numbers
     key = st.selectbox(
         "Range of",
-        ranged(session.registry()),
+        ranged(registry),
         format_func=lambda key: _named(numbers.get(key) or QUANTITIES[key]),
         key=key_of(place, "range_key"),
         on_change=show_limits,

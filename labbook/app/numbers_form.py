@@ -6,6 +6,8 @@ from labbook.app import numbers_proof, numbers_suggest, session
 from labbook.app.numbers_cells import cells_of
 from labbook.book import queries
 from labbook.book.asking import Question
+from labbook.book.clock import local
+from labbook.book.registry_rows import versions_of
 from labbook.registry.group import Registry
 from labbook.registry.own_numbers import FIELDS
 
@@ -35,18 +37,19 @@ def part() -> None:
     """The form, what is known of its formula while it is typed, and suggestions."""
     registry = session.registry()
     editing = session.address("number")
-    if editing and editing not in registry.own:
+    if editing and editing not in registry.own and not _withdrawn(session.state_of_book(), editing):
         session.say_refused(f"number {editing!r}: not one of the group's own, so it is not edited here.")
         editing = ""
     place = f"number:{editing or 'new'}"
+    news = _news(place, registry, editing)
     form, live = st.columns([56, 44], gap="medium")
     with form:
         session.note(
             f"Another version of {editing}: earlier ones stay, and it is derived again for every run."
-            if editing else "A number of the group's own: a column of every run at once."
+            if editing in registry.own else "A number of the group's own: a column of every run at once."
         )  # fmt: skip
         cells = _fields(place, registry, editing)
-        _save(place, cells)
+        _save(place, cells, unread=news)
     with live:
         if cells["formula"]:
             st.session_state.pop(SAVED, None)
@@ -55,28 +58,56 @@ def part() -> None:
     numbers_suggest.show(_key(place, "formula"))
 
 
+@st.cache_data(max_entries=64, show_spinner=False)
+def _withdrawn(state: str, key: str) -> str:
+    """Who withdrew an own number, when and why; '' where no such number ever was."""
+    versions = session.book().ask(versions_of, "number", key)
+    if not versions:
+        return ""
+    last = versions[0]
+    return f"{last['by']} withdrew it at {local(last['at']):%Y-%m-%d %H:%M}, because: {last['why']}"
+
+
+def _news(place: str, registry: Registry, editing: str) -> bool:
+    """Say that the number was withdrawn; True the first time, when nobody can have read it yet."""
+    mark = f"{place}:withdrawn"
+    if not editing or editing in registry.own:
+        st.session_state.pop(mark, None)
+        return False
+    told = _withdrawn(session.state_of_book(), editing)
+    session.say_refused(f"{editing} is no longer in the registry: {told}. What is typed here stays; saving it "
+                        "makes it a number again.")  # fmt: skip
+    first = not st.session_state.get(mark, False)
+    st.session_state[mark] = True
+    return first
+
+
 def _key(place: str, column: str) -> str:
     return f"{place}:{st.session_state.get(f'version:{place}', 0)}:{column}"
 
 
 def _fields(place: str, registry: Registry, editing: str) -> dict[str, str]:
     """The fields as rows of the form; returns what is typed in them."""
-    start = cells_of(registry.own[editing]) if editing else st.session_state.get(DRAFT, {})
+    start = st.session_state.get(DRAFT, {}) if not editing else {"key": editing}
+    if editing in registry.own:
+        start = cells_of(registry.own[editing])
     refused = _still_refused(place)
     for row in ROWS:
         for spot, column in zip(st.columns(WIDTHS.get(row, len(row)), gap="small"), row, strict=True):
             with spot:
-                fixed = bool(editing) and column == "key"
+                fixed = editing in registry.own and column == "key"
                 _field(_key(place, column), column, start.get(column, ""), fixed)
                 if column in refused:
                     session.say_refused(refused[column])
     cells = {column: _typed(_key(place, column)) for column in FIELDS}
-    if cells["key"] in registry.own:
-        key = cells["key"]
+    key = cells["key"]
+    if key in registry.own:
         if not editing:
             session.note(f"{key} stands in the registry, version {registry.versions[key]}: this makes "
                          "another version of it.")  # fmt: skip
-        st.text_input("reason *", key=_key(place, "why"), placeholder="why it changes, kept in the ledger")
+    if key in registry.own or editing:  # a reason typed before somebody withdrew the number stays too
+        star = " *" if key in registry.own else ""
+        st.text_input(f"reason{star}", key=_key(place, "why"), placeholder="why it changes, kept in the ledger")
         cells["why"] = _typed(_key(place, "why"))
         if "why" in refused:
             session.say_refused(refused["why"])
@@ -108,9 +139,9 @@ def _typed(key: str) -> str:
     return str(st.session_state.get(key) or "").strip()
 
 
-def _save(place: str, cells: dict[str, str]) -> None:
-    """The button; saving shows how far the runs are derived."""
-    if not st.button("Save the number", type="primary", key=f"{place}:save"):
+def _save(place: str, cells: dict[str, str], *, unread: bool) -> None:
+    """The button; saving shows how far the runs are derived. Unread news want a second touch."""
+    if not st.button("Save the number", type="primary", key=f"{place}:save") or unread:
         return
     book, key = session.book(), cells["key"]
     runs = book.ask(queries.count, Question(state="all"))

@@ -98,7 +98,9 @@ def _adopt(number: str, chosen: dict, why: str, agreed: bool, runs: int, place: 
         told = session.book().adopt_dialect(number, chosen, why=why, by=session.handle(), progress=step)
         st.session_state[DONE] = (number, told)
         st.session_state["house:version"] = st.session_state.get("house:version", 0) + 1
-        session.keep_message(f"{number} is now {dialect_words(chosen)}; {runs} runs were derived again")
+        n = told["after"]["derived runs"]
+        again = f"{n} run{'s were' if n != 1 else ' was'} derived again"
+        session.keep_message(f"{number} is now {dialect_words(chosen)}; {again}")
 
     session.attempt(act, place)
 

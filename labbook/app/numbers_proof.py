@@ -18,6 +18,7 @@ from labbook.registry.quantities import QUANTITIES, RESOLVED_KEYS
 from labbook.registry.written import shown, written
 
 NEWEST = 40  # runs that are offered to try a formula on
+TRIED = "numbers:tried"
 VOCABULARY = {key: QUANTITIES[key] for key in RESOLVED_KEYS}
 
 
@@ -96,19 +97,11 @@ def _on_a_run(formula: Formula) -> None:
     n, newest = _runs_with(state, formula.keys)
     have = f"{n} kept run{'s have' if n != 1 else ' has'}" if n else "No kept run has"
     session.note(f"{have} all its inputs.")
-    other = st.session_state.get("numbers:inputs", formula.keys) != formula.keys
-    if other and st.session_state.get("numbers:try") not in newest:  # it fitted the formula before this one
-        st.session_state.pop("numbers:try", None)
-    st.session_state["numbers:inputs"] = formula.keys
-    code = st.selectbox(
-        "Try it on a run: one of the newest, or type a code", list(newest), index=0 if newest else None,
-        format_func=lambda code: newest.get(code, code), accept_new_options=True, key="numbers:try",
-        placeholder="R-0012",
-    )  # fmt: skip
+    code = _chosen(formula.keys, newest)
     if not code:
         return
     try:
-        sheet = sheet_of(state, code.strip())
+        sheet = sheet_of(state, code)
         rows = sensitivities(formula, sheet.values, sheet.u)
     except Refusal as refusal:
         session.say_refused(f"{code}: {refusal.reason}" + (f"; {refusal.remedy}." if refusal.remedy else "."))
@@ -118,6 +111,22 @@ def _on_a_run(formula: Formula) -> None:
     st.html(f'<div style="font-size:1.25rem"><b>{written(value, u)}</b></div>')
     _table(rows, sheet, value)
     session.note("Inputs are taken as independent here; once added, shared causes are counted once.")
+
+
+def _chosen(keys: tuple[str, ...], newest: dict[str, str]) -> str:
+    """The code of the run that a formula of these keys is tried on; one chosen before, where it fits, stays."""
+    state, box = st.session_state, f"numbers:try:{','.join(keys)}"  # a browser keeps what a box of one key shows
+    if box not in state:
+        before = state.get(TRIED)
+        state[box] = before if before in newest else next(iter(newest), None)
+    chosen = st.selectbox(
+        "Try it on a run: one of the newest, or type a code", list(newest), index=None,
+        format_func=lambda code: newest.get(code, code), accept_new_options=True, key=box,
+        placeholder="R-0012",
+    )  # fmt: skip
+    code = (chosen or "").partition(":")[0].strip()  # a label that is offered no more comes back whole
+    state[TRIED] = code
+    return code
 
 
 def _table(rows: list[Sensitivity], sheet, value: float) -> None:

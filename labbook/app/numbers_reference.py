@@ -9,10 +9,10 @@ from labbook.app.numbers_strip import strip_html
 from labbook.book.asking import Question
 from labbook.book.queries import frame
 from labbook.charts.axes import written_unit
-from labbook.exchange.registry_out import registry_csv, registry_markdown
+from labbook.exchange.registry_out import other_dialects, registry_csv, registry_markdown
 from labbook.physics.rods import MODELS
 from labbook.registry.catalogue import Number
-from labbook.registry.dialects import AT_BIRTH, DIALECTS, Dialect, written_choices
+from labbook.registry.dialects import AT_BIRTH, written_choices
 from labbook.registry.group import Registry
 from labbook.registry.latex import number_latex
 from labbook.registry.quantities import QUANTITIES
@@ -111,8 +111,8 @@ def _words(number: Number, registry: Registry) -> None:
     told = [" ".join(lines), f"Source: {number.source}."]
     if number.key not in registry.own:
         told.insert(1, f"House dialect: {number.dialect}.{_departs(number, registry)}")
-    if rows := _spoken(number):
-        told.append(f"Other dialects: {'; '.join(_choices(row) for row in rows)}.")
+    if others := other_dialects(number.key, registry):
+        told.append(f"Other dialects: {'; '.join(others)}.")
     st.html("".join(f'<div class="lb-note">{html.escape(line)}</div>' for line in told))
 
 
@@ -122,15 +122,6 @@ def _departs(number: Number, registry: Registry) -> str:
         return ""
     words = written_choices(number.key, registry.choices(number.key))
     return "" if words == "house" else f" The group chose {words}."
-
-
-def _spoken(number: Number) -> list[Dialect]:
-    """The published rows of a number that are not the one it had at birth."""
-    return [row for row in DIALECTS if row.of == number.key and row.choices]
-
-
-def _choices(row: Dialect) -> str:
-    return ", ".join(f"{name} {option}" for name, option in row.choices.items())
 
 
 def _inputs(number: Number) -> str:
@@ -172,7 +163,7 @@ def _links(number: Number, n: int) -> None:
                 st.session_state["pages"]["runs"], label=f"{n} kept run{'s have' if n != 1 else ' has'} it",
                 icon=":material/table_rows:", query_params={"range": f"{number.key}:-inf:inf"},
             )  # fmt: skip
-        if _spoken(number):
+        if number.key in AT_BIRTH:
             st.button(
                 "Dialects", icon=":material/translate:", type="tertiary",
                 key=f"numbers:dialects:{number.key}", on_click=session.set_address,

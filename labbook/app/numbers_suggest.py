@@ -21,7 +21,7 @@ def show(formula_key: str) -> None:
     keys = st.multiselect(
         "Or start from quantities: which pure numbers do they allow?", RESOLVED_KEYS, key="numbers:suggest",
         format_func=_label, placeholder="choose what may matter, e.g. mu, U, L_tail, EI",
-        max_selections=MOST_KEYS,
+        max_selections=MOST_KEYS, select_all=False,  # else Enter would take every match at once
     )  # fmt: skip
     if not keys:
         return
@@ -54,7 +54,7 @@ def _words(keys, groups: list[Group]) -> str:
     used = {key for group in groups for key, _ in group.exponents}
     n = len(groups)
     words = (f"{len(keys)} quantities, {n} independent pure number{'s' if n != 1 else ''}; "
-             "any other one of these quantities is made of them.")  # fmt: skip
+             "every other pure number of these quantities is a product of powers of them.")  # fmt: skip
     spare = [key for key in keys if key not in used]
     return words + (f" In none of them: {', '.join(spare)}." if spare else "")
 

@@ -5,7 +5,7 @@ from collections.abc import Callable
 
 import streamlit as st
 
-from labbook.app import record_budget, record_readings, session
+from labbook.app import record_budget, record_readings, record_track, session, track_fields
 from labbook.app import record_parts as parts
 from labbook.book import ledger
 from labbook.book.bench_queries import cells_again
@@ -66,6 +66,7 @@ def _whole(sheet: RunSheet, place: str) -> None:
     with right:
         parts.numbers(sheet)
         parts.picture(sheet, place)
+    record_track.show(sheet, place)
     st.markdown("**Ledger**")
     parts.ledger(code)
 
@@ -88,7 +89,8 @@ def _acts(sheet: RunSheet, place: str) -> None:
     chosen = st.session_state.get(f"{place}:act")
     is_void = sheet.texts["state"] == "void"
     with st.container(horizontal=True, gap="small"):
-        for act, label in (("amend", "Amend"), ("void", "Keep again" if is_void else "Void")):
+        track = () if is_void else (("track", "Replace the track" if sheet.track else "Drop a track"),)
+        for act, label in (("amend", "Amend"), ("void", "Keep again" if is_void else "Void"), *track):
             st.button(
                 label,
                 key=f"{place}:{act}",
@@ -107,6 +109,12 @@ def _acts(sheet: RunSheet, place: str) -> None:
     elif chosen == "void":
         with st.container(border=True):
             _void(sheet, place, is_void)
+    elif chosen == "track" and track:
+        with st.container(border=True, key=f"lb-drop-{place}".replace(":", "-")):
+            message = record_track.drop(sheet, place)
+        if message:
+            track_fields.done_with(place)
+            _finish(place, message)
 
 
 def _choose(place: str, act: str) -> None:

@@ -7,6 +7,7 @@ import streamlit as st
 
 from labbook.app import session
 from labbook.app.record_budget import CHECK, budgets_of, part_in_words
+from labbook.app.record_track import replaced
 from labbook.book import queries
 from labbook.book.curves import viscosity_frames
 from labbook.book.run_sheet import RunSheet, moment_in_words
@@ -16,6 +17,7 @@ from labbook.charts.fluid_chart import viscosity_chart
 from labbook.registry.catalogue import Number
 from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES
+from labbook.registry.typed import REDUCED
 from labbook.registry.written import shown, written
 
 RESOLVED = {"mu": "mu_from", "rho": "rho_from", "lam": "lam_from", "E": "E_from"}
@@ -55,6 +57,8 @@ def symbol(key: str) -> str:
 def as_typed(entry: list) -> str:
     """A typed quantity as it was written, with the unit that its column's header gave."""
     text, unit = entry[0], entry[1]
+    if entry[4] == REDUCED:  # nobody wrote it
+        return written(entry[2], entry[3], unit)
     return (
         text
         if not text[-1:] or not (text[-1].isdigit() or text[-1] in ").") or unit == "1"
@@ -62,12 +66,24 @@ def as_typed(entry: list) -> str:
     )
 
 
+def fact(sheet: RunSheet, key: str) -> str:
+    """A quantity of the run as it was typed, or as its track says it; empty where there is neither."""
+    if key not in sheet.typed:
+        return ""
+    return value(sheet, key) if sheet.typed[key][4] == REDUCED else as_typed(sheet.typed[key])
+
+
+def _marked(sheet: RunSheet, key: str) -> str:
+    """The marks of a fact; beside a reduced one stands what was typed."""
+    marks, before = list(sheet.marks.get(key, [])), replaced(sheet, key)
+    if before is not None:
+        marks += [f"typed {before}" if before else "nothing was typed"]
+    return ", ".join(marks)
+
+
 def facts(sheet: RunSheet) -> None:
     """What was typed, as typed; where no uncertainty was typed, and none comes from the rig, it says so."""
-    rows = [
-        (f"{symbol(key)}", _name(key), as_typed(entry), ", ".join(sheet.marks.get(key, [])))
-        for key, entry in sheet.typed.items()
-    ]
+    rows = [(f"{symbol(key)}", _name(key), fact(sheet, key), _marked(sheet, key)) for key in sheet.typed]
     rows += [("", name, sheet.texts[name], "") for name in TEXTS if sheet.texts[name]]
     session.table(("", "", "as typed", ""), rows, numeric=(2,))
 
@@ -99,6 +115,8 @@ def resolved(sheet: RunSheet) -> None:
 def value(sheet: RunSheet, key: str) -> str:
     """A value with its uncertainty as a page writes it; empty where absent."""
     typed = sheet.typed.get(key)
+    if typed and typed[4] == REDUCED:  # in the unit that the person uses
+        typed = sheet.track.replaced.get(key) if sheet.track else None
     return shown(key, sheet.values[key], sheet.u[key], typed[1] if typed else None)
 
 
@@ -176,7 +194,7 @@ def _named(row: Number) -> str:
 def essentials(sheet: RunSheet) -> None:
     """A few facts and numbers for a narrow panel."""
     typed = [
-        (symbol(k), as_typed(sheet.typed[k]))
+        (symbol(k), fact(sheet, k) + (", reduced" if sheet.typed[k][4] == REDUCED else ""))
         for k in ("f", "theta0", "B", "T", "U", "A_tip")
         if k in sheet.typed
     ]

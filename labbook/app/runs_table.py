@@ -21,22 +21,8 @@ from labbook.registry.regimes import regimes_of
 from labbook.registry.written import SHOWN, shown, written
 
 TEXTS = ("at", "by", "swimmer", "fluid", "material", "rig", "drive", "series", "video", "note")
-USUAL = (
-    "at",
-    "by",
-    "swimmer",
-    "fluid",
-    "f",
-    "theta0",
-    "T",
-    "U",
-    "Sp",
-    "Re_omega",
-    "U_scaled",
-    "St",
-    "regime",
-    "note",
-)
+USUAL = ("at", "by", "swimmer", "fluid", "f", "theta0", "T", "U", "Sp", "Re_omega", "U_scaled", "St", "regime",
+         "note")  # fmt: skip
 ROW = 40
 TALL, FOLDED = 11, 4  # rows in sight: alone, and above an open sheet
 REST_OF_SCREEN = "flex: none !important; height: max(483px, calc(100vh - 310px));"
@@ -48,9 +34,16 @@ def offered(registry: Registry) -> tuple[str, ...]:
 
 
 def chosen(registry: Registry) -> tuple[str, ...]:
-    """The columns in the page's address, in the table's order; the usual ones where it names none."""
-    named, known = session.address("columns").split(","), offered(registry)
-    return tuple(c for c in known if c in named) if set(named) & set(known) else USUAL
+    """The columns in the page's address, in the table's order, the usual ones where it names none.
+
+    What it names and the table has not is said where this is asked.
+    """
+    named, known = [c for c in session.address("columns").split(",") if c], offered(registry)
+    if unknown := [c for c in dict.fromkeys(named) if c not in known]:
+        several, rest = len(unknown) > 1, "the others" if set(named) & set(known) else "the usual ones"
+        session.say_refused(f"In the address, column{'s' if several else ''} {', '.join(map(repr, unknown))}: "
+                            f"the table has no such column{'s' if several else ''}; {rest} are shown.")  # fmt: skip
+    return tuple(c for c in known if c in named) or USUAL
 
 
 def keys_of(columns: tuple[str, ...], registry: Registry) -> tuple[str, ...]:

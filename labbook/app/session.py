@@ -92,7 +92,10 @@ def attempt(act: Callable[[], object], place: str) -> bool:
     except Unconfirmed as warned:
         st.session_state[f"warned:{place}"] = warned.warnings
     except Refusals as several:
-        st.session_state[f"refused:{place}"] = {f.field: str(f) for f in several.findings}
+        said: dict[str, list[str]] = {}
+        for finding in several.findings:
+            said.setdefault(finding.field, []).append(str(finding))
+        st.session_state[f"refused:{place}"] = {field: " ".join(texts) for field, texts in said.items()}
     except Refusal as refusal:
         st.session_state[f"refused:{place}"] = {refusal.field: str(refusal)}
     except LabbookError as error:
@@ -103,7 +106,7 @@ def attempt(act: Callable[[], object], place: str) -> bool:
 
 
 def refused(place: str) -> dict[str, str]:
-    """Field -> sentence of the last refused attempt at `place`."""
+    """Field -> sentences of the last refused attempt at `place`."""
     return st.session_state.get(f"refused:{place}", {})
 
 

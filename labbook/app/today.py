@@ -6,7 +6,7 @@ import pandas as pd
 import streamlit as st
 
 from labbook.app import session
-from labbook.app.record_parts import as_typed
+from labbook.app.record_parts import fact
 from labbook.book.asking import Question
 from labbook.book.bench_queries import cells_again
 from labbook.book.run_sheet import RunSheet
@@ -49,19 +49,13 @@ def table() -> None:
 def _row(sheet: RunSheet, day: str) -> dict[str, str]:
     texts = sheet.texts
     at = texts["at"][11:16] if texts["at"][:10] == day else texts["at"][:16].replace("T", " ")
-    typed = {k: _as_typed(sheet, k) for k in ("f", "U")}
+    typed = {k: fact(sheet, k) for k in ("f", "U")}
     numbers = {k: written(sheet.values[k], sheet.u[k]) for k in NUMBERS}
     return {
         "run": texts["code"], "at": at, "by": texts["by"], "swimmer": texts["swimmer"], "fluid": texts["fluid"],
         **typed, **numbers, "regime": ", ".join(sheet.regimes),
         "note": (f"void: {texts['why']}" if texts["state"] == "void" else texts["note"]) or "",
     }  # fmt: skip
-
-
-def _as_typed(sheet: RunSheet, key: str) -> str:
-    if key not in sheet.typed:
-        return ""
-    return as_typed(sheet.typed[key])
 
 
 def _acts(sheet: RunSheet) -> None:

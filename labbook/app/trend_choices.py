@@ -18,6 +18,7 @@ CHOICES = {
     "bars": ("own", "total", SHARED, "none"),
     "bands": SWITCH,
     "theory": SWITCH,
+    "published": SWITCH,
     "logx": SWITCH,
     "logy": SWITCH,
 }
@@ -45,6 +46,7 @@ class Choices:
     bars: str
     bands: bool
     theory: bool
+    published: bool
     log_x: bool
     log_y: bool
     dialects: dict[str, dict[str, object]] = field(default_factory=dict)
@@ -85,14 +87,18 @@ def chosen(registry: Registry) -> tuple[Choices, list[str]]:
     dialects = {k: dialects[k] for k in dict.fromkeys((x, y)) if k in dialects}
     choices = Choices(
         x, y, None if values["colour"] == "none" else values["colour"], values["bars"],
-        bands=values["bands"] == "on", theory=values["theory"] == "on", log_x=values["logx"] == "on",
-        log_y=values["logy"] == "on", dialects=dialects,
+        bands=values["bands"] == "on", theory=values["theory"] == "on",
+        published=values["published"] == "on", log_x=values["logx"] == "on", log_y=values["logy"] == "on",
+        dialects=dialects,
     )  # fmt: skip
     return choices, [*said, *wrong]
 
 
-def controls(choices: Choices, registry: Registry) -> None:
-    """The controls beside the chart; each writes itself into the address."""
+def controls(choices: Choices, registry: Registry, *, others: bool) -> None:
+    """The controls beside the chart; each writes itself into the address.
+
+    others: whether the book has published points for these axes.
+    """
     for axis, label, key in (("x", "across", choices.x), ("y", "up", choices.y)):
         _pick(label, axis, key, registry)
         if key in DIALECT_CHOICES and (axis == "x" or key != choices.x):
@@ -103,6 +109,8 @@ def controls(choices: Choices, registry: Registry) -> None:
     _switch("bands", "bands", choices.bands)
     if not choices.why_no_curve(registry):
         _switch("theory", "theory", choices.theory)
+    if others:
+        _switch("published", "published", choices.published)
     _switch("log across", "logx", choices.log_x)
     _switch("log up", "logy", choices.log_y)
 

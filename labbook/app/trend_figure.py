@@ -21,8 +21,10 @@ FIGURE = {"width": 760, "height": 540}  # pixels of a saved figure
 TEXTS = ("code", "at", "by", "swimmer", "fluid", "material", "series", "state")
 
 
-def drawn_as(plotted: PlotRows, choices: Choices, registry: Registry, curve, *, dark: bool, **more) -> Trend:
-    """The chart of the rows as chosen, over a curve or None; `more` goes to charts.trend."""
+def drawn_as(
+    plotted: PlotRows, choices: Choices, registry: Registry, curve, published, *, dark: bool, **more
+) -> Trend:  # fmt: skip
+    """The chart of the rows as chosen, with a curve and others' points or None; `more` goes to charts.trend."""
     titles = {}
     for axis, key in (("x", choices.x), ("y", choices.y)):
         if key in registry.numbers:
@@ -33,7 +35,8 @@ def drawn_as(plotted: PlotRows, choices: Choices, registry: Registry, curve, *, 
     return trend(
         plotted.frame.rename(columns={"by": "person"}), x=choices.x, y=choices.y, group=choices.colour,
         log_x=choices.log_x, log_y=choices.log_y, bars=choices.bars, bands=choices.bands, curve=curve,
-        dark=dark, left_out=plotted.left_out, numbers=registry.numbers, regimes=regimes, **titles, **more,
+        dark=dark, left_out=plotted.left_out, numbers=registry.numbers, regimes=regimes,
+        published=published, **titles, **more,
     )  # fmt: skip
 
 
@@ -45,11 +48,14 @@ class Figure:
     choices: Choices
     asked: Question
     curve: pd.DataFrame | None
+    published: pd.DataFrame | None
     book: Book
     registry: Registry
 
     def drawn(self) -> Trend:
-        return drawn_as(self.plotted, self.choices, self.registry, self.curve, dark=False, **FIGURE)
+        return drawn_as(
+            self.plotted, self.choices, self.registry, self.curve, self.published, dark=False, **FIGURE
+        )
 
     def svg(self) -> bytes:
         drawn = self.drawn()
@@ -60,7 +66,10 @@ class Figure:
         return png_bytes(drawn.chart, self.words(drawn))
 
     def csv(self) -> bytes:
-        """The runs found, with both axes as the figure has them; a column `dialect` where not the house's."""
+        """The runs found, with both axes as the figure has them; a column `dialect` where not the house's.
+
+        Published points are no runs: the comment names them, the rows do not.
+        """
         choices = self.choices
         frame = self.book.frame(self.asked, keys=choices.keys, texts=TEXTS, dialects=choices.dialects)
         return frame_as_csv(frame, comment=self.words(self.drawn())).encode()

@@ -3,6 +3,7 @@
 import functools
 import html
 
+import pandas as pd
 import streamlit as st
 
 from labbook.app import filters, record, session
@@ -11,9 +12,11 @@ from labbook.app.trend_figure import Figure, drawn_as, save
 from labbook.book import queries
 from labbook.book.asking import Question
 from labbook.book.plotting import PlotRows, plot_frame
+from labbook.book.published_points import points
 from labbook.charts import theory
 from labbook.charts.dialect_axis import HOUSE_ONLY
 from labbook.charts.trend import SPACE, Trend, caption, counted
+from labbook.charts.trend_published import NO_RUN
 from labbook.registry.group import Registry
 
 CHART = "trends:chart"
@@ -25,6 +28,7 @@ SHEET = """<style>
 [data-testid="stLayoutWrapper"]:has(> .st-key-lb-trend-chart), .st-key-lb-trend-chart {
   height: calc(100vh - 14.2rem) !important; min-height: 22rem;
   flex: none !important; overflow: hidden !important; }
+.st-key-lb-trends [data-testid="stColumn"]:first-child [data-testid="stVerticalBlock"] { gap: 0.3rem; }
 /* the names of dialects are longer than the column of controls is wide */
 [data-testid="stSelectboxVirtualDropdown"] { min-width: 20rem; }
 .lb-title { font-size: 0.95rem; line-height: 1.35; }
@@ -41,6 +45,7 @@ def page() -> None:
     state = session.state_of_book()
     plotted = _rows(state, filters.cache_key(asked), asked, choices.x, choices.y, choices.group,
                     choices.log_x, choices.log_y, choices.dialects)  # fmt: skip
+    others = _published(state, choices.x, choices.y, choices.dialects)
     nothing = plotted.frame.empty and not plotted.left_out
     if nothing and not session.book().ask(queries.count, Question(state="all")):
         _empty_book()
@@ -50,11 +55,12 @@ def page() -> None:
     with st.container(key="lb-trends"):
         places = st.columns([0.15, 0.62, 0.23] if run else [0.15, 0.85], gap="small")
         with places[0]:
-            controls(choices, registry)
+            controls(choices, registry, others=bool(len(others) or others.attrs["lost"]))
         with places[1]:
             curve = _curve(state, plotted, asked, choices, registry)
+            shown = others if choices.published else None
             drawn = _on_screen(state, filters.cache_key(asked), choices, run or None, session.is_dark(),
-                               plotted, curve, registry)  # fmt: skip
+                               plotted, curve, shown, registry)  # fmt: skip
             _title(asked, drawn)
             _chart(drawn)
             _below(drawn, choices, registry)
@@ -64,7 +70,7 @@ def page() -> None:
                           width="stretch")  # fmt: skip
                 record.show(run, place="trends", narrow=True)
         with places[0]:
-            save(Figure(plotted, choices, asked, curve, session.book(), registry))
+            save(Figure(plotted, choices, asked, curve, shown, session.book(), registry))
 
 
 def _empty_book() -> None:
@@ -80,6 +86,12 @@ def _rows(state: str, asked: str, _asked: Question, x, y, group, log_x, log_y, d
     return session.book().ask(plot_frame, _asked, x, y, group, log_x=log_x, log_y=log_y, dialects=dialects)
 
 
+@st.cache_data(max_entries=24, show_spinner=False)
+def _published(state: str, x: str, y: str, dialects) -> pd.DataFrame:
+    """The points that others printed for these axes, in the page's dialects."""
+    return session.book().ask(points, x, y, dialects)
+
+
 @st.cache_data(max_entries=24, show_spinner="Drawing the curve …")
 def _theory_runs(state: str, asked: str, _asked: Question):
     """The newest runs of the question, with what the curve takes from them."""
@@ -89,10 +101,12 @@ def _theory_runs(state: str, asked: str, _asked: Question):
 
 
 @st.cache_resource(max_entries=24, show_spinner=False)
-def _on_screen(state: str, asked: str, choices: Choices, picked, dark, _plotted, _curve, _registry) -> Trend:
+def _on_screen(
+    state: str, asked: str, choices: Choices, picked, dark, _plotted, _curve, _shown, _registry
+) -> Trend:  # fmt: skip
     """The chart of the page, kept for the reruns that change nothing in it."""
     size = BESIDE if picked else ALONE
-    return drawn_as(_plotted, choices, _registry, _curve, dark=dark, picked=picked, **size)
+    return drawn_as(_plotted, choices, _registry, _curve, _shown, dark=dark, picked=picked, **size)
 
 
 def _curve(state: str, plotted: PlotRows, asked: Question, choices: Choices, registry: Registry):
@@ -129,7 +143,8 @@ def _spaced(number: int) -> str:
 def _chart(drawn: Trend) -> None:
     if not drawn.drawn:
         session.note("No run that was found has a place on these axes: choose others, or widen the filter.")
-        return
+        if not drawn.published:
+            return
     key = f"{CHART}:{st.session_state.get(CHART, 0)}"
     chart = drawn.chart.properties(width="container", height="container")
     with st.container(key="lb-trend-chart", height=500, border=False):  # the stylesheet fills the window
@@ -152,11 +167,11 @@ def _below(drawn: Trend, choices: Choices, registry: Registry) -> None:
 
 
 def _pick(key: str) -> None:
-    """Open the run of the mark that was picked."""
-    points = st.session_state[key].selection.get("pick") or []
-    if points and points[0].get("code"):
-        session.set_address(run=points[0]["code"])
-    elif points:
+    """Open the run of the mark that was picked; a published point opens nothing."""
+    picked = st.session_state[key].selection.get("pick") or []
+    if picked and picked[0].get("code"):
+        session.set_address(run=picked[0]["code"])
+    elif picked and picked[0].get("code") != NO_RUN:
         st.session_state["trends:many"] = True
 
 

@@ -36,11 +36,16 @@ def _number(row, values, sentences, swimmer, drive) -> str:
     if row.only_drives and drive not in row.only_drives:
         return f"only for a rotating drive, and this run's is {drive}"
     missing = _roots(row.inputs, values)
-    if not missing and row.not_zero:
+    if not missing and row.not_zero and _consistent_with_zero(row.not_zero, values):
         return f"not defined ({row.not_zero} consistent with 0)"
     if not missing:
         return "outside what its formula can take"
     return _needs(missing, sentences, swimmer)
+
+
+def _consistent_with_zero(key, values) -> bool:
+    spread = values.get(f"u_{key}")
+    return spread is None or math.isnan(spread) or abs(values[key]) <= 2 * spread
 
 
 def _roots(keys, values) -> list[str]:

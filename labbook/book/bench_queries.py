@@ -26,7 +26,7 @@ def counts_of_book(connection: Connection) -> dict[str, int]:
 
 def cells_again(connection: Connection, code: str) -> dict[str, str]:
     """A run's settings as cells to start the next run from: what was seen, and when, is left out."""
-    cells = cells_of(connection, run_row(connection, code))
+    cells = cells_of(connection, run_row(connection, code), track=False)
     return {k: v for k, v in cells.items() if k not in NOT_AGAIN}
 
 

@@ -58,6 +58,7 @@ def measured_of(gathered: Gathering, block, group: Item) -> Spread:
     spread = Spread()
     for key in RUN_KEYS:
         spread.measured(key, gathered.values[key][block], gathered.u[key][block])
+    _camera_scale(spread, block, gathered.facts.scale_u)
     _flux_density(spread, block, gathered.rigs)
     _swimmer_lengths(spread, block, gathered.swimmers, group)
     for key in BATCH_KEYS:
@@ -94,6 +95,14 @@ def _keyworded(parsed):
 def _by_formula(spread, key, text) -> None:
     parsed = parse(text, QUANTITIES)
     spread.follow((key,), _keyworded(parsed), parsed.keys)
+
+
+def _camera_scale(spread, block, scale_u) -> None:
+    """Lengths from tracks have a part from the camera's scale, which all runs of the rig share."""
+    for key, relative in scale_u.items():
+        here = relative[block]
+        if here.any():
+            spread.parts[key]["scale"] = here * np.nan_to_num(spread.values[key])
 
 
 def _flux_density(spread, block, rigs) -> None:

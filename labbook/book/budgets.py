@@ -34,6 +34,7 @@ _SOURCES = {
     "lam": ("relaxation time", "fluid", _BETTER), "rho_s": ("density", "material", _BETTER),
     "E": ("modulus readings", "material", "measure its modulus better first"),
     "current_to_B": ("coil constant", "rig", "calibrate that better first"),
+    "scale": ("camera scale", "rig", "calibrate that better first"),
 }  # fmt: skip
 
 
@@ -214,7 +215,8 @@ def _drawn_facts(one: Gathering, fluid: np.ndarray, draws: int, chance) -> RunFa
     values["T"] = values["T"] + drift * chance.uniform(-1.0, 1.0, draws)
     none, never = ({k: np.zeros(draws, kind) for k in values} for kind in (float, bool))
     ids = (np.repeat(a, draws) for a in (facts.rig, facts.days, facts.drive))
-    return RunFacts(values, none, never, np.repeat(facts.swimmer, draws), fluid, *ids)
+    scale_u = {k: np.repeat(a, draws) for k, a in facts.scale_u.items()}
+    return RunFacts(values, none, never, np.repeat(facts.swimmer, draws), fluid, *ids, scale_u=scale_u)
 
 
 def _drawn_batch(one: Gathering, draws: int, chance) -> tuple[Shelf, np.ndarray, dict[str, np.ndarray]]:

@@ -1,4 +1,4 @@
-"""Is the book as it should be: the ledger's chain, every stored row's digest, every number derived again."""
+"""Is the book as it should be: the ledger's chain, kept files, every stored row's digest, every number derived again."""
 
 import json
 from collections.abc import Callable
@@ -25,6 +25,7 @@ from labbook.book.stored_view import (
 )
 from labbook.book.tables import SHELF, book, run
 from labbook.book.tables import reading as reading_table
+from labbook.book.track_checking import tracks_wrong
 
 # exp and log differ in the last bits between machines
 SAME = 1e-9
@@ -49,6 +50,7 @@ def check(engine: Engine, progress: Callable[[int], None] = lambda n: None) -> l
         found += unreadable
         if unreadable:
             return found  # what cannot be read cannot be derived again
+        found += tracks_wrong(connection)
         registry = registry_of(connection)
         if not stored_view.built(connection, tuple(registry.own)):
             found.append("the stored view does not have the registry's columns: open the book to rebuild it")

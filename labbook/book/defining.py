@@ -17,6 +17,7 @@ from labbook.book.tables import book, run
 from labbook.errors import Refusal
 from labbook.registry.catalogue import Number
 from labbook.registry.dialects import AT_BIRTH, completed
+from labbook.registry.group import Registry
 from labbook.registry.own_numbers import read_number
 from labbook.registry.regimes import Regime, checked
 
@@ -40,7 +41,7 @@ def define_number(
         if old is not None:
             if old == number:
                 return before.versions[key]
-            if why is None:
+            if not (why or "").strip():
                 raise Refusal("why", None, f"is missing: {key} stands in the registry, and this is another version",
                               "say why it changes, or use another key")  # fmt: skip
         version = put_version(connection, "number", key, number.content(), by, reason(why) if why else None)
@@ -122,6 +123,9 @@ def set_regime(engine: Engine, regime: Regime, why: str, by: str) -> tuple[int, 
         before = registry_of(connection)
         checked(regime, before.numbers)
         old = before.regimes.get(regime.name)
+        alike = [n for n in before.regimes if n.lower() == regime.name.lower() and n != regime.name]
+        if alike:
+            raise Refusal("name", regime.name, f"differs from {alike[0]!r} by capitals alone", "choose another name")
         if old == regime:
             raise Refusal("regime", regime.name, "nothing would change")
         counted = _kept(connection, regime.name)
@@ -174,10 +178,18 @@ def adopt_dialect(
         put_version(connection, "house", number, departs, by, why)
         changed = derive_again(connection, progress=progress)
         _settle(connection)
-        after = _seen(connection, number)
-        chain.append(connection, by, "adopt", "dialect", number, before=before,
-                     after=after | {"derived runs": len(changed)}, why=why)  # fmt: skip
+        after = _seen(connection, number) | {"derived runs": len(changed)}
+        moved = _follow_drag(registry_of(connection)) if registry_of(connection).coefficient != registry.coefficient else []
+        if moved:
+            after["changed with it"] = ", ".join(key for key in moved if key != number)
+        chain.append(connection, by, "adopt", "dialect", number, before=before, after=after, why=why)
     return {"before": before, "after": after}
+
+
+def _follow_drag(registry: Registry) -> list[str]:
+    """What follows from the drag model: the resistive coefficients and every number made of them."""
+    drag = {"zeta_n", "zeta_t"}
+    return [*sorted(drag), *(k for k, n in registry.numbers.items() if drag & set(n.inputs))]
 
 
 NEEDS_PITCH = ("gray_hancock_1955", "lighthill")

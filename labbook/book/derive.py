@@ -2,6 +2,7 @@
 
 import json
 from dataclasses import dataclass
+from datetime import date
 from functools import cached_property
 
 import numpy as np
@@ -15,6 +16,7 @@ from labbook.registry.group import Registry
 from labbook.registry.quantities import RUN_KEYS
 
 BATCH = 16_000  # rows that a caller hands over at a time: more would leave the processor's cache
+STALE_DAYS = 365  # from a rig's calibration to a run: more is a mark on what the run took from the rig
 
 
 @dataclass
@@ -68,7 +70,7 @@ def derive(facts: RunFacts, shelf: Shelf, registry: Registry, wanted: tuple[str,
     place = np.empty(len(facts), np.int64)
     place[np.concatenate(order)] = np.arange(len(facts))
     sentences = {f"{k}_from": gathered.batch[k].said for k in BATCH_KEYS}
-    return Derived(keys, columns, place, sentences, _marks(facts, shelf, gathered.batch), gathered.material)
+    return Derived(keys, columns, place, sentences, _marks(facts, shelf, gathered), gathered.material)
 
 
 def _groups(facts, shelf):
@@ -97,14 +99,67 @@ def _fill(columns, spread, keys) -> None:
         three += nothing
 
 
-def _marks(facts, shelf, batch) -> list[str]:
+def _marks(facts, shelf, gathered) -> list[str]:
     """One small JSON text a run: key to list of marks."""
+    batch = gathered.batch
     flags = [("mu", batch["mu"].beyond, "extrapolated"), ("rho", batch["rho"].beyond, "extrapolated")]
     by_rig = {k: [i for i, rig in shelf.rigs.items() if f"u_{k}" in rig.typed] for k in STATED_BY_RIG}
     for key in RUN_KEYS:
         digits = facts.digits[key]
         flags.append((key, digits & ~np.isin(facts.rig, by_rig[key]) if by_rig.get(key) else digits, "from digits"))
-    codes = sum(array.astype(np.int64) << i for i, (_, array, _) in enumerate(flags))
+    flags += [(key, mask, "reduced") for key, mask in facts.reduced.items()]
+    codes = _bits(array for _, array, _ in flags)
     unique, which = distinct(codes)
-    texts = [json.dumps({k: [m] for i, (k, _, m) in enumerate(flags) if code >> i & 1}) for code in unique]
-    return [texts[i] for i in which]
+    texts = [json.dumps(_told(flags, code)) for code in unique]
+    marks = [texts[i] for i in which]
+    age = _calibration_age(facts, gathered.rigs)
+    old = np.flatnonzero(age > STALE_DAYS)
+    if len(old):
+        _mark_old_calibrations(marks, old, age[old].astype(np.int64), codes[old], flags, _from_rig(facts, by_rig, gathered))
+    return marks
+
+
+def _bits(masks) -> np.ndarray:
+    return sum(array.astype(np.int64) << i for i, array in enumerate(masks))
+
+
+def _told(flags, code) -> dict[str, list[str]]:
+    told: dict[str, list[str]] = {}
+    for i, (key, _, mark) in enumerate(flags):
+        if code >> i & 1:
+            told.setdefault(key, []).append(mark)
+    return told
+
+
+def _calibration_age(facts, rigs) -> np.ndarray:
+    """Days from the rig's calibration to the run; NaN without rig or date."""
+
+    def day(rig):
+        on = rig.texts["calibrated"]
+        return (float(date.fromisoformat(on).toordinal()) if on else np.nan, 0.0)
+
+    return facts.days - rigs.pick(slice(None), day)[0]
+
+
+def _from_rig(facts, by_rig, gathered) -> list[tuple[str, np.ndarray]]:
+    """(key, which runs' value took something from the rig): a stated u, the coil constant, the camera's scale."""
+    found = [(k, facts.digits[k] & np.isin(facts.rig, ids)) for k, ids in by_rig.items() if ids]
+    constant = gathered.rigs.pick(slice(None), lambda rig: (rig.value("current_to_B") or np.nan, 0.0))[0]
+    found.append(("B", ~np.isfinite(facts.values["B"]) & np.isfinite(facts.values["I_coil"] * constant)))
+    return found + [(key, relative > 0) for key, relative in facts.scale_u.items()]
+
+
+def _mark_old_calibrations(marks, rows, days, codes, flags, from_rig) -> None:
+    """Write the marks of some runs again, with the age of the rig's calibration where a value took from the rig."""
+    more = _bits(array[rows] for _, array in from_rig)
+    which = codes | more << len(flags) | days << len(flags) + len(from_rig)
+    _, first, place = np.unique(which, return_index=True, return_inverse=True)
+    texts = []
+    for i in first:
+        told = _told(flags, codes[i])
+        for j, (key, _) in enumerate(from_rig):
+            if more[i] >> j & 1:
+                told.setdefault(key, []).append(f"rig calibrated {days[i]} days before")
+        texts.append(json.dumps(told))
+    for row, i in zip(rows.tolist(), place.tolist(), strict=True):
+        marks[row] = texts[i]

@@ -18,8 +18,24 @@ Dialects = Mapping[str, Choices]  # number -> the choices wanted; what they leav
 
 
 def in_words(registry: Registry, dialects: Dialects) -> dict[str, str]:
-    """Number -> where its dialect departs from the house; Refusal for an unknown number, choice or option."""
-    return {n: written_choices(n, choices, registry.choices(n) or None) for n, choices in dialects.items()}
+    """Number -> its dialect, said against the one at birth, which never changes: 'house', 'rate f, power 1'.
+
+    A group's house that is another says which: 'house: rate f'. Errors: Refusal for an unknown choice or option.
+    """
+    asked = {n: completed(n, choices, registry.house.get(n)) for n, choices in dialects.items()}
+    return {n: _said(n, chosen, chosen == registry.choices(n)) for n, chosen in asked.items()}
+
+
+def _said(number: str, chosen: Choices, house: bool) -> str:
+    words = written_choices(number, chosen)  # 'house' here means: as at birth
+    if house:
+        return words if words == "house" else f"house: {words}"
+    return words if words != "house" else "as at birth"
+
+
+def house_in_words(registry: Registry, keys) -> dict[str, str]:
+    """Number -> 'house: rate f' for those of the keys whose house dialect is not the one at birth."""
+    return in_words(registry, {n: {} for n in keys if registry.house.get(n)})
 
 
 def away(registry: Registry, dialects: Dialects | None) -> dict[str, dict[str, object]]:
@@ -63,7 +79,7 @@ def restated_frame(
     attrs['lost'] holds, number by number, a sentence for each run that lost its value by it (None elsewhere).
     """
     spoken = {n: c for n, c in away(registry, dialects).items() if n in table}
-    table.attrs["dialects"] = in_words(registry, dialects)
+    table.attrs["dialects"] = house_in_words(registry, [k for k in table if k in registry.house]) | in_words(registry, dialects)
     table.attrs["lost"] = {}
     if not spoken:
         return table

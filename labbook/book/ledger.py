@@ -15,6 +15,7 @@ from labbook.book.drafts import Draft, all_of, read_draft, whole
 from labbook.book.opening import writing
 from labbook.book.plausibility import run_warnings
 from labbook.book.records import KINDS
+from labbook.book.reduced_cells import let_go, reduced_keys, scale_kept, typed_before
 from labbook.book.registry_rows import registry_of
 from labbook.book.run_rows import derive_again, facts_of, shelf_for
 from labbook.book.shelf import document, read_shelf
@@ -102,14 +103,16 @@ def run_row(connection: Connection, code: str):
     return row
 
 
-def cells_of(connection: Connection, row) -> dict[str, str]:
-    """A run's cells as they would be typed again."""
+def cells_of(connection: Connection, row, *, track: bool = True) -> dict[str, str]:
+    """A run's cells as they would be typed again; track=False: as they stood before a track brought its own."""
     cells = {c: row[c] for c in ("at", "by", "drive", "series", "video", "note", "state", "why") if row[c]}
     for column, table in (("swimmer", swimmer), ("fluid", fluid), ("rig", rig)):
         if row[f"{column}_id"] is not None:
             cells[column] = connection.scalar(select(table.c.code).where(table.c.id == row[f"{column}_id"]))
-    for key, entry in document(row["typed"]).items():
-        cells[key] = printed(KINDS["run"].typed[key], Typed(*entry))
+    typed = document(row["typed"]) if track else typed_before(connection, row)
+    for key, entry in typed.items():
+        if key in KINDS["run"].typed:
+            cells[key] = printed(KINDS["run"].typed[key], Typed(*entry))
     return cells
 
 
@@ -132,6 +135,7 @@ def amend(
             raise Refusal("amend", code, "nothing would change", "type a value that differs")
         old = document(row["typed"])
         typed = {k: (t if k in touched or k not in old else old[k]) for k, t in draft.typed.items()}
+        typed = scale_kept(old, typed)
         warned = [(c, s) for c, s in draft.warned if c in touched]
         values = _columns(connection, draft, typed)
         warned += _warned_again(connection, row, values, touched)
@@ -140,6 +144,8 @@ def amend(
         warned = [w for w in json.loads(row["confirmed"] or "[]") if w[0] not in touched] + warned
         values["confirmed"] = json.dumps(warned, ensure_ascii=False) if warned else None
         connection.execute(update(run).where(run.c.id == row["id"]).values(**values))
+        if reduced_keys(old) and not reduced_keys(typed):
+            let_go(connection, row["id"], why)
         changed = derive_again(connection, run.c.id == row["id"])
         chain.append(
             connection, by, "amend", "run", code,

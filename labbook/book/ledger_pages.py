@@ -86,6 +86,9 @@ def _line(row, owners) -> Line:
     )  # fmt: skip
 
 
+_COUNTED = {*SHELF, "reading", "run", "published point"}  # what a load adds
+
+
 def _owners(connection: Connection, codes: list[str]) -> dict[str, tuple[str, str]]:
     """Code of a reading -> (kind, code) of the batch it is of."""
     found = {}
@@ -100,7 +103,11 @@ def _text(value) -> str:
     if value is None:
         return ""
     if isinstance(value, dict):
-        return ", ".join(f"{n} {k}{'s' if n != 1 else ''}" for k, n in value.items())
+        if set(value) <= _COUNTED:
+            return ", ".join(f"{n} {k}{'s' if n != 1 else ''}" for k, n in value.items())
+        return ", ".join(f"{k} {_text(v)}" for k, v in value.items())
+    if isinstance(value, float):
+        return f"{value:.4g}"
     if isinstance(value, list):
         return (
             f"{len(value)} warning{'s' if len(value) != 1 else ''}: {'; '.join(map(str, value))}"

@@ -205,8 +205,7 @@ def _arrivals(connection: Connection, rows: list[SheetRow], findings: Findings) 
                 continue
             here[code] = row.where
             if code in in_book:
-                before, _ = read_draft("run", cells_of(connection, in_book[code]))
-                known = before.content()
+                known = _known(connection, in_book[code], row.draft)
                 # what the book filled in is no difference: who, and the default drive
                 told = {k: v for k, v in known.items() if k in row.draft.content() or k not in ("by", "drive", "state")}
                 told["code"] = code
@@ -214,6 +213,15 @@ def _arrivals(connection: Connection, rows: list[SheetRow], findings: Findings) 
                 continue
         fresh.append(Arrival(row.draft, row.where, sheet_row))
     return fresh
+
+
+def _known(connection, row, draft: Draft) -> dict[str, str]:
+    """What the book holds of a run, for comparing a draft with it: beside a track's value the typed one counts too."""
+    with_track, typed = (read_draft("run", cells_of(connection, row, track=on))[0].content() for on in (True, False))
+    told = draft.content()
+    return {k: v for k, v in with_track.items() if typed.get(k) == v or told.get(k) != typed.get(k)} | {
+        k: v for k, v in typed.items() if told.get(k) == v
+    }
 
 
 def _stored_rows(connection, wanted: list[str]) -> set[str]:

@@ -10,7 +10,7 @@ from sqlalchemy import Connection, case, func, select
 
 from labbook.book.asking import Question, check_key, holds
 from labbook.book.block_spread import section_of
-from labbook.book.dialect_columns import Dialects, restated_frame
+from labbook.book.dialect_columns import Dialects, house_in_words, restated_frame
 from labbook.book.registry_rows import registry_of
 from labbook.book.shelf import document, item_of
 from labbook.book.stored_view import SENTENCES, resolved, view_column
@@ -64,6 +64,7 @@ def frame(
     ids = np.array([r[len(texts)] for r in rows], dtype=np.int64) if dialects else None
     table = _table(connection, rows, texts, keys, prefixes, len(text_columns))
     table.attrs["units"] = {k: registry.unit(k) for k in keys}
+    table.attrs["dialects"] = house_in_words(registry, keys)
     return table if ids is None else restated_frame(connection, registry, table, ids, dialects)
 
 

@@ -10,14 +10,16 @@ from sqlalchemy import Connection, select
 from labbook.book.absence import marks_of, why_absent
 from labbook.book.asking import Question
 from labbook.book.clock import local
-from labbook.book.dialect_columns import Dialects
+from labbook.book.dialect_columns import Dialects, house_in_words
 from labbook.book.queries import RUN_TEXTS, frame
 from labbook.book.registry_rows import registry_of
 from labbook.book.stored_view import SENTENCES
 from labbook.book.tables import run
+from labbook.book.track_pages import TrackSheet, track_of, tracks_of
 from labbook.errors import Refusal
 from labbook.registry.group import Registry
 from labbook.registry.regimes import regimes_of
+from labbook.registry.typed import REDUCED
 
 
 @dataclass(frozen=True)
@@ -25,7 +27,8 @@ class RunSheet:
     """One run: text columns, typed documents, values (SI) with u, u_own, u_shared, and how they came about.
 
     sentences: 'viscosity: fit of 3 readings of 2026-03-01' and the like, absent ones left out; dialects: number
-    -> words, for numbers whose values are not in the house dialect (regimes always are).
+    -> words, for numbers whose values are not in the house dialect (regimes always are); track: what values of the
+    run come from, None where all were typed.
     """
 
     texts: dict[str, str | None]
@@ -40,6 +43,7 @@ class RunSheet:
     marks: dict[str, list[str]]
     logged: str | None = None
     dialects: dict[str, str] = field(default_factory=dict)
+    track: TrackSheet | None = None
 
     def row(self) -> dict:
         """The run as one flat record, for JSON."""
@@ -53,6 +57,7 @@ class RunSheet:
             "regimes": self.regimes,
             "why_absent": self.why_absent,
             "marks": self.marks,
+            "track": self.track.row() if self.track is not None else None,
         } | ({"dialects": self.dialects} if self.dialects else {})
 
 
@@ -65,13 +70,15 @@ def sheets(
     """The sheets of the runs that a question finds, some numbers in other dialects if asked."""
     found = frame(connection, question, texts=_TEXTS, newest=newest)
     registry = registry_of(connection)
+    tracks = tracks_of(connection, [code for code, marks in zip(found["code"], found["marks"], strict=True)
+                                    if marks and REDUCED in marks])  # fmt: skip
     if not dialects:
-        yield from (sheet_from(row, registry) for row in found.to_dict("records"))
+        yield from (sheet_from(row, registry, track=tracks.get(row["code"])) for row in found.to_dict("records"))
         return
     spoken = frame(connection, question, keys=tuple(dialects), texts=("code",), newest=newest, dialects=dialects)
     place = {code: i for i, code in enumerate(spoken["code"])}
     for row in found.to_dict("records"):
-        yield _in_dialects(sheet_from(row, registry), spoken, place[row["code"]])
+        yield _in_dialects(sheet_from(row, registry, track=tracks.get(row["code"])), spoken, place[row["code"]])
 
 
 def _in_dialects(sheet: RunSheet, spoken: pd.DataFrame, i: int) -> RunSheet:
@@ -82,7 +89,7 @@ def _in_dialects(sheet: RunSheet, spoken: pd.DataFrame, i: int) -> RunSheet:
     lost = {n: why[i] for n, why in spoken.attrs["lost"].items() if why[i]}
     return replace(
         sheet, values=sheet.values | more[""], u=sheet.u | more["u_"], u_own=sheet.u_own | more["u_own_"],
-        u_shared=sheet.u_shared | more["u_shared_"], dialects=words,
+        u_shared=sheet.u_shared | more["u_shared_"], dialects=sheet.dialects | words,
         why_absent=sheet.why_absent | {n: f"dialect {words[n]}: {why}" for n, why in lost.items()},
     )  # fmt: skip
 
@@ -93,7 +100,7 @@ def run_sheet(connection: Connection, code: str) -> RunSheet:
     if stored is None:
         raise Refusal("run", code, "the book has no such run")
     row = frame(connection, _Only(state="all", run_id=stored[0]), texts=_TEXTS).to_dict("records")[0]
-    return sheet_from(row, registry_of(connection), stored[1])
+    return sheet_from(row, registry_of(connection), stored[1], track_of(connection, code))
 
 
 @dataclass(frozen=True)
@@ -109,18 +116,22 @@ class _Only(Question):
         return True
 
 
-def sheet_from(row: dict, registry: Registry, logged: str | None = None) -> RunSheet:
+def sheet_from(
+    row: dict, registry: Registry, logged: str | None = None, track: TrackSheet | None = None
+) -> RunSheet:
     """A sheet from one row of a frame with all columns."""
     texts = {k: _plain(row[k]) for k in RUN_TEXTS}
     values = {k: _number(row[k]) for k in registry.keys}
     u = {p: {k: _number(row[f"{p}{k}"]) for k in registry.keys} for p in ("u_", "u_own_", "u_shared_")}
     said = {s: row[s] for s in SENTENCES}
     return RunSheet(
-        texts, row["typed"], values, u["u_"], u["u_own_"], u["u_shared_"],
+        texts, {k: entry for k, entry in row["typed"].items() if k != "scale"}, values, u["u_"], u["u_own_"], u["u_shared_"],
         {s: text for s, text in said.items() if text and not text.startswith("absent")},
         regimes_of(values, registry.regimes),
-        why_absent(values, said, texts["swimmer"] or "", texts["drive"] or "", registry),
+        why_absent(values | {f"u_{k}": v for k, v in u["u_"].items()}, said, texts["swimmer"] or "",
+                   texts["drive"] or "", registry),
         marks_of(row["marks"], row["confirmed"], values, registry), logged,
+        house_in_words(registry, registry.numbers), track=track,
     )  # fmt: skip
 
 

@@ -1,7 +1,7 @@
 """The wide stored view: one row a run, per key a value, u_own and u_shared, built from the registry at any time."""
 
 import hashlib
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from functools import lru_cache
 
 import numpy as np
@@ -113,18 +113,24 @@ def build(connection: Connection, own: tuple[str, ...] = ()) -> None:
 
 def built(connection: Connection, own: tuple[str, ...] = ()) -> bool:
     """Whether the view stands with these columns; it may keep empty ones of withdrawn numbers."""
-    return set(table_of(own).c.keys()) <= _columns(connection)
+    return set(map(_folded(connection), table_of(own).c.keys())) <= _columns(connection)
 
 
 def _columns(connection: Connection) -> set[str]:
     inspector = inspect_database(connection)
-    return {c["name"] for c in inspector.get_columns(VIEW_NAME)} if inspector.has_table(VIEW_NAME) else set()
+    there = inspector.get_columns(VIEW_NAME) if inspector.has_table(VIEW_NAME) else ()
+    return {_folded(connection)(c["name"]) for c in there}
+
+
+def _folded(connection: Connection) -> Callable[[str], str]:
+    """A column's name as the database tells columns apart: to SQLite mg and Mg are one."""
+    return str.lower if connection.dialect.name == "sqlite" else str
 
 
 def add_number(connection: Connection, key: str) -> None:
     """Give the view the columns of an own number, empty."""
     there = _columns(connection)
-    for new in (c for c in _own(key) if c.name not in there):
+    for new in (c for c in _own(key) if _folded(connection)(c.name) not in there):
         kind = new.type.compile(connection.dialect)
         connection.exec_driver_sql(f'ALTER TABLE {VIEW_NAME} ADD COLUMN "{new.name}" {kind}')
 

@@ -7,6 +7,7 @@ from sqlalchemy import (
     Column,
     ForeignKey,
     Integer,
+    LargeBinary,
     MetaData,
     String,
     Table,
@@ -192,6 +193,35 @@ published = Table(
     Column("state", String(8), nullable=False),
     Column("why", Text),
     Column("sheet_row", String(80), unique=True),
+)
+
+# files kept byte for byte, each once, addressed by what is in it
+kept_file = Table(
+    "kept_file",
+    metadata,
+    Column("id", Integer, primary_key=True),
+    Column("digest", String(64), nullable=False, unique=True),  # SHA-256 of the content, in hex
+    Column("name", String(255), nullable=False),
+    Column("size", Integer, nullable=False),
+    Column("content", LargeBinary, nullable=False),
+)
+
+# a file of positions reduced for a run; one at a time is in use, those before it stay
+track = Table(
+    "track",
+    metadata,
+    Column("id", Integer, primary_key=True),
+    _code(),
+    Column("run_id", ForeignKey("run.id"), nullable=False, index=True),
+    Column("file_id", ForeignKey("kept_file.id"), nullable=False, index=True),
+    Column("settings", JSON, nullable=False),
+    Column("result", JSON, nullable=False),
+    Column("replaced", JSON, nullable=False),  # key that the track brought -> what was typed, null for nothing
+    Column("at", String(20), nullable=False),
+    Column("by", String(64), nullable=False),
+    Column("state", String(8), nullable=False),
+    Column("why", Text),
+    CheckConstraint("state IN ('in use', 'replaced')", name="state"),
 )
 
 SHELF = {"fluid": fluid, "material": material, "swimmer": swimmer, "rig": rig}

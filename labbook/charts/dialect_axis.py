@@ -37,8 +37,11 @@ def dialect_title(
     row = NUMBERS[number]
     formula = _formula(number, chosen)
     head = f"{row.name} {formula}" if _spelt_out(row) else f"{row.symbol} = {formula}"
-    words = written_choices(number, chosen, house)
-    return f"{head}, {axes.HOUSE if words == 'house' else f'dialect {words}'}"
+    # said against the dialect at birth: that one never changes
+    words = written_choices(number, chosen)
+    if chosen == completed(number, {}, house):
+        return f"{head}, {axes.HOUSE} ({words})"
+    return f"{head}, dialect {'as at birth' if words == 'house' else words}"
 
 
 def dialect_label(
@@ -65,7 +68,8 @@ def axis_words(keys: Iterable[str], spoken: Mapping[str, Choices], registry: Reg
             said.append(f"{title}, {OWN} number, version {registry.versions.get(key, 1)}")
         elif key in registry.numbers:
             title = dialect_title(key, spoken.get(key, {}), registry.choices(key) or None, registry.numbers)
-            said.append(title if key in spoken else f"{title} ({registry.numbers[key].dialect})")
+            told = key in spoken or key in registry.house  # the title names its choices already
+            said.append(title if told else f"{title} ({registry.numbers[key].dialect})")
     return f"{'. '.join(said)}." if said else ""
 
 

@@ -7,7 +7,15 @@ import altair as alt
 import numpy as np
 import pandas as pd
 
-from labbook.charts import axes, drawable, trend_layers, trend_marks, trend_shared
+from labbook.charts import (
+    axes,
+    drawable,
+    trend_boxes,
+    trend_layers,
+    trend_marks,
+    trend_published,
+    trend_shared,
+)
 from labbook.charts.bands import bands_of
 from labbook.charts.palette import OTHER, series, theme
 from labbook.errors import Refusal
@@ -20,12 +28,16 @@ SPACE = " "  # in 1 204: a line must not break there
 
 @dataclass(frozen=True)
 class Trend:
-    """A chart, the number of runs drawn, {reason: runs} left out, and the line that goes below."""
+    """A chart, the number of runs drawn, {reason: runs} left out, and the line that goes below.
+
+    published: the points of others that are drawn beside the runs, and never counted among them.
+    """
 
     chart: alt.LayerChart
     drawn: int
     left_out: dict[str, int]
     caption: str
+    published: int = 0
 
 
 def trend(
@@ -51,6 +63,7 @@ def trend(
     left_out: Mapping[str, int] | None = None,
     numbers: Mapping[str, Number] = NUMBERS,
     regimes=None,
+    published: pd.DataFrame | None = None,
 ) -> Trend:
     """y against x, a mark per run (or per cell of runs), coloured and shaped by `group`.
 
@@ -61,7 +74,9 @@ def trend(
     picked: code of the run ringed in rust; in_hand: x, y, u_x, u_y of the new run, a rust dot.
     curve: columns x, y and, where known, low, high (a band) and label.
     x_title, y_title, x_label, y_label: replace the registry's titles and symbols (another dialect).
-    left_out: runs the caller already dropped, by reason. numbers, regimes: the book's own rows in place of those at birth.
+    left_out: runs the caller already dropped, by reason.
+    numbers, regimes: the book's own rows in place of those at birth.
+    published: points that others printed, as trend_published.drawable_points takes them.
     The selection parameter 'pick' returns the field `code`.
     Errors: Refusal for an unknown column, key or kind of bars.
     """
@@ -88,8 +103,10 @@ def trend(
         shown = drawable.thinned(shown, x=x, y=y, group="_group" if names else None, log_x=log_x, log_y=log_y)
 
     point = _point_in_hand(in_hand, log_x, log_y)
-    x_values = np.append(shown[x].to_numpy(dtype=float), [] if point is None else point["x"])
-    y_values = np.append(shown[y].to_numpy(dtype=float), [] if point is None else point["y"])
+    beside, not_beside = trend_published.drawable_points(published, x=x, y=y, log_x=log_x, log_y=log_y)
+    hand = {"x": [], "y": []} if point is None else {k: [point[k]] for k in ("x", "y")}
+    x_values = np.concatenate([shown[x].to_numpy(dtype=float), beside[x].to_numpy(dtype=float), hand["x"]])
+    y_values = np.concatenate([shown[y].to_numpy(dtype=float), beside[y].to_numpy(dtype=float), hand["y"]])
     if not x_values.size and curve is not None:
         x_values, y_values = curve["x"].to_numpy(dtype=float), curve["y"].to_numpy(dtype=float)
     x_domain = (axes.log_domain if log_x else axes.linear_domain)(x_values)
@@ -106,9 +123,10 @@ def trend(
     if bands:
         layers += trend_layers.band_areas(plane, bands_of(x, *plane.x_domain, regimes),
                                           bands_of(y, *plane.y_domain, regimes))
+        layers += trend_boxes.box_layers(plane, regimes)
     told: list[str] = []
     if families:
-        behind, told = _shared(plane, shown, names)
+        behind, told = _shared(plane, shown, names, group)
         layers += behind
     layers += trend_marks.marks(plane, shown, names=names, group=group, u_x=u_x, u_y=u_y, bars=bars != "none")
     if curve is not None and len(curve):  # over the marks, which would hide it where there are many
@@ -116,6 +134,7 @@ def trend(
     if bands:
         layers += trend_layers.band_names(plane, bands_of(x, *plane.x_domain, regimes),
                                           bands_of(y, *plane.y_domain, regimes))
+    layers += trend_published.point_layers(plane, beside, shown, bars=bars != "none")
     if len(ring):
         layers.append(trend_layers.ring(plane, ring.iloc[0]))
     if point is not None:
@@ -125,13 +144,16 @@ def trend(
     barred = bool({u_x, u_y} & set(shown.columns)) and len(shown) > 0
     notes = _notes(bars if barred else "none", largest, names, in_hand is not None and point is None,
                    bool(picked) and not len(ring))
-    return Trend(chart, drawn, reasons, caption(drawn, reasons, [*notes, *told]))
+    told += trend_published.point_words(beside, not_beside, bars != "none")
+    return Trend(chart, drawn, reasons, caption(drawn, reasons, [*notes, *told]), len(beside))
 
 
-def _shared(plane: trend_layers.Plane, shown: pd.DataFrame, names: list[str]) -> tuple[list, list[str]]:
+def _shared(plane: trend_layers.Plane, shown: pd.DataFrame, names: list[str], group) -> tuple[list, list[str]]:
     """The shared bands and what is said of them; a grid of many runs and 'other' groups have none."""
     if "n" in shown.columns:
         return [], ["No shared bands on a grid of many runs: narrow the filter first"]
+    if group != "swimmer":
+        return [], [trend_shared.ELSEWHERE]
     one_family = shown[shown["_group"] != OTHER] if names else shown
     bands = trend_shared.family_bands(one_family, plane.x, plane.y, one_family["_group"] if names else None)
     hues = {n: s.colour for n, s in trend_marks.looks_of(names, plane.dark).items()}

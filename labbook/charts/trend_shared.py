@@ -9,17 +9,19 @@ from labbook.charts.trend_layers import HUE, Plane, inline, short
 SHARED = "shared band"  # the kind of bars
 STRETCHES = 12  # places along x that a family's band goes through at most
 FEW = 3  # with fewer places along x a family has a bar at each instead of a band
-LINE = "Bands: what a family shares (fluid, material, swimmer), 2 u; more runs do not shrink it"
+LINE = "Bands: what runs of one swimmer share at most (fluid, material, swimmer, rig), 2 u; more runs do not shrink it"
+ELSEWHERE = "Shared bands need the colour 'swimmer': runs of several swimmers share less than each one's shared part"
+FAR = 3.0  # times the usual step along x: across a wider gap no band is drawn
 AREA_OPACITY, EDGE_OPACITY = 0.30, 0.55
 BAR_WIDTH = 9  # pixels
 
 
 def family_bands(shown: pd.DataFrame, x: str, y: str, family: pd.Series | None) -> pd.DataFrame:
-    """Columns family, x, low, high, alone: y -+ 2 u_shared(y) along the runs of each family, sorted by x.
+    """Columns family, x, low, high, alone, piece: y -+ 2 u_shared(y) along the runs of each family, sorted by x.
 
     A family of up to STRETCHES runs has each of them; of more, it is cut into so many stretches of equal
     count and has each one's middle x and y and root mean square u: the band follows the family, not the
-    scatter of its runs. alone: fewer than FEW places along x. A run whose y shares nothing takes no part;
+    scatter of its runs. alone: fewer than FEW places in this piece along x. A run whose y shares nothing takes no part;
     family: None makes all one.
     """
     u = shown.get(f"u_shared_{y}", pd.Series(np.nan, index=shown.index)).to_numpy(dtype=float)
@@ -32,9 +34,18 @@ def family_bands(shown: pd.DataFrame, x: str, y: str, family: pd.Series | None) 
     # one x twice would make an edge upright
     middle = middle.reset_index().groupby(["family", "x"])[["y", "uu"]].mean().reset_index()
     half = 2.0 * np.sqrt(middle["uu"])
-    alone = middle.groupby("family")["x"].transform("size") < FEW
+    piece = _pieces(middle)
+    alone = middle.groupby([middle["family"], piece])["x"].transform("size") < FEW
     return pd.DataFrame({"family": middle["family"], "x": middle["x"], "low": middle["y"] - half,
-                         "high": middle["y"] + half, "alone": alone})  # fmt: skip
+                         "high": middle["y"] + half, "alone": alone, "piece": piece})  # fmt: skip
+
+
+def _pieces(middle: pd.DataFrame) -> pd.Series:
+    """Which piece of its family's band a place is in: a band that crossed a wide gap would read as a fit."""
+    along = np.log(middle["x"]) if (middle["x"] > 0).all() else middle["x"]
+    step = along.groupby(middle["family"]).diff()
+    usual = step.groupby(middle["family"]).transform("median")
+    return (step > FAR * usual).groupby(middle["family"]).cumsum()
 
 
 def shared_layers(plane: Plane, bands: pd.DataFrame, hues: dict[str, str], plain: str) -> list[alt.Chart]:
@@ -45,7 +56,7 @@ def shared_layers(plane: Plane, bands: pd.DataFrame, hues: dict[str, str], plain
     for alone, part in bands.groupby("alone"):
         rows = [
             {"x": short(r.x), "low": short(max(r.low, floor)), "high": short(max(r.high, floor)),
-             "family": r.family, "hue": hues.get(r.family, plain)}
+             "family": r.family, "piece": int(r.piece), "hue": hues.get(r.family, plain)}
             for r in part.itertuples()
         ]  # fmt: skip
         chart = alt.Chart(inline(rows), name="shared_bars" if alone else "shared_bands")
@@ -55,7 +66,7 @@ def shared_layers(plane: Plane, bands: pd.DataFrame, hues: dict[str, str], plain
         else:
             mark = chart.mark_area(fill=HUE, fillOpacity=AREA_OPACITY, stroke=HUE, strokeOpacity=EDGE_OPACITY,
                                    strokeWidth=1, clip=True, tooltip=None)  # fmt: skip
-        layers.append(mark.encode(x=plane.across("x"), y=plane.up("low"), y2="high", detail="family:N"))
+        layers.append(mark.encode(x=plane.across("x"), y=plane.up("low"), y2="high", detail=["family:N", "piece:O"]))
     return layers
 
 

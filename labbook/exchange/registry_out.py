@@ -5,8 +5,8 @@ import io
 from collections.abc import Mapping
 
 from labbook.exchange.outward import harmless
-from labbook.registry.catalogue import Number
-from labbook.registry.dialects import DIALECTS, Dialect
+from labbook.registry.catalogue import NUMBERS, Number
+from labbook.registry.dialects import AT_BIRTH, DIALECTS, completed, written_choices
 from labbook.registry.formula import parse
 from labbook.registry.group import Registry
 from labbook.registry.latex import formula_latex, number_latex
@@ -29,7 +29,8 @@ def registry_csv(registry: Registry, counts: Mapping[str, int]) -> str:
 def _row(number: Number, registry: Registry, runs: int) -> tuple:
     inputs = ", ".join(f"{key} [{QUANTITIES[key].unit}]" for key in number.inputs)
     regimes = "; ".join(f"{name}: {words}" for name, words in _regimes(number, registry))
-    spoken = "; ".join(f"{_choices(row)}: {row.formula} ({row.source})" for row in _spoken(number))
+    others = other_dialects(number.key, registry)
+    spoken = "; ".join(f"{words}: {formula} ({source})" for words, (formula, source) in others.items())
     return (
         number.key, number.symbol, number.name, number.formula, number.dialect, number.compares, inputs,
         number.source, regimes, spoken, _version(number, registry), runs,
@@ -40,13 +41,21 @@ def _regimes(number: Number, registry: Registry) -> list[tuple[str, str]]:
     return [(r.name, r.words) for r in registry.regimes.values() if number.key in r.numbers]
 
 
-def _spoken(number: Number) -> list[Dialect]:
-    """The published dialects of a number that differ from the one it had at birth."""
-    return [row for row in DIALECTS if row.of == number.key and row.choices]
+def other_dialects(number: str, registry: Registry) -> dict[str, tuple[str, str]]:
+    """Where each published dialect departs from the group's house -> (formula, source); the house is left out.
 
-
-def _choices(row: Dialect) -> str:
-    return ", ".join(f"{name} {option}" for name, option in row.choices.items())
+    The dialect at birth is among them where the group chose another; {} for a number without dialects.
+    """
+    if number not in AT_BIRTH:
+        return {}
+    house, born = registry.choices(number), NUMBERS[number]
+    rows = [(row.choices, row.formula, row.source) for row in DIALECTS if row.of == number]
+    told: dict[str, tuple[str, str]] = {}
+    for choices, formula, source in [({}, born.formula, born.source), *rows]:
+        chosen = completed(number, choices)
+        if chosen != house:
+            told.setdefault(written_choices(number, chosen, house), (formula, source))
+    return told
 
 
 def _version(number: Number, registry: Registry) -> str:
@@ -81,13 +90,13 @@ def _section(number: Number, registry: Registry, runs: int) -> str:
     head = f"## {_text(number.name)}: {_text(number.symbol)} `{number.key}`"
     lines = [head, "", f"${number_latex(number)}$", ""]
     lines += [f"- {word}: {text}" for word, text in told.items() if text]
-    rows = _spoken(number)
-    spoken = [f"  - {_text(_choices(row))}: ${_formula(row)}$; {_text(row.source)}" for row in rows]
+    others = other_dialects(number.key, registry).items()
+    spoken = [f"  - {_text(words)}: ${_formula(text)}$; {_text(source)}" for words, (text, source) in others]
     return "\n".join([*lines, *(["- dialects:", *spoken] if spoken else [])])
 
 
-def _formula(row: Dialect) -> str:
-    return formula_latex(parse(row.formula, QUANTITIES).tree)
+def _formula(text: str) -> str:
+    return formula_latex(parse(text, QUANTITIES).tree)
 
 
 def _text(text: str) -> str:

@@ -42,6 +42,8 @@ class Number:
             raise Refusal(self.key, None, "a number needs a name, what it compares and a source")
         parsed = parse(self.formula, QUANTITIES)
         object.__setattr__(self, "parsed", parsed)
+        if not parsed.keys:
+            raise Refusal("formula", self.formula, "holds no quantity", "write e.g. rho * U * L_body / mu")
         left_over = parsed.dimension({k: q.dimension for k, q in QUANTITIES.items()})
         if not pure(left_over):
             raise Refusal(

@@ -116,6 +116,12 @@ def _checked(node, vocabulary, text, keys):
             sign = _OPERATORS[type(op)][0]
             kind = Sum if sign in "+-" else Product
             return kind(_checked(left, vocabulary, text, keys), _checked(right, vocabulary, text, keys), sign)
+        case ast.BinOp(op=ast.BitXor()):
+            raise Refusal("formula", text, "^ is not allowed", "write ** for powers")
+        case ast.Constant(value=value) if type(value) in (int, float):
+            raise Refusal("formula", text, "holds a number that is too large")
+        case ast.Constant(value=value):
+            raise Refusal("formula", text, f"{value!r} is no number")
         case ast.Call():
             raise Refusal("formula", text, "calls are not allowed", "use + - * / ** and brackets")
         case ast.Attribute():

@@ -1,5 +1,6 @@
 """A group's own number from what people type: key, formula, worked example with units, answer."""
 
+import math
 import re
 from collections.abc import Collection, Mapping
 
@@ -37,6 +38,8 @@ def read_number(cells: Mapping[str, str], registry: Registry, taken: Collection[
     found += [Refusal(k, None, "is missing", hint) for k, hint in _REQUIRED.items() if k not in given]
     found += [Refusal(k, v[:40] + "...", f"is longer than {MOST_TEXT} characters")
               for k, v in given.items() if len(v) > MOST_TEXT]  # fmt: skip
+    found += [Refusal(k, v[:40], "must be one line of readable characters")
+              for k, v in given.items() if not v.replace("\n", " ").isprintable()]  # fmt: skip
     if found:
         raise Refusals(found) if len(found) > 1 else found[0]
     key = _free_key(given["key"], registry, taken)
@@ -67,6 +70,8 @@ def read_answer(text: str) -> tuple[float, float]:
     if match is None:
         raise Refusal("answer", text, "is no plain number", "write e.g. 4.88 or 1.2e-3")
     value = float(match[0])
+    if not math.isfinite(value):
+        raise Refusal("answer", text, "is too large a number")
     if value == 0:
         raise Refusal("answer", text, "zero would check nothing", "choose an example with another answer")
     half = 0.5 * 10.0 ** (int(match[5] or 0) - len(match[3] or match[4] or ""))
@@ -84,6 +89,8 @@ def read_example(text: str, keys: Collection[str]) -> dict[str, float]:
         try:
             if not equals or key not in QUANTITIES:
                 raise Refusal("example", part.strip(), "is no 'key = value with unit' of the vocabulary")
+            if key in values:
+                raise Refusal(key, written, "stands twice in the worked example")
             values[key] = _value(key, written)
         except Refusal as refusal:
             found.append(Refusal("example", f"{key} = {written}", refusal.reason, refusal.remedy))

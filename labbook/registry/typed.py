@@ -11,6 +11,7 @@ from labbook.registry.units import accepted, spread_to_si, to_si
 
 DIGITS = "digits"  # no uncertainty was typed: half the last written digit, rectangular
 STATED = "stated"
+REDUCED = "reduced"  # from a track: the text was written by labbook, and reads as value and uncertainty
 MOST_CHARACTERS = 80
 ROOT_3 = math.sqrt(3)
 
@@ -19,7 +20,8 @@ class Typed(NamedTuple):
     """One quantity as typed.
 
     text: as written; unit: house spelling of the unit it was in; value and u: SI value and standard
-    uncertainty; origin: 'stated' where an uncertainty was typed, 'digits' where it follows from the digits.
+    uncertainty; origin: 'stated' where an uncertainty was typed, 'digits' where it follows from the digits,
+    'reduced' where nobody typed it: it comes from a track.
     """
 
     text: str
@@ -183,6 +185,20 @@ def read_uncertainty(key: str, text: str, unit: str | None = None) -> Typed:
         return Typed(text.strip(), "%", value / 100, 0.0, "relative")
     house = accepted(key, chosen)
     return Typed(text.strip(), house, spread_to_si(key, value, house), 0.0, "absolute")
+
+
+def reduced(key: str, value: float, u: float) -> Typed:
+    """A quantity from a track: written in SI with three digits of u, and rounded to what that text reads as.
+
+    Errors: Refusal (not finite, no uncertainty, impossible sign).
+    """
+    if not (math.isfinite(value) and math.isfinite(u) and u > 0):
+        raise Refusal(key, f"{value:g} +- {u:g}", "is not measured by this track", "leave it out")
+    first = math.floor(math.log10(max(abs(value), u)))
+    places = min(first - math.floor(math.log10(u)) + 2, 15)  # a float has no more
+    scaled, last = value / 10.0**first, max(round(u / 10.0 ** (first - places)), 1)
+    text = f"{scaled + 0.0:.{places}f}({last})" + (f"e{first}" if first else "") + f" {quantity(key).unit}"
+    return read(key, text)._replace(origin=REDUCED)
 
 
 def printed_uncertainty(typed: Typed) -> str:

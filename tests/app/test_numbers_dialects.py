@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 from labbook import Book
+from labbook.book.ledger_pages import newest_line
 from labbook.registry.dialects import AT_BIRTH, CHOICES, DIALECTS, completed, read_choices
 
 WHY = "as in our papers"
@@ -151,6 +152,10 @@ def test_a_new_house_dialect_is_adopted_with_before_and_after(page, kept):
     row = f'<td>runs in working tail</td><td class="n">{before}</td><td class="n">{n}</td>'
     assert before != n and row in said
     assert "Sp is now length L_tail, rate omega, coefficient mu" in page.at.success[0].value
+    with Book.open(page.book) as book:
+        again = int({what: now for what, _, now in book.ask(newest_line).changes}["derived runs"])
+    assert 0 < again < total  # some runs have no Sp and stay as they were
+    assert page.at.success[0].value.endswith(f"; {again} runs were derived again")  # as the ledger says
     assert f"<td>{WHY}</td>" in said and "wren</td>" in said  # in the list: since when, and why
     # the published rows now stand beside the new house: mu is it, and the one at birth has a row of its own
     assert "<b>coefficient cylinder_finite, as at birth</b>" in said

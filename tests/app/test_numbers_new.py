@@ -31,6 +31,19 @@ def said(page) -> str:
     return html.unescape(page.words())
 
 
+def tried(page):
+    """The box with the run that the formula is tried on."""
+    (found,) = [box for box in page.at.selectbox if box.label.startswith("Try it on a run")]
+    return found
+
+
+def type_code(page, keys, text):
+    """Type a text that is none of the box's options: AppTest can only set it before the box is made."""
+    formula = page.at.text_input(key=f"{NEW}:0:formula").value
+    page.fill(NEW, formula="").run().at.session_state[f"numbers:try:{keys}"] = text
+    return page.fill(NEW, formula=formula).run()
+
+
 def lines_of(path) -> int:
     with Book.open(path) as book:
         return int(book.ask(newest_line).id)
@@ -65,7 +78,7 @@ def test_a_pure_number_is_set_as_mathematics_and_tried_on_a_run(form, demo_book)
     whole = runs.dropna(subset=["mu", "f", "L_tail", "EI"])
     assert f"{len(whole)} kept runs have all its inputs." in said(form)
     newest = whole.iloc[-1]
-    assert form.at.selectbox(key="numbers:try").value == newest["code"]
+    assert tried(form).value == newest["code"]
     # the value and the quadrature of JCGM 100:2008, 5.1.2, written out for this product of powers
     value = newest["mu"] * newest["f"] * newest["L_tail"] ** 4 / newest["EI"]
     parts = {k: p * newest[f"u_{k}"] / newest[k] for k, p in (("mu", 1), ("f", 1), ("L_tail", 4), ("EI", -1))}
@@ -92,18 +105,46 @@ def test_a_run_that_lacks_an_input_or_does_not_exist_says_so(open_page, demo_boo
     lacking = runs[runs["lam"].isna() & runs["f"].notna()]["code"].iloc[-1]
     for code, sentence in ((lacking, f"{lacking}: this run lacks lam."), ("R-9999999", "R-9999999")):
         form = open_page(demo_book, "numbers", part="new").fill(NEW, formula="lam * f").run()
-        assert form.said() == [] and form.at.selectbox(key="numbers:try").value != lacking
-        form.fill(NEW, formula="")  # the field leaves and comes back: AppTest cannot type a code into it
-        form.run().at.session_state["numbers:try"] = code
-        (refusal,) = form.fill(NEW, formula="lam * f").run().said()
+        assert form.said() == [] and tried(form).value != lacking
+        (refusal,) = type_code(form, "lam,f", code).said()
         assert sentence in refusal
 
 
 def test_another_formula_moves_on_to_a_run_that_has_its_inputs(form):
     form.fill(NEW, formula="b / h_wall").run()
-    first = form.at.selectbox(key="numbers:try").value
+    first = tried(form).value
     form.fill(NEW, formula="lam * f").run()
-    assert form.said() == [] and form.at.selectbox(key="numbers:try").value != first
+    assert form.said() == [] and tried(form).value != first
+
+
+def test_each_set_of_inputs_has_a_box_of_its_own_that_shows_the_run_whose_values_stand(form, demo_book):
+    # a browser keeps what a box of the same key shows, whatever the page says of it
+    form.fill(NEW, formula="U / (f * L_tail)").run()
+    first = tried(form)
+    form.fill(NEW, formula="m_mag * B / (8 * pi * mu * b**3 * omega)").run()
+    assert tried(form).proto.id != first.proto.id
+    with Book.open(demo_book) as book:
+        runs = book.runs(columns=("m_mag", "B", "mu", "b", "omega")).set_index("code")
+    m, B, mu, b, w = runs.loc[tried(form).value, ["m_mag", "B", "mu", "b", "omega"]]
+    digits = re.search(r"<b>(\d[^<(]*)\(", form.words())[1]
+    last = 10.0 ** -len(digits.partition(".")[2])  # the shown value is rounded to its last digit
+    assert float(digits) == pytest.approx(m * B / (8 * math.pi * mu * b**3 * w), abs=0.51 * last)
+
+
+def test_a_run_that_was_chosen_stays_where_the_next_formula_can_take_it(form):
+    form.fill(NEW, formula="U / (f * L_tail)").run()
+    third = tried(form).options[2].partition(":")[0]
+    tried(form).set_value(third)
+    form.run().fill(NEW, formula="f * L_tail / U").run()  # the same inputs in another order
+    assert tried(form).value == third
+    assert form.fill(NEW, formula="omega * L_tail / U").run() and tried(form).value == third
+
+
+def test_a_label_that_comes_back_is_read_by_its_code(form):
+    form.fill(NEW, formula="U / (f * L_tail)").run()
+    label = tried(form).options[0]
+    assert ": " in label and type_code(form, "U,f,L_tail", f"{label} of old").said() == []
+    assert "<th>on this run</th>" in form.words().replace(' class="n"', "")
 
 
 def test_the_worked_example_says_what_it_still_needs(form):
@@ -138,11 +179,16 @@ def test_suggestions_count_the_independent_numbers_and_name_the_known_one(form):
     # rho, U, L_body, mu: four quantities of three dimensions, one number, Reynolds' (Buckingham 1914)
     form.at.multiselect(key="numbers:suggest").set_value(["rho", "U", "L_body", "mu"])
     form.run()
-    assert "4 quantities, 1 independent pure number;" in said(form)
+    assert "4 quantities, 1 independent pure number; every other pure number of these quantities is a " in said(form)
+    assert "product of powers of them." in said(form)
     assert "known: Re, Reynolds number" in said(form)
     form.press("use")
     assert form.at.text_input(key=f"{NEW}:0:formula").value == "rho * U * L_body / mu"
     assert "<b>a pure number</b>" in form.words()
+
+
+def test_enter_takes_one_quantity_and_not_every_match(form):
+    assert form.at.multiselect(key="numbers:suggest").proto.select_all == 0  # Streamlit's word for never
 
 
 def test_suggestions_of_quantities_that_allow_none_or_spare_one(form):
@@ -245,6 +291,28 @@ def test_editing_begins_with_what_stands_and_nothing_changed_is_said(open_page, 
     page.fill("number:Vf", 1, formula="3 * mu * f * L_tail**4 / EI", answer="12.00", why="three")
     page.press("Save the number")
     assert "version 2" in page.at.success[0].value and "number" not in page.at.query_params
+
+
+def test_a_number_withdrawn_while_it_is_edited_leaves_what_was_typed(open_page, demo_copy):
+    with Book.open(demo_copy) as book:
+        book.define_number(**CELLS, by="wren")
+        page = open_page(demo_copy, "numbers", part="new", number="Vf")
+        typed = {"formula": "3 * mu * f * L_tail**4 / EI", "answer": "12.00", "why": "three"}
+        page.fill("number:Vf", **typed).run()
+        book.withdraw("number", "Vf", why="the same as Sp", by="finch")
+        page.fill("number:Vf", name="thrice").press("Save the number")
+        assert "Vf" not in book.registry.own  # nobody had read yet that it is gone
+    (sentence,) = page.said()
+    assert "Vf is no longer in the registry: finch withdrew it" in sentence and "the same as Sp" in sentence
+    for column, text in (CELLS | typed | {"name": "thrice"}).items():
+        if column != "example":
+            assert page.at.text_input(key=f"number:Vf:0:{column}").value == text
+    assert "mu = 1.0 Pa.s" in page.at.text_input(key="number:Vf:0:example").value
+    assert not page.at.text_input(key="number:Vf:0:key").disabled
+    page.run().press("Save the number")
+    with Book.open(demo_copy) as book:
+        assert book.registry.own["Vf"].name == "thrice" and book.check() == []
+    assert page.said() == [] and "version 3" in page.at.success[0].value
 
 
 def test_only_own_numbers_are_edited(open_page, demo_book):

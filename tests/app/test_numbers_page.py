@@ -96,6 +96,8 @@ def test_another_house_dialect_is_what_the_page_says(open_page, demo_copy):
         book.adopt_dialect("St", {"rate": "omega"}, why="as in our papers", by="wren")
     words = html.unescape(open_page(demo_copy, "numbers", number="St").words())
     assert "rate: omega" in words and "The group chose rate omega." in words
+    # the other two are the one at birth (Taylor et al. 2003: f times peak to peak) and half of that
+    assert "Other dialects: rate f; rate f, amplitude half." in words
     assert "The group chose" not in html.unescape(open_page(demo_copy, "numbers", number="Re").words())
 
 

@@ -21,6 +21,7 @@ from labbook.charts.histogram import BINS, histogram
 from labbook.cli import main
 from labbook.errors import Refusal
 from labbook.registry.group import Registry, at_birth
+from labbook.registry.regimes import Band, Regime
 
 
 @pytest.fixture
@@ -230,6 +231,83 @@ def test_the_link_and_the_command_ask_the_same(page, book):
 def test_columns_come_from_the_address_in_the_tables_order(page):
     page.go(columns="Sp,f,nonsense,swimmer")
     assert list(page.at.dataframe[0].value.columns) == ["code", "swimmer", "f", "Sp"]
+
+
+def test_a_column_that_the_table_has_not_is_said_and_the_others_are_shown(page):
+    page.go(columns="at,Zzz,Yyy,Sp")
+    (sentence,) = page.said()
+    assert "columns 'Zzz', 'Yyy': the table has no such columns; the others are shown." in sentence
+    assert list(page.at.dataframe[0].value.columns) == ["code", "at", "Sp"]
+    page.go(columns="Zzz")
+    assert "column 'Zzz': the table has no such column; the usual ones are shown." in page.said()[0]
+    assert list(page.at.dataframe[0].value.columns) == ["code", *runs_table.USUAL]
+    assert page.go(columns="at,Sp").said() == [] and page.go().said() == []
+
+
+# ---- what another browser takes away
+
+
+OWN = {"key": "Mq", "name": "half a magnetic number", "formula": "m_mag * B / (mu * f * L_tail**3)",
+       "compares": "magnetic to viscous torque", "source": "own definition", "answer": "2.5",
+       "example": "m_mag = 4 mA.m2, B = 5 mT, mu = 1 Pa.s, f = 1 Hz, L_tail = 20 mm"}  # fmt: skip
+
+
+@pytest.fixture
+def shared(open_page, demo_copy):
+    """(page, book): Runs asked by an own number and an own regime, and the book as another browser has it."""
+    with Book.open(demo_copy) as other:
+        other.define_number(**OWN, by="finch")
+        drawn = Regime("drawn", (Band("Mq", 0.0, 1e6),), "own definition")
+        other.set_regime(drawn, why="to try", by="finch")
+        asked = {"range": "Mq:1e-9:1e9", "regime": ["drawn", "creeping"], "columns": "at,Mq,Sp"}
+        page = open_page(demo_copy, "runs", **asked)
+        assert page.said() == [] and found(page) > 0
+        yield page, other
+
+
+def take_away(other, *what):
+    for kind, key in what:
+        other.withdraw(kind, key, why="not needed", by="finch")
+
+
+GONE = (("regime", "drawn"), ("number", "Mq"))
+
+
+@pytest.mark.parametrize("touch", ["a filter", "a popover", "nothing"])
+def test_what_another_browser_withdrew_is_said_and_the_rest_is_shown(shared, touch):
+    page, other = shared
+    take_away(other, *GONE)
+    person = other.runs(regime="creeping", columns=())["by"].iloc[0]
+    if touch == "a filter":
+        page.at.multiselect(key="runs:filter:person").set_value([person])
+    elif touch == "a popover":
+        page.at.multiselect(key="runs:columns").set_value(["at", "Sp", "U"])
+    page.run()
+    said = page.said()
+    assert sum("regime 'drawn': no regime has this name" in s for s in said) == 1
+    assert sum("'Mq' is no quantity or number of a run" in s for s in said) == 1
+    assert all(s.count("In the filter, ") == (touch == "a filter") for s in said if "column" not in s)
+    assert sum("column 'Mq': the table has no such column" in s for s in said) == (touch != "a popover")
+    people = {"person": [person]} if touch == "a filter" else {}
+    assert found(page) == len(other.runs(regime="creeping", columns=(), **people))
+    assert asked_for(page, "regime") == ["creeping"] and "range" not in page.at.query_params
+    assert list(page.at.button_group(key="runs:filter:regimes").value) == ["creeping"]
+    page.run()
+    page.at.button_group(key="runs:filter:regimes").set_value([])
+    page.run()  # the next touch: it was said
+    assert not any("regime" in s or "quantity" in s for s in page.said())
+
+
+def test_a_number_withdrawn_while_its_range_is_being_typed_is_said(shared):
+    page, other = shared
+    take_away(other, GONE[0])
+    page.run()
+    assert page.at.selectbox(key="runs:filter:range_key").value == "Mq"
+    take_away(other, GONE[1])
+    field(page, "from").set_value("2")
+    page.run()
+    assert any("In the filter, range 'Mq:2:1000000000'" in s for s in page.said())
+    assert page.at.selectbox(key="runs:filter:range_key").value == "Sp" and field(page, "from").value == ""
 
 
 def test_the_table_sorts_by_si_value_under_what_is_written(book, page):

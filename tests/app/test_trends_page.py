@@ -294,8 +294,82 @@ def test_shared_bands_stand_behind_the_own_bars(page):
     spec = chart(app)
     names = [part.get("name") for part in spec["layer"]]
     assert names.index("shared_bands") < names.index("runs") and "bars_y" in names
-    assert "what a family shares (fluid, material, swimmer), 2 u; more runs do not shrink it" in texts(app)
+    assert "share at most (fluid, material, swimmer, rig), 2 u; more runs do not shrink it" in texts(app)
     assert "along x a family may move by" in texts(app)
+
+
+def points_of(app):
+    """Rows of the published points, [] where none is drawn."""
+    return rows_behind(app, "published").to_dict("records") if "published" in layers(chart(app)) else []
+
+
+def test_published_points_stand_beside_the_runs_and_are_none(page, demo_book):
+    app = page()
+    assert [p["series"] for p in points_of(app)] == ["marsh-2014"] * 5 + ["tarn-2017"] * 6
+    # 1.39 with f for omega is 1.39 (2 pi)^(1/4), 0.083/(2 pi); five digits are drawn
+    third = points_of(app)[2]
+    assert (third["x"], third["y"]) == pytest.approx((1.39 * (2 * math.pi) ** 0.25, 0.083 / (2 * math.pi)), rel=1e-4)
+    (drawn,), = by_hand(demo_book, """select count(*) from resolved
+        where state = 'kept' and Sp > 0 and U_scaled > 0""")  # fmt: skip
+    said = texts(app)
+    assert f"{drawn} of 920 runs drawn" in said and f"{drawn} runs drawn ·" in said
+    assert "published, not runs: marsh-2014 (bittern &amp; coot, Letters on Invented Tails 7, 21 (2014), invented), 5" in said
+    assert "tarn-2017 (dipper, Annals of Invented Swimming 3, 140 (2017), invented), 6 points" in said
+
+
+def test_they_follow_the_pages_dialect_and_those_that_cannot_are_counted(page):
+    spoken = points_of(page(dialect=["Sp=rate:f,power:1", "U_scaled=rate:f"]))
+    assert (spoken[2]["x"], spoken[2]["y"]) == pytest.approx((1.39**4, 0.083), rel=1e-4)
+    # spheroid_asymptotic to cylinder_finite and L_body for L_tail: the second needs no more than both lengths
+    app = page(dialect="Sp=coefficient:spheroid_asymptotic,length:L_body")
+    assert [p["x"] for p in points_of(app)] == pytest.approx(
+        [x * 22.4 / 18.0 for x in (0.88, 1.47, 1.96, 2.55, 3.53, 5.09)], rel=1e-4
+    )
+    # which length the reason names is the first that is missing
+    assert re.search(r"5 published points not drawn: no Sp in this dialect \(needs L_(body|tail)\)", texts(app))
+
+
+def test_a_switch_takes_them_away_where_there_are_any(page):
+    app = page()
+    app.toggle(key="trends:published").set_value(False).run()
+    assert value(app, "published") == "off" and points_of(app) == []
+    assert "published" not in texts(app)
+    assert not [t for t in page(x="Re", y="stride").toggle if t.key == "trends:published"]
+
+
+def test_the_switch_is_there_where_all_are_lost(demo_copy, page, monkeypatch):
+    with Book.open(demo_copy) as book:
+        book.withdraw("published", "tarn-2017", why="it gives lengths, the other none", by="wren")
+    monkeypatch.setenv("LABBOOK_OPEN", str(demo_copy))
+    app = page(dialect="Sp=length:L_body")
+    assert [t for t in app.toggle if t.key == "trends:published"] and points_of(app) == []
+    assert "5 published points not drawn: no Sp in this dialect" in texts(app)
+    assert "not runs" not in texts(app)
+
+
+def test_a_touch_on_a_published_point_opens_nothing(page):
+    app = page()
+    app.session_state["picked by the test"] = {"pick": [{"code": ""}]}
+    app.run()
+    assert "run" not in app.query_params and "several runs" not in texts(app)
+
+
+def test_they_are_drawn_where_no_run_is(demo_copy, page, monkeypatch):
+    with Book.open(demo_copy) as book:
+        book.stock("published", series="mere-2022", citation="Mere (2022), invented", x="Sp", x_value="2.0", y="De",
+                   y_value="0.50", by="wren")  # fmt: skip
+    monkeypatch.setenv("LABBOOK_OPEN", str(demo_copy))
+    app = page(x="Sp", y="De")  # no fluid of the demo has a relaxation time
+    assert "No run that was found" in texts(app)
+    assert [(p["x"], p["y"]) for p in points_of(app)] == [(2.0, 0.5)]
+
+
+def test_a_new_point_is_drawn_at_once(demo_copy, page, monkeypatch):
+    monkeypatch.setenv("LABBOOK_OPEN", str(demo_copy))
+    assert len(points_of(page())) == 11
+    with Book.open(demo_copy) as book:
+        book.withdraw("published", "marsh-2014", why="wrong axes", by="wren")
+    assert len(points_of(page())) == 6
 
 
 def test_the_theory_can_be_taken_away(page):
@@ -322,11 +396,13 @@ from labbook.app import session, trend_figure
 from labbook.app.trend_choices import chosen
 from labbook.book.asking import Question
 from labbook.book.plotting import plot_frame
+from labbook.book.published_points import points
 registry = session.registry()
 choices, _ = chosen(registry)
 asked = Question(fluids=("sil5000-a",))
 rows = session.book().ask(plot_frame, asked, choices.x, choices.y, choices.group, dialects=choices.dialects)
-figure = trend_figure.Figure(rows, choices, asked, None, session.book(), registry)
+others = session.book().ask(points, choices.x, choices.y, choices.dialects) if choices.published else None
+figure = trend_figure.Figure(rows, choices, asked, None, others, session.book(), registry)
 st.session_state["files"] = {"svg": figure.svg(), "png": figure.png(), "csv": figure.csv()}
 """
 
@@ -356,6 +432,18 @@ def test_saved_figures_carry_filter_dialect_date_and_book(files, demo_book):
     (kept,), = by_hand(demo_book, """select count(*) from run join fluid on fluid.id = fluid_id
         where fluid.code = 'sil5000-a' and state = 'kept'""")  # fmt: skip
     assert len(rows) == kept
+
+
+def test_saved_figures_name_the_published_series_and_hold_no_row_of_them(files):
+    saved = files()
+    drawn = re.sub(r"<[^>]*>", " ", saved["svg"].decode())
+    first, *table = saved["csv"].decode().splitlines()
+    for said in ("tarn-2017", "Annals of Invented Swimming 3, 140 (2017)"):
+        assert said in first and all(word in drawn for word in said.split())
+    assert not [line for line in table if "tarn-2017" in line]
+    without = files(published="off")
+    assert "tarn-2017" not in without["csv"].decode() and "tarn-2017" not in without["svg"].decode()
+    assert table == without["csv"].decode().splitlines()[1:]
 
 
 def test_files_in_another_dialect_hold_the_restated_values_and_say_so(files, demo_book):

@@ -212,7 +212,7 @@ class TestHouseDialect:
         stored = filled.runs(columns=("Sp",))
         for column in ("Sp", "u_Sp", "u_own_Sp", "u_shared_Sp"):
             assert stored[column].tolist() == pytest.approx(shown[column].tolist(), rel=1e-9, nan_ok=True), column
-        assert filled.runs(dialects={"Sp": {}}).attrs["dialects"] == {"Sp": "house"}
+        assert filled.runs(dialects={"Sp": {}}).attrs["dialects"]["Sp"].startswith("house: ")
         assert filled.check() == []
 
     def test_one_that_needs_a_pitch_is_refused(self, filled, counts):
@@ -251,3 +251,45 @@ class TestDialectsOfAFrame:
             code, value = sheet.texts["code"], sheet.values["Sp"]
             assert (value is None) == math.isnan(house[code])
             assert value is None or value == pytest.approx(house[code] ** 4, rel=1e-12)
+
+
+class TestWhatAReviewFound:
+    def test_a_formula_without_a_quantity_is_no_number(self, filled):
+        with pytest.raises(Refusal, match="holds no quantity"):
+            filled.define_number(**{**MG, "formula": "pi", "example": "f = 1 Hz", "answer": "3.1416"})
+
+    def test_a_withdrawn_key_may_come_back_in_other_capitals(self, book):
+        book.withdraw("number", "Mg", why="tidy", by="wren")
+        book.define_number(**{**MG, "key": "mg"})
+        assert book.runs()["mg"].notna().sum() >= 4 and book.check() == []
+        book.close()
+        with Book.open(book.target) as again:
+            assert again.check() == [] and "mg" in again.runs()
+
+    @pytest.mark.parametrize(
+        ("change", "word"),
+        [({"answer": "1e999"}, "too large"), ({"formula": "m_mag^2"}, r"\*\* for powers"),
+         ({"formula": "1e999 * f / f"}, "too large"), ({"example": "f = 1 Hz, f = 2 Hz"}, "stands twice"),
+         ({"name": "left\u202eright"}, "readable"), ({"name": "nul\0"}, "readable")],
+    )  # fmt: skip
+    def test_odd_texts_are_refused_in_words(self, filled, change, word):
+        with pytest.raises(LabbookError, match=word):
+            filled.define_number(**{**MG, **change})
+
+    def test_an_empty_reason_is_none(self, book):
+        with pytest.raises(Refusal, match="why"):
+            book.define_number(**{**MG, "formula": "2 * m_mag * B / (8 * pi * mu * b**3 * omega)", "answer": "4.0000"}, why=" ")
+
+    def test_regimes_that_differ_by_capitals_are_one(self, filled):
+        with pytest.raises(Refusal, match="capitals alone"):
+            filled.set_regime(Regime("Working Tail", (Band("Sp", 1.0, 2.0),), "own"), why="try", by="wren")
+
+    def test_a_frame_of_a_changed_house_says_which_house(self, filled):
+        assert filled.runs().attrs["dialects"] == {}
+        filled.adopt_dialect("Sp", {"coefficient": "spheroid_asymptotic"}, why="as theory", by="wren")
+        assert filled.runs().attrs["dialects"] == {"Sp": "house: coefficient spheroid_asymptotic"}
+        assert filled.sheet("R-0001").row()["dialects"] == {"Sp": "house: coefficient spheroid_asymptotic"}
+        back = filled.runs(dialects={"Sp": {"coefficient": "cylinder_finite"}})
+        assert back.attrs["dialects"] == {"Sp": "as at birth"}
+        line = lines(filled, "adopt").iloc[0]
+        assert "zeta_ratio" in line["after"]["changed with it"]

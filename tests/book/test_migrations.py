@@ -25,7 +25,7 @@ import sqlalchemy as sa
 from alembic import op
 
 revision = "9001"
-down_revision = "0002"
+down_revision = "0003"
 branch_labels = None
 depends_on = None
 
@@ -121,7 +121,7 @@ def test_a_filled_book_survives_a_table_rebuild_up_and_down(filled, counts, late
         assert book.check() == []
         assert book.record(swimmer="reed-1", fluid="syrup", f="0.5 Hz", by="wren") == "R-0011"
         assert book.check() == []
-        opening.upgrade_to(book.engine, "0002")
+        opening.upgrade_to(book.engine, "0003")
         with book.engine.connect() as connection:
             assert "weather" not in {c["name"] for c in inspect(connection).get_columns("run")}
         after = counts(book)

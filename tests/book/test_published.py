@@ -53,7 +53,7 @@ def test_a_sheet_of_them_loads_once_and_whole(filled, tmp_path):
     assert "nothing new" in str(filled.load(sheet, by="knot"))
     assert len(filled.ask(points, "Sp", "stride")) == 4 and len(filled.ask(points, "stride", "Sp")) == 4
     sheet.write_text(sheet.read_text(encoding="utf-8") + "pond-2019,another paper,Bo,1.0,stride,0.01\n", encoding="utf-8")
-    with pytest.raises(LabbookError, match="line 6, key 'Bo'"):
+    with pytest.raises(LabbookError, match="line 6, x 'Bo'"):
         filled.load(sheet, by="knot")
     assert len(filled.ask(points, "Sp", "stride")) == 4
 
@@ -75,6 +75,7 @@ def test_a_withdrawn_series_leaves_the_plot_and_the_ledger_knows(filled):
         ({"x_dialect": "f"}, "write e.g."),
         ({"y": "wall", "y_dialect": "length:L_body"}, "has no dialects"),
         ({"x_value": "2 mm"}, "a pure number is needed"),
+        ({"x_value": "-2.0(1)"}, "never negative"),
         ({"x_value": None}, "is missing"),
         ({"y": "Sp"}, "already"),
         ({"citation": None}, "is missing"),
@@ -93,3 +94,42 @@ def test_one_series_has_one_citation(filled):
     with pytest.raises(LabbookError, match="one series, one citation"):
         filled.stock("published", **{**POINT, "x_value": "3.0", "citation": "Somebody else"})
     assert math.isclose(filled.ask(points, "Sp", "U_scaled")["Sp"].sum(), 2.0 * (2 * math.pi) ** 0.25)
+
+
+def test_house_is_no_dialect_of_a_print(filled):
+    # the group's house dialect may change tomorrow; what a paper printed does not
+    with pytest.raises(LabbookError, match="x_dialect 'house': is the group's choice"):
+        filled.stock("published", **{**POINT, "x_dialect": "house"})
+
+
+def test_a_refusal_names_its_column(filled):
+    for change, column in (({"x": "Bo"}, "x"), ({"y_dialect": "rate"}, "y_dialect"), ({"y": "Sp"}, "y")):
+        with pytest.raises(LabbookError) as refused:
+            filled.stock("published", **{**POINT, **change})
+        assert refused.value.field == column
+
+
+def test_points_of_several_prints_are_restated_each_from_its_own(filled):
+    prints = ("rate:f", "", "power:1", "length:L_body")
+    for i, dialect in enumerate(prints):
+        filled.stock("published", **{**POINT, "series": f"s{i}", "x_dialect": dialect})
+    found = filled.ask(points, "Sp", "U_scaled").set_index("series")
+    # (2 pi)^(1/4) = 1.58323; as it is; the fourth root of 2; L_tail is not given
+    assert found["Sp"].to_dict() == pytest.approx({"s0": 2.0 * 1.58323, "s1": 2.0, "s2": 2.0**0.25}, rel=1e-5)
+    # u: 0.10 x 1.58323; 0.10; and for the root a quarter of 5 % of it
+    assert found["u_Sp"].to_dict() == pytest.approx({"s0": 0.158323, "s1": 0.10, "s2": 0.0125 * 2.0**0.25}, rel=1e-5)
+    assert found["printed_Sp"].tolist() == ["2.00(10)"] * 3 and found["dialect_Sp"].tolist() == list(prints[:3])
+    assert found.attrs["lost"] == {"no Sp in this dialect (needs L_tail)": 1}
+    assert len(filled.ask(points, "Sp", "U_scaled", series="s1")) == 1
+
+
+def test_a_value_that_a_power_cannot_take_is_counted(filled):
+    filled.stock("published", **{**POINT, "x_dialect": "power:1", "x_value": "0(1)"})
+    found = filled.ask(points, "Sp", "U_scaled")
+    assert len(found) == 0 and found.attrs["lost"] == {"no Sp in this dialect (printed as 0)": 1}
+    assert filled.ask(points, "Sp", "U_scaled", {"Sp": {"power": 1}})["Sp"].tolist() == [0.0]
+
+
+def test_only_a_number_with_a_sign_may_be_negative(filled):
+    filled.stock("published", **{**POINT, "y_value": "-0.0120(6)"})
+    assert filled.ask(points, "Sp", "U_scaled")["U_scaled"].tolist() == [-0.012]

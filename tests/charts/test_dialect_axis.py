@@ -52,9 +52,9 @@ def test_a_label_says_the_dialect(number, choices, label):
 
 def test_a_title_in_the_groups_own_house():
     house = {"rate": "f", "power": 1}
-    assert dialect_title("Sp", {}, house) == "Sp = ζ_n f L_tail⁴/EI, house dialect"
+    assert dialect_title("Sp", {}, house) == "Sp = ζ_n f L_tail⁴/EI, house dialect (rate f, power 1)"
     title = dialect_title("Sp", AT_BIRTH["Sp"], house)
-    assert title == "Sp = L_tail (ζ_n ω/EI)^(1/4), dialect rate omega, power 0.25"
+    assert title == "Sp = L_tail (ζ_n ω/EI)^(1/4), dialect as at birth"
     assert formula_of("Sp", {}, house) == "zeta_n * f * L_tail**4 / EI"
 
 
@@ -71,5 +71,5 @@ def test_the_words_of_two_axes_say_dialect_or_house_or_version():
     said = axis_words(("Sp", "Lm", "U", "Sp"), {"Sp": {"power": 1}}, registry)
     assert said == ("Sp = ζ_n ω L_tail⁴/EI, dialect power 1. "
                     "Lm = L_tail/L_body, slimness, the group's own number, version 3.")  # fmt: skip
-    assert axis_words(("Re",), {}, registry) == "Re = ρ U L_tail/μ, house dialect (length: L_tail)."
+    assert axis_words(("Re",), {}, registry) == "Re = ρ U L_tail/μ, house dialect (length L_tail)."
     assert axis_words(("U", "T"), {}, at_birth()) == ""

@@ -106,8 +106,8 @@ def test_a_shared_band_lies_two_u_around_each_point_of_a_small_family(samples):
         assert row["x"] == pytest.approx(run.Sp, rel=1e-4)
         assert (row["low"], row["high"]) == pytest.approx((run.U_scaled * 0.92, run.U_scaled * 1.08), rel=1e-4)
     assert drawing.caption.endswith(
-        "Bars: the run's own part of one standard uncertainty. Bands: what a family shares (fluid, material, "
-        "swimmer), 2 u; more runs do not shrink it. Here 2 u is 8 % of U/(ω L_tail θ₀²); along x a family may "
+        "Bars: the run's own part of one standard uncertainty. Bands: what runs of one swimmer share at most "
+        "(fluid, material, swimmer, rig), 2 u; more runs do not shrink it. Here 2 u is 8 % of U/(ω L_tail θ₀²); along x a family may "
         "move by 4 % of Sp."
     )
 
@@ -167,9 +167,9 @@ def _every_mark_named(node, name):
     return node["items"] if node.get("name") == name else _every_mark_named(list(node.values()), name)
 
 
-def test_without_a_group_the_whole_is_one_family_and_other_is_none(samples):
-    spec = trend(samples.runs(300), **AXES, bars="shared band").chart.to_dict()
-    assert {row["family"] for row in samples.rows(spec, "shared_bands")} == {""}
+def test_runs_of_several_swimmers_have_no_shared_band_and_other_has_none(samples):
+    drawn = trend(samples.runs(300), **AXES, bars="shared band")
+    assert "need the colour 'swimmer'" in drawn.caption and "shared_bands" not in str(drawn.chart.to_dict())
     spec = trend(samples.runs(400, 12), **BANDED).chart.to_dict()
     assert "other" not in {row["family"] for row in samples.rows(spec, "shared_bands")}
 
@@ -437,3 +437,19 @@ def test_names_with_quotes_and_markup_stay_text(samples):
 def test_no_outside_address_in_any_specification(samples):
     spec = trend(samples.runs(50), **AXES, group="swimmer").chart.to_dict()
     assert samples.addresses(spec) == []
+
+
+def test_a_shared_band_does_not_cross_a_wide_gap(samples):
+    frame = family(24)
+    frame.loc[frame.index[12:], "Sp"] *= 50
+    rows = samples.rows(trend(frame, **BANDED).chart.to_dict(), "shared_bands")
+    pieces = {row["piece"]: sorted(r["x"] for r in rows if r["piece"] == row["piece"]) for row in rows}
+    assert len(pieces) == 2 and max(pieces[0]) * 10 < min(pieces[1])
+
+
+def test_a_regime_on_both_axes_is_a_box_with_its_name(samples):
+    corner = Regime("corner", (Band("Sp", 1.0, 3.0), Band("U_scaled", 0.002)), "own", "sky")
+    spec = trend(samples.runs(60), **AXES, regimes=[corner]).chart.to_dict()
+    (box,) = samples.rows(spec, "regime_boxes")
+    assert (box["left"], box["right"], box["bottom"]) == (1.0, 3.0, 0.002) and box["hue"] == "#56B4E9"
+    assert [row["name"] for row in samples.rows(spec, "regime_box_names")] == ["corner"]

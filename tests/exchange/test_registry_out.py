@@ -5,7 +5,7 @@ import io
 
 import pytest
 
-from labbook.exchange.registry_out import COLUMNS, registry_csv, registry_markdown
+from labbook.exchange.registry_out import COLUMNS, other_dialects, registry_csv, registry_markdown
 from labbook.registry.catalogue import NUMBERS, Number
 from labbook.registry.dialects import DIALECTS
 from labbook.registry.formula import parse
@@ -52,6 +52,22 @@ def test_the_csv_has_every_published_dialect_with_its_source():
     assert not found["Sp"]["dialects"].startswith(":")  # the house's own row
     assert "rate f, power 1" not in found["Sp"]["dialects"]  # only published ones
     assert "coefficient spheroid_asymptotic, power 1: zeta_n * omega" in found["Sp"]["dialects"]
+
+
+def test_the_other_dialects_are_those_beside_the_groups_house():
+    registry = Registry(house={"Sp": {"coefficient": "spheroid_asymptotic"}, "De": {"rate": "f"}})
+    told = other_dialects("Sp", registry)
+    birth = NUMBERS["Sp"]
+    assert told["coefficient cylinder_finite"] == (birth.formula, birth.source)
+    assert not [words for words in told if words == "house" or "spheroid_asymptotic" in words]
+    assert {"rate f", "power 1", "length L_body, coefficient cylinder_finite"} <= set(told)
+    found = rows(registry)
+    assert f"coefficient cylinder_finite: {birth.formula} (" in found["Sp"]["dialects"]
+    assert "spheroid_asymptotic" not in found["Sp"]["dialects"].replace(birth.source, "")
+    # no paper's row says it, but De with omega is what came with labbook
+    assert found["De"]["dialects"] == f"rate omega: {NUMBERS['De'].formula} ({NUMBERS['De'].source})"
+    assert "- coefficient cylinder\\_finite: $" in registry_markdown(registry, {})
+    assert other_dialects("Vs", registry) == {}
 
 
 def test_an_own_number_and_a_changed_house_are_marked():
