@@ -47,9 +47,10 @@ def in_address(registry: Registry) -> tuple[Question, list[str]]:
 
 
 def in_widgets(place: str, before: Question, registry: Registry) -> tuple[Question, list[str]]:
-    """The question that the widgets ask, and one sentence for each part of it that somebody took away since."""
+    """The question that the widgets ask, and one sentence for each part that somebody took away since."""
     asked = from_widgets(place, before)
-    rest, said = addresses.read_question(addresses.parameters(asked), known(session.state_of_book()), registry)
+    given = addresses.parameters(asked)
+    rest, said = addresses.read_question(given, known(session.state_of_book()), registry)
     return (rest if said else asked), [f"In the filter, {sentence}" for sentence in said]
 
 

@@ -51,7 +51,7 @@ def row(place: str, *, regimes_open: bool = False) -> Question:
     """
     registry = session.registry()
     asked, said = in_address(registry)
-    if st.session_state.pop(f"{place}:touched", False):  # a widget speaks when just used, else the address does
+    if st.session_state.pop(f"{place}:touched", False):  # a widget speaks when just used, else the address
         asked, said = in_widgets(place, asked, registry)
         st.session_state.pop(f"{place}:said", None)
     into_widgets(place, asked, registry)

@@ -75,8 +75,8 @@ def _news(place: str, registry: Registry, editing: str) -> bool:
         st.session_state.pop(mark, None)
         return False
     told = _withdrawn(session.state_of_book(), editing)
-    session.say_refused(f"{editing} is no longer in the registry: {told}. What is typed here stays; saving it "
-                        "makes it a number again.")  # fmt: skip
+    session.say_refused(f"{editing} is no longer in the registry: {told}. What is typed here stays; saving "
+                        "it makes it a number again.")  # fmt: skip
     first = not st.session_state.get(mark, False)
     st.session_state[mark] = True
     return first
@@ -101,13 +101,13 @@ def _fields(place: str, registry: Registry, editing: str) -> dict[str, str]:
                     session.say_refused(refused[column])
     cells = {column: _typed(_key(place, column)) for column in FIELDS}
     key = cells["key"]
-    if key in registry.own:
-        if not editing:
-            session.note(f"{key} stands in the registry, version {registry.versions[key]}: this makes "
-                         "another version of it.")  # fmt: skip
+    if key in registry.own and not editing:
+        session.note(f"{key} stands in the registry, version {registry.versions[key]}: this makes "
+                     "another version of it.")  # fmt: skip
     if key in registry.own or editing:  # a reason typed before somebody withdrew the number stays too
         star = " *" if key in registry.own else ""
-        st.text_input(f"reason{star}", key=_key(place, "why"), placeholder="why it changes, kept in the ledger")
+        st.text_input(f"reason{star}", key=_key(place, "why"),
+                      placeholder="why it changes, kept in the ledger")  # fmt: skip
         cells["why"] = _typed(_key(place, "why"))
         if "why" in refused:
             session.say_refused(refused["why"])

@@ -114,8 +114,9 @@ def _on_a_run(formula: Formula) -> None:
 
 
 def _chosen(keys: tuple[str, ...], newest: dict[str, str]) -> str:
-    """The code of the run that a formula of these keys is tried on; one chosen before, where it fits, stays."""
-    state, box = st.session_state, f"numbers:try:{','.join(keys)}"  # a browser keeps what a box of one key shows
+    """The code of the run that a formula of these keys is tried on: the one before, where it fits."""
+    # a box of its own for these keys: a browser keeps what the box of one key shows
+    state, box = st.session_state, f"numbers:try:{','.join(keys)}"
     if box not in state:
         before = state.get(TRIED)
         state[box] = before if before in newest else next(iter(newest), None)

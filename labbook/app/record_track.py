@@ -12,7 +12,7 @@ from labbook.book.run_sheet import RunSheet, moment_in_words
 from labbook.book.track_pages import TrackSheet, file_content
 from labbook.registry.typed import Typed, printed
 
-DROP = "Drop a track: CSV or Parquet, with t or frame, x and y"
+DROP = "Drop a track: CSV or Parquet with t or frame, x and y"
 SYMBOLS = {"U": "U", "A_tip": "A_tip", "f": "f"}
 
 
@@ -88,7 +88,7 @@ def drop(sheet: RunSheet, place: str) -> str | None:
     """The drop zone, the settings, what they give, and accepting it; returns what to say once it is done."""
     dropped = track_fields.file_dropped(place, DROP)
     if dropped is None:
-        session.note(f"Up to {track_fields.LARGEST_MB} MB; nothing enters the run before you accept it.")
+        session.note("Nothing enters the run before you accept it.")
         return None
     given = _given(session.state_of_book(), sheet.texts["code"])
     found = track_fields.adjusted(place, dropped, given, across=6)

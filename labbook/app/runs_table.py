@@ -21,8 +21,8 @@ from labbook.registry.regimes import regimes_of
 from labbook.registry.written import SHOWN, shown, written
 
 TEXTS = ("at", "by", "swimmer", "fluid", "material", "rig", "drive", "series", "video", "note")
-USUAL = ("at", "by", "swimmer", "fluid", "f", "theta0", "T", "U", "Sp", "Re_omega", "U_scaled", "St", "regime",
-         "note")  # fmt: skip
+USUAL = ("at", "by", "swimmer", "fluid", "f", "theta0", "T", "U", "Sp", "Re_omega", "U_scaled", "St",
+         "regime", "note")  # fmt: skip
 ROW = 40
 TALL, FOLDED = 11, 4  # rows in sight: alone, and above an open sheet
 REST_OF_SCREEN = "flex: none !important; height: max(483px, calc(100vh - 310px));"
@@ -40,9 +40,10 @@ def chosen(registry: Registry) -> tuple[str, ...]:
     """
     named, known = [c for c in session.address("columns").split(",") if c], offered(registry)
     if unknown := [c for c in dict.fromkeys(named) if c not in known]:
-        several, rest = len(unknown) > 1, "the others" if set(named) & set(known) else "the usual ones"
-        session.say_refused(f"In the address, column{'s' if several else ''} {', '.join(map(repr, unknown))}: "
-                            f"the table has no such column{'s' if several else ''}; {rest} are shown.")  # fmt: skip
+        word = "columns" if len(unknown) > 1 else "column"
+        rest = "the others" if set(named) & set(known) else "the usual ones"
+        session.say_refused(f"In the address, {word} {', '.join(map(repr, unknown))}: "
+                            f"the table has no such {word}; {rest} are shown.")  # fmt: skip
     return tuple(c for c in known if c in named) or USUAL
 
 

@@ -25,6 +25,7 @@ h3 { font-size: 1.0rem !important; padding: 0.1rem 0 !important; }
 [data-testid="stLayoutWrapper"]:has(> .st-key-lb-message) { position: absolute; }
 .st-key-lb-message p { font-size: 0.86rem; line-height: 1.2; }
 .stPageLink a { min-height: 40px; }
+[class*="st-key-lb-dropzone"] [data-testid="stFileUploaderDropzoneInstructions"] { display: none; } /* the label says it */
 .st-key-lb-last a p { text-decoration: underline; color: light-dark(#0B6E75, #4FB3B8); }
 .lb-warned { border: 1px solid #E69F00; border-radius: 0.4rem; background: rgba(230,159,0,0.12); font-size: 0.88rem;
   line-height: 1.35; padding: 0.35rem 0.7rem; }

@@ -12,7 +12,8 @@ from labbook.errors import Refusal
 from labbook.exchange.track_columns import ROLES
 from labbook.exchange.track_header import known_by_name, needs
 
-LARGEST_MB = 64  # what a page takes; the command line takes more
+LARGEST_MB = 64  # what a page reads
+MOST_MB = 256  # what it lets in, to say so: beyond it Streamlit refuses, in a word that wants hovering
 NEEDED = ("t", "frame", "x", "y")
 FIELDS = ("scale", "fps", "f", "axis", "trim", "drift")
 LABELS = {
@@ -40,7 +41,8 @@ def done_with(place: str) -> None:
 def file_dropped(place: str, label: str) -> Dropped | None:
     """The file in the drop zone, without settings; None where there is none or it is too large for a page."""
     at = version(place)
-    file = st.file_uploader(label, key=f"{at}:file", max_upload_size=LARGEST_MB)
+    with st.container(key=f"lb-dropzone-{place}".replace(":", "-")):
+        file = st.file_uploader(f"{label}, up to {LARGEST_MB} MB", key=f"{at}:file", max_upload_size=MOST_MB)
     if file is None:
         return None
     if file.size > LARGEST_MB * 2**20:
@@ -55,7 +57,7 @@ def file_dropped(place: str, label: str) -> Dropped | None:
 
 def too_large(name: str, size: int) -> str:
     """The sentence for a file that a page does not take."""
-    return (f"{name} has {size / 2**20:.0f} MB, and this page takes {LARGEST_MB}: the command line takes up to 256 "
+    return (f"{name} has {size / 2**20:.0f} MB, and this page takes {LARGEST_MB}; the command line takes up to {MOST_MB} "
             "(labbook reduce FILE --run CODE).")  # fmt: skip
 
 
@@ -66,7 +68,7 @@ def adjusted(
 
     given: texts of f, scale, fps as far as run and rig say them; across: fields a row.
     """
-    cells, asked, lacking = _columns(place, dropped)
+    cells, asked, lacking = _columns(place, dropped, min(across, 5))
     # the fields come first on the page, and what they are refused for is known after them: it is kept a run long
     said, reduced = refusals(place), Reduced(refused=("file", lacking or ""))
     if not lacking:
@@ -86,7 +88,7 @@ def refusals(place: str) -> dict[str, str]:
     return st.session_state.get(f"{version(place)}:said", {})
 
 
-def _columns(place: str, dropped: Dropped) -> tuple[list[str], dict[str, str], str | None]:
+def _columns(place: str, dropped: Dropped, across: int) -> tuple[list[str], dict[str, str], str | None]:
     """(header, role -> column where it was chosen, sentence that refuses both or None)."""
     cells, refused = header(dropped.digest, dropped.name, dropped.content)
     if refused:
@@ -96,9 +98,9 @@ def _columns(place: str, dropped: Dropped) -> tuple[list[str], dict[str, str], s
     of_header = digest_of("\n".join(cells).encode())[:12]  # another file with the same columns keeps the choice
     with st.expander("columns" + ("" if lacking else f": {', '.join(by_name.values())}"), expanded=bool(lacking)):
         asked = {}
-        for start in range(0, len(ROLES), 4):
-            row = ROLES[start : start + 4]
-            for column, role in zip(st.columns(4), row, strict=False):
+        for start in range(0, len(ROLES), across):
+            row = ROLES[start : start + across]
+            for column, role in zip(st.columns(across), row, strict=False):
                 with column:
                     chosen = _column(f"{version(place)}:{of_header}:{role}", role, cells, by_name.get(role))
                 if chosen and chosen != by_name.get(role):

@@ -42,7 +42,7 @@ def _regimes(number: Number, registry: Registry) -> list[tuple[str, str]]:
 
 
 def other_dialects(number: str, registry: Registry) -> dict[str, tuple[str, str]]:
-    """Where each published dialect departs from the group's house -> (formula, source); the house is left out.
+    """Where each published dialect departs from the group's house -> (formula, source), without the house.
 
     The dialect at birth is among them where the group chose another; {} for a number without dialects.
     """

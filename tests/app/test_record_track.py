@@ -236,7 +236,7 @@ def test_a_file_that_is_too_large_for_the_page_is_refused_in_one_sentence(page, 
     monkeypatch.setattr(track_fields.st, "file_uploader", lambda *a, **k: Large())
     page.press("Drop a track")
     (sentence,) = page.said()
-    assert "film.csv has 80 MB, and this page takes 64" in sentence and "the command line takes up to 256" in sentence
+    assert "film.csv has 80 MB, and this page takes 64;" in sentence and "the command line takes up to 256" in sentence
     assert sheet(target).track is None
 
 

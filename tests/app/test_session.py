@@ -23,8 +23,9 @@ def raising(error):
 
 
 def test_every_finding_of_a_field_is_kept(left):
-    found = [Refusal("f", "x", "is no number"), Refusal("U", None, "is missing"), Refusal("f", "x", "has no unit")]
-    assert not session.attempt(raising(Refusals(found)), "here")
+    number, unit = Refusal("f", "x", "is no number"), Refusal("f", "x", "has no unit")
+    found = Refusals([number, Refusal("U", None, "is missing"), unit])
+    assert not session.attempt(raising(found), "here")
     assert session.refused("here") == {"f": "f 'x': is no number. f 'x': has no unit.", "U": "U: is missing."}
 
 

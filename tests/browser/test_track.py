@@ -79,7 +79,7 @@ def heights(tab) -> dict[str, float]:
     return found
 
 
-def test_a_track_is_dropped_adjusted_accepted_and_its_point_moves(page, served, made, shot):
+def test_a_track_is_dropped_adjusted_accepted_and_its_point_moves(page, served, made, shot, tmp_path):
     book, code = made
     content, address = track(), served(book)
     tab = page(width=1024, height=768)
@@ -88,7 +88,13 @@ def test_a_track_is_dropped_adjusted_accepted_and_its_point_moves(page, served, 
 
     tab.goto(f"{address}/runs?run={code}")
     tab.get_by_role("button", name="Drop a track").click()
-    expect(tab.get_by_text("Drop a track: CSV or Parquet", exact=False)).to_be_visible(timeout=WAIT)
+    expect(tab.get_by_text("Drop a track: CSV or Parquet with", exact=False)).to_be_visible(timeout=WAIT)
+    # a film by mistake: one sentence, and the page goes on
+    large = tmp_path / "film.csv"
+    large.write_bytes(b"t,x,y\n" + b"1,2,3\n" * 11_500_000)
+    tab.locator("input[type=file]").set_input_files(large)
+    expect(tab.get_by_text("film.csv has 66 MB, and this page takes 64;", exact=False)).to_be_visible(timeout=WAIT)
+    shot(tab, "track-large-1024-light")
     drop(tab, content)
     expect(tab.get_by_text("that of the velocity", exact=False)).to_be_visible(timeout=WAIT)
     expect(tab.get_by_label("scale, from the rig", exact=True)).to_have_value("21.4(1) um/px")
