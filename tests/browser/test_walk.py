@@ -107,7 +107,7 @@ def test_log_find_see_open_amend(page, served, book, shot):
 
 
 PAGES = {"": "Log trial", "runs": "runs, newest first", "trends": "runs drawn", "shelf": "Add", "numbers": "Sp",
-         "ledger": "load"}  # fmt: skip
+         "ledger": "thermometer read again from the photograph"}  # fmt: skip
 
 
 @pytest.mark.parametrize("size", [(1024, 768), (1600, 1000)])
