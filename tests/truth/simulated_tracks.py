@@ -130,12 +130,13 @@ def mean_of_size(s):
 
 @dataclass(frozen=True)
 class Cell:
-    """Shares: covered by 95 % intervals; called swimming without speed, axis given and fitted; bias over
-    mean u."""
+    """covered: share of 95 % intervals that hold the true speed; bias: over mean u; error: root mean square over
+    the true speed; given, fitted: shares called swimming without speed, by where the axis is from."""
 
     covered: float
     bias: float
     u_over_scatter: float
+    error: float
     given: float
     fitted: float
 
@@ -157,28 +158,32 @@ def cell(kind, cycles, number, seed, fitted):
         if k < fitted:
             axis_fitted.append(tracks.reduce(**common).p_zero < 0.05)
     bias = (np.mean(U) - SPEED) / np.mean(u)
-    return Cell(float(np.mean(covered)), float(bias), float(np.mean(u) / np.std(U)), float(np.mean(given)),
-                float(np.mean(axis_fitted)))  # fmt: skip
+    return Cell(float(np.mean(covered)), float(bias), float(np.mean(u) / np.std(U)), _error(U),
+                float(np.mean(given)), float(np.mean(axis_fitted)))  # fmt: skip
+
+
+def _error(speeds):
+    return float(np.sqrt(np.mean((np.array(speeds) / SPEED - 1.0) ** 2)))
 
 
 def today(kind, cycles, how, tracks_a_cell, seed):
-    """(covered, bias over true speed, called swimming without speed) of one of today's ways."""
+    """(covered, root mean square error over true speed, called swimming without speed) of one of today's ways."""
     rng = np.random.default_rng(seed)
     moving = [how(simulate(rng, kind, cycles)) for _ in range(tracks_a_cell)]
     still = [how(simulate(rng, kind, cycles, speed=0.0)) for _ in range(tracks_a_cell)]
     covered = np.mean([low <= SPEED <= high for _, low, high in moving])
     called = np.mean([not low <= 0.0 <= high for _, low, high in still])
-    return covered, np.mean([U for U, _, _ in moving]) / SPEED - 1.0, called
+    return covered, _error([U for U, _, _ in moving]), called
 
 
 def _row(job):
     name, kind, cycles, number, fitted = job
     c = cell(kind, cycles, number, [cycles, len(name), sum(map(ord, name))], fitted)
     line = f"| {name} | {cycles} | {100 * c.covered:.1f} | {c.bias:+.3f} | {c.u_over_scatter:.2f} "
-    line += f"| {100 * c.given:.1f} | {100 * c.fitted:.1f} |"
+    line += f"| {100 * c.error:.1f} | {100 * c.given:.1f} | {100 * c.fitted:.1f} |"
     for how in (end_points, mean_of_size):
-        covered, bias, called = today(kind, cycles, how, number, seed=cycles)
-        line += f" {100 * covered:.0f}, {100 * bias:+.0f} %, {100 * called:.0f} |"
+        covered, error, called = today(kind, cycles, how, number, seed=cycles)
+        line += f" {100 * covered:.0f}, {100 * error:.0f}, {100 * called:.0f} |"
     return line
 
 
@@ -192,17 +197,18 @@ def main():
     parser.add_argument("--jobs", type=int, default=1, help="processes")
     parser.add_argument("--harder", action="store_true", help="the kinds that are not promised")
     parser.add_argument("--only", default="", help="kinds that contain this text")
+    parser.add_argument("--cycles", type=int, nargs="*", default=CYCLES, help="cycles to a record")
     given = parser.parse_args()
     kinds = HARDER if given.harder else KINDS
     jobs = [
         (name, kind, cycles, given.tracks, given.fitted)
         for name, kind in kinds.items()
         if given.only in name
-        for cycles in CYCLES
+        for cycles in given.cycles
     ]
-    print("| noise | cycles | covered % | bias/u | u/scatter | still called swimming %: axis given "
-          "| axis fitted | end points: covered %, bias, called swimming % | mean of size of v: the same |")  # fmt: skip
-    print("|---|---|---|---|---|---|---|---|---|")
+    print("| noise | cycles | covered % | bias/u | u/scatter | error % | still called swimming %: axis given "
+          "| axis fitted | end points: covered, error, called swimming % | mean of size of v: the same |")  # fmt: skip
+    print("|---" * 10 + "|")
     with ProcessPoolExecutor(given.jobs) as pool:
         for line in pool.map(_row, jobs):
             print(line, flush=True)

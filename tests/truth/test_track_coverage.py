@@ -21,7 +21,7 @@ from labbook.physics import tracks
 simulated = SimpleNamespace(**runpy.run_path(str(Path(__file__).with_name("simulated_tracks.py"))))
 
 EDGE = 1e-4
-TRACKS = {5: 60, 10: 60, 30: 20}
+TRACKS = {5: 60, 10: 50, 30: 15}
 STILL = 40
 EX = (1.0, 0.0)
 
