@@ -9,10 +9,10 @@ Harville, Biometrika 61:383, 1974) is evaluated on a lattice of them, and the an
 Student's t distributions, n - p degrees of freedom each, that this gives. Why not a bootstrap: resampled
 blocks know nothing of what is slower than a block, and percentile intervals cover about 70 % at three
 cycles. The weights below were chosen for coverage on simulated tracks of 5, 10 and 30 cycles, other ones
-than those of the printed table (tests/truth/simulated_tracks.py): tau^-0.75 per unit of ln tau up to one beat, a random walk for anything slower,
-ratio^-0.3, and some for no wobble at all. What five cycles cannot tell apart, a random walk from a wobble of one
-beat or white noise from one with a slow wobble of its own size in it, no method can: there motion is seen in 15 to
-20 and in 8 to 10 % of such records, not in 5 %.
+than those of the printed table (tests/truth/simulated_tracks.py): tau^-0.75 per unit of ln tau up to one beat,
+a random walk for anything slower, none of the ratio, and some for no wobble at all. What five cycles cannot
+tell apart, a random walk from a wobble of one beat or white noise from one with a slow wobble of half its size in
+it, no method can: there motion is seen in 15 to 20 and in 8 to 12 % of such records, not in 5 %.
 """
 
 import numpy as np
@@ -24,8 +24,8 @@ STEP_TAU, STEP_RATIO = 0.5, 1.0  # lattice steps in ln at 300 points or fewer
 LOWEST, HIGHEST = 0.003, 1e5  # ratio of wobble to white variance: the lowest is divided by n
 WALK_WEIGHT = 1.4  # of a random walk, against one unit of ln tau at its upper end
 WALK_TAU = 100.0  # records: a wobble this slow is a random walk
-SLOPE_TAU, SLOPE_RATIO = -0.75, -0.3
-WHITE_WEIGHT = 3.0  # of no wobble at all, against one unit of ln ratio at its lower end
+SLOPE_TAU = -0.75
+WHITE_WEIGHT = 30.0  # of no wobble at all, against one unit of ln ratio
 SAFE = 1e-3  # white variance in units of one frame's, above which the symmetric solver keeps nine digits
 ROUNDING = 1e-13  # of the largest value: less residual than that is rounding
 DROP = 6.5  # of ln likelihood below its top, where the lattice ends
@@ -103,8 +103,7 @@ class NoiseFit:
     def _prior(self, node):
         i, j = node
         tau = np.log(self._walk_weight) if i < 0 else np.log(self._h) - SLOPE_TAU * i * self._h
-        white = np.log1p(WHITE_WEIGHT) if j == self._cols else 0.0
-        return tau + white - SLOPE_RATIO * j * self._k
+        return tau + (np.log1p(WHITE_WEIGHT / self._k) if j == self._cols else 0.0)
 
     def _inside(self, node):
         return -1 <= node[0] <= self._rows and 0 <= node[1] <= self._cols

@@ -44,6 +44,7 @@ KINDS = {
     "wobble, tau 0.3 beat": Kind(wobble=SIGMA, tau=0.3),
     "wobble, tau 1 beat": Kind(wobble=SIGMA, tau=1.0),
     "wobble and white": Kind(white=0.3 * SIGMA, wobble=SIGMA, tau=0.3),
+    "white and weak wobble": Kind(white=SIGMA, wobble=0.4 * SIGMA, tau=0.15, fraction=True),
     "white, fractional cycle": Kind(white=SIGMA, fraction=True),
     "wobble, fractional cycle": Kind(wobble=SIGMA, fraction=True),
     "white, 5 % lost": Kind(white=SIGMA, lost=0.05),
