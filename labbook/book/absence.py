@@ -4,6 +4,7 @@ import json
 import math
 from collections.abc import Mapping
 
+from labbook.book.block_model import PREDICTED, model_for
 from labbook.book.block_spread import FOLLOWS
 from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES, RUN_KEYS, SWIMMER_KEYS
@@ -12,19 +13,25 @@ _SENTENCE_OF = {"mu": "mu_from", "rho": "rho_from", "lam": "lam_from", "E": "E_f
 
 
 def why_absent(
-    values: Mapping, sentences: Mapping[str, str], swimmer: str, drive: str, registry: Registry
+    values: Mapping, sentences: Mapping[str, str], swimmer: str, form: str, drive: str, registry: Registry
 ) -> dict[str, str]:
     """Key -> sentence for every resolved quantity and number that a run lacks.
 
-    values: key -> SI value or None/NaN, with u_U beside; sentences: mu_from, rho_from, lam_from, E_from.
+    values: key -> SI value or None/NaN, with u_U beside; sentences: mu_from, rho_from, lam_from, E_from; swimmer:
+    its code.
     """
     found = {}
+    model = model_for(form, drive, registry.coefficient)
+    follows = FOLLOWS | {PREDICTED: model.needs}
     for key, row in registry.numbers.items():
         if _absent(values.get(key)):
-            found[key] = _number(row, values, sentences, swimmer, drive)
-    for key in ("mu", "rho", "nu", "E", "EI", "I_area", "a", "zeta_n", "zeta_t"):
+            still = PREDICTED in row.inputs and (not model.steps or values.get(PREDICTED) == 0.0)
+            found[key] = model.says if still else _number(row, values, sentences, swimmer, drive, follows)
+    for key in ("mu", "rho", "nu", "E", "EI", "I_area", "a", "zeta_n", "zeta_t", PREDICTED):
         if _absent(values.get(key)):
-            found[key] = _needs(_roots((key,), values), sentences, swimmer)
+            found[key] = _needs(_roots((key,), values, follows), sentences, swimmer)
+    if PREDICTED in found and not model.steps:
+        found[PREDICTED] = model.says
     return found
 
 
@@ -32,10 +39,10 @@ def _absent(value) -> bool:
     return value is None or math.isnan(value)
 
 
-def _number(row, values, sentences, swimmer, drive) -> str:
+def _number(row, values, sentences, swimmer, drive, follows) -> str:
     if row.only_drives and drive not in row.only_drives:
         return f"only for a rotating drive, and this run's is {drive}"
-    missing = _roots(row.inputs, values)
+    missing = _roots(row.inputs, values, follows)
     if not missing and row.not_zero and _consistent_with_zero(row.not_zero, values):
         return f"not defined ({row.not_zero} consistent with 0)"
     if not missing:
@@ -48,13 +55,13 @@ def _consistent_with_zero(key, values) -> bool:
     return spread is None or math.isnan(spread) or abs(values[key]) <= 2 * spread
 
 
-def _roots(keys, values) -> list[str]:
+def _roots(keys, values, follows) -> list[str]:
     """The keys at the bottom that are absent."""
     found: dict[str, None] = {}
     for key in keys:
         if not _absent(values.get(key)):
             continue
-        deeper = _roots(FOLLOWS[key], values) if key in FOLLOWS else []
+        deeper = _roots(follows[key], values, follows) if key in follows else []
         found |= dict.fromkeys(deeper or [key])
     return list(found)
 

@@ -2,6 +2,7 @@
 
 import numpy as np
 
+from labbook.book.block_model import PREDICTED, model_for, predict
 from labbook.book.gathering import ABSENT, BATCH_KEYS, Gathering
 from labbook.book.shelf import Item
 from labbook.physics import helices, rods, sections
@@ -24,6 +25,8 @@ def section_of(swimmer: Item) -> str:
 FOLLOWS = {
     "omega": ("f",), "nu": ("mu", "rho"), "EI": ("E", "I_area"), "zeta_n": ("mu", "L_tail", "a"),
     "zeta_t": ("mu", "L_tail", "a"), "A22": ("R_helix", "pitch", "L_tail", "a", "mu"),
+    "U_model": ("omega", "L_tail", "EI", "zeta_n", "zeta_t", "a", "mu", "nu", "theta0", "h0", "m_mag", "B", "b", "b_long",
+                "h_wall", "D_tank", "R_helix", "pitch", "A_tip", "L_body"),
 }  # fmt: skip
 
 
@@ -48,8 +51,9 @@ def spread_of(gathered: Gathering, block, registry: Registry, wanted: tuple[str,
     """
     group = gathered.shelf.swimmers[int(gathered.facts.swimmer[block[0]])]
     spread = measured_of(gathered, block, group)
-    follow(spread, group, registry, needed(registry, wanted))
-    undefined(spread, gathered.facts.drive[block], registry, wanted)
+    drive = str(gathered.facts.drive[block[0]])
+    follow(spread, group, drive, registry, needed(registry, wanted))
+    undefined(spread, drive, registry, wanted)
     return spread
 
 
@@ -57,7 +61,7 @@ def measured_of(gathered: Gathering, block, group: Item) -> Spread:
     """What was measured, set, read or looked up for a block of runs: everything that the rest follows from."""
     spread = Spread()
     for key in RUN_KEYS:
-        spread.measured(key, gathered.values[key][block], gathered.u[key][block])
+        _measured(spread, key, gathered.values[key][block], gathered.u[key][block])
     _camera_scale(spread, block, gathered.facts.scale_u)
     _flux_density(spread, block, gathered.rigs)
     _swimmer_lengths(spread, block, gathered.swimmers, group)
@@ -69,7 +73,7 @@ def measured_of(gathered: Gathering, block, group: Item) -> Spread:
     return spread
 
 
-def follow(spread: Spread, group: Item, registry: Registry, keys: frozenset[str]) -> None:
+def follow(spread: Spread, group: Item, drive: str, registry: Registry, keys: frozenset[str]) -> None:
     """Enter those of `keys` that follow from what was measured: resolved quantities, then numbers."""
     section, form, n = section_of(group), group.texts["form"], len(spread.values["f"])
     for key in ("omega", "nu"):
@@ -83,9 +87,18 @@ def follow(spread: Spread, group: Item, registry: Registry, keys: frozenset[str]
         _drag(spread, section, registry.coefficient)
     if "A22" in keys:
         _helix(spread, form, n)
+    if PREDICTED in keys:
+        predict(spread, model_for(form, drive, registry.coefficient))
     for key, row in registry.numbers.items():
         if key in keys:
             spread.follow((key,), _keyworded(row.parsed), row.inputs)
+
+
+def _measured(spread, key, value, u) -> None:
+    """Enter what was measured on some run of the block; what was on none is no source of anything."""
+    spread.measured(key, value, u)
+    if not np.isfinite(value).any():
+        spread.parts[key] = {}
 
 
 def _keyworded(parsed):
@@ -114,7 +127,8 @@ def _flux_density(spread, block, rigs) -> None:
         return
     parts = spread.parts["B"]
     spread.values["B"] = np.where(missing, constant * current, spread.values["B"])
-    parts["B"] = np.where(missing, 0.0, parts["B"])
+    if "B" in parts:
+        parts["B"] = np.where(missing, 0.0, parts["B"])
     parts["I_coil"] = np.where(missing, constant * spread.parts["I_coil"]["I_coil"], 0.0)
     parts["current_to_B"] = np.where(missing, current * u_constant, 0.0)
 
@@ -131,9 +145,7 @@ def _material_cell(shelf, swimmer, key):
 def _swimmer_lengths(spread, block, swimmers, group) -> None:
     for key in SWIMMER_KEYS:
         value, u = swimmers.pick(block, lambda s, key=key: _cell(s, key))
-        spread.values[key] = value
-        # a dimension that no swimmer of the block has is no source of anything
-        spread.parts[key] = {key: u} if np.isfinite(value).any() else {}
+        _measured(spread, key, value, u)
     if group.texts["form"] == "undulating" and "L_tail" not in group.typed:
         spread.values["L_tail"] = spread.values["L_body"]
         spread.parts["L_tail"] = dict(spread.parts["L_body"])
@@ -189,15 +201,15 @@ def _helix(spread, form, n) -> None:
         spread.values["A22"], spread.parts["A22"] = np.zeros(n), {}
 
 
-def undefined(spread: Spread, drives, registry: Registry, wanted: tuple[str, ...] = ()) -> None:
+def undefined(spread: Spread, drive: str, registry: Registry, wanted: tuple[str, ...] = ()) -> None:
     """Numbers that are absent by rule: a divisor consistent with zero, a drive they are not made for."""
     for key in wanted or registry.numbers:
         row = registry.numbers[key]
-        absent = np.zeros(len(drives), bool)
+        absent = np.zeros(len(spread.values["f"]), bool)
         if row.not_zero:
             spread_u = np.hypot(spread.own(row.not_zero), spread.shared(row.not_zero))
             absent |= np.abs(spread.values[row.not_zero]) <= 2 * spread_u
-        if row.only_drives:
-            absent |= ~np.isin(drives.astype(str), row.only_drives)
+        if row.only_drives and drive not in row.only_drives:
+            absent[:] = True
         if absent.any():
             spread.values[key] = np.where(absent, np.nan, spread.values[key])

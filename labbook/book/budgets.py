@@ -11,6 +11,7 @@ from labbook.book.registry_rows import registry_of
 from labbook.book.run_facts import RunFacts
 from labbook.book.run_rows import FACTS, facts_of, shelf_for
 from labbook.book.shelf import Shelf
+from labbook.book.sources import source_row
 from labbook.book.tables import run
 from labbook.errors import Refusal
 from labbook.registry.group import Registry
@@ -21,28 +22,13 @@ from labbook.registry.typed import DIGITS
 
 ROOT_3 = np.sqrt(3.0)
 SHARE_STEP = 0.1  # of u: a drawn glycerol share is rounded to it, which adds less than 0.1 % to its u
-_BETTER = "measure that better first"
-# sources that are no keys of run or swimmer: what it is, whose it is, what would help
-_SOURCES = {
-    "mu_readings": ("viscosity readings", "fluid", "measure its viscosity better first"),
-    "mu_model": ("viscosity correlation", "fluid", "measure its viscosity first"),
-    "grade": ("nominal grade", "fluid", "measure its viscosity first"),
-    "glycerol": ("glycerol share", "fluid", "measure its viscosity, or that share better, first"),
-    "rho_reading": ("density reading", "fluid", "measure its density better first"),
-    "rho_batch": ("stated density", "fluid", "measure its density first"),
-    "rho_model": ("density correlation", "fluid", "measure its density first"),
-    "lam": ("relaxation time", "fluid", _BETTER), "rho_s": ("density", "material", _BETTER),
-    "E": ("modulus readings", "material", "measure its modulus better first"),
-    "current_to_B": ("coil constant", "rig", "calibrate that better first"),
-    "scale": ("camera scale", "rig", "calibrate that better first"),
-}  # fmt: skip
 
 
 @dataclass(frozen=True)
 class Contribution:
     """What one source brings: part = (d number/d source) u(source), signed; its share of the variance.
 
-    belongs: run, fluid, material, swimmer or rig; all but the run's own are shared with other runs.
+    belongs: run, fluid, material, swimmer, rig or theory; all but the run's own are shared with other runs.
     """
 
     source: str
@@ -78,8 +64,8 @@ class Budget:
         if not self.contributions:
             return ""
         first = self.contributions[0]
-        whose = {"run": "this run's", "rig": "the rig's"}.get(first.belongs, f"the {first.belongs}'s")
-        _, _, better = _SOURCES.get(first.source, ("", "", _BETTER))
+        whose = {"run": "this run's", "theory": "the"}.get(first.belongs, f"the {first.belongs}'s")
+        better = source_row(first.source).better
         share = f"{first.share:.0%}".replace("%", " %") if first.share < 0.995 else "nearly all"
         return f"{share} of the variance comes from {whose} {first.name}: {better}"
 
@@ -126,12 +112,8 @@ def _budget(key: str, value: float, spread: Spread, registry: Registry) -> Budge
 
 
 def _contribution(source: str, part: float, variance: float) -> Contribution:
-    if source in _SOURCES:
-        name, belongs, _ = _SOURCES[source]
-    else:
-        name = QUANTITIES[source].name.partition(",")[0]
-        belongs = "run" if source in OWN_SOURCES else "swimmer"
-    return Contribution(source, name, belongs, part, part * part / variance)
+    row = source_row(source)
+    return Contribution(source, row.name, row.belongs, part, part * part / variance)
 
 
 def _wide(key: str, spread: Spread, registry: Registry) -> tuple[tuple[str, float], ...]:
@@ -196,7 +178,7 @@ def _drawn(one: Gathering, registry: Registry, number: str, draws: int, chance) 
                 shared[source] = _standard(chance, draws, _from_digits(source, one))
             spread.values[key] = spread.values[key] + part * shared[source]
         spread.parts[key] = {}
-    follow(spread, swimmer, registry, keys)
+    follow(spread, swimmer, str(one.facts.drive[0]), registry, keys)
     return np.broadcast_to(spread.values[number], draws)
 
 

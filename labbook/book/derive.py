@@ -1,11 +1,13 @@
 """From facts to the stored row: resolve each run's inputs, then every quantity and number with uncertainty."""
 
 import json
+from collections.abc import Iterator
 from dataclasses import dataclass
 from datetime import date
 from functools import cached_property
 
 import numpy as np
+import pandas as pd
 
 from labbook.book.block_spread import needed, section_of, spread_of
 from labbook.book.gathering import BATCH_KEYS, STATED_BY_RIG, distinct, gather
@@ -62,7 +64,7 @@ def derive(facts: RunFacts, shelf: Shelf, registry: Registry, wanted: tuple[str,
     order = []
     done = 0
     with np.errstate(all="ignore"):
-        for rows in _groups(facts, shelf):
+        for rows in blocks_alike(facts, shelf):
             spread = spread_of(gathered, rows, registry, wanted)
             _fill(columns[:, done : done + len(rows)], spread, keys)
             order.append(rows)
@@ -73,16 +75,17 @@ def derive(facts: RunFacts, shelf: Shelf, registry: Registry, wanted: tuple[str,
     return Derived(keys, columns, place, sentences, _marks(facts, shelf, gathered), gathered.material)
 
 
-def _groups(facts, shelf):
+def blocks_alike(facts: RunFacts, shelf: Shelf) -> Iterator[np.ndarray]:
     """Row indices by what changes the arithmetic: section, form and drive."""
+    drive, drives = pd.factorize(facts.drive)
     kind_of = {
         i: (section_of(s), s.texts["form"], "L_tail" in s.typed) for i, s in shelf.swimmers.items()
     }
     kinds = sorted(set(kind_of.values()), key=str)
     number = {i: kinds.index(k) for i, k in kind_of.items()}
     ids, which = distinct(facts.swimmer)
-    groups = np.array([number[int(i)] for i in ids])[which]
-    for k in range(len(kinds)):
+    groups = np.array([number[int(i)] for i in ids])[which] * len(drives) + drive
+    for k in range(len(kinds) * len(drives)):
         rows = np.flatnonzero(groups == k)
         if len(rows):
             yield rows

@@ -70,7 +70,7 @@ def preview(connection: Connection, cells: Mapping[str, str]) -> Preview:
     if enough_runs(connection, [ids["swimmer"]], 2**62):
         warned += run_warnings(connection, ids["swimmer"], watched(row), 2**62)
     return Preview(
-        values, u, {k: s for k, s in said.items() if not s.startswith("absent")}, regimes_of(values, registry.regimes), why_absent(values | {f"u_{k}": v for k, v in u.items()}, said, of.code, drive, registry),
+        values, u, {k: s for k, s in said.items() if not s.startswith("absent")}, regimes_of(values, registry.regimes), why_absent(values | {f"u_{k}": v for k, v in u.items()}, said, of.code, of.texts["form"], drive, registry),
         marks_of(derived.marks[0], None, values, registry), refused, warned,
     )  # fmt: skip
 

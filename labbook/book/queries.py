@@ -23,8 +23,9 @@ RUN_TEXTS = ("code", "at", "by", "swimmer", "fluid", "material", "rig", "drive",
 _FROM_RUN = {c: run.c[c] for c in ("code", "by", "drive", "series", "video", "why", "note", "confirmed", "typed")}
 _FROM_VIEW = {"at": resolved.c.at, "state": resolved.c.state, "marks": resolved.c.marks,
               "run_id": resolved.c.run_id, **{s: resolved.c[s] for s in SENTENCES}}  # fmt: skip
-_BY_ID = {"swimmer": (resolved.c.swimmer_id, swimmer), "fluid": (resolved.c.fluid_id, fluid),
-          "material": (resolved.c.material_id, material), "rig": (run.c.rig_id, rig)}  # fmt: skip
+_BY_ID = {"swimmer": (resolved.c.swimmer_id, swimmer.c.code), "fluid": (resolved.c.fluid_id, fluid.c.code),
+          "material": (resolved.c.material_id, material.c.code), "rig": (run.c.rig_id, rig.c.code),
+          "form": (resolved.c.swimmer_id, swimmer.c.form)}  # fmt: skip
 
 
 def frame(
@@ -102,8 +103,8 @@ def _table(connection, rows, texts, keys, prefixes, first_float: int) -> pd.Data
 
 def _text_column(connection, name, values):
     if name in _BY_ID:
-        table = _BY_ID[name][1]
-        codes = dict(connection.execute(select(table.c.id, table.c.code)).all())
+        told = _BY_ID[name][1]
+        codes = dict(connection.execute(select(told.table.c.id, told)).all())
         ids = np.array([v or 0 for v in values], dtype=np.int64)
         unique, which = np.unique(ids, return_inverse=True)
         named = np.array([codes.get(int(i)) for i in unique], dtype=object)

@@ -8,6 +8,7 @@ import numpy as np
 from sqlalchemy import Connection, Text, cast, func, select
 
 from labbook.book.asking import Question, holds
+from labbook.book.block_spread import needed
 from labbook.book.queries import frame
 from labbook.book.registry_rows import registry_of
 from labbook.book.stored_view import resolved
@@ -78,7 +79,7 @@ def takers_of_drag(registry: Registry, number: str, choices: Choices) -> tuple[s
     if Registry(house=house).coefficient == registry.coefficient:
         return ()
     drag = {"zeta_n", "zeta_t"}
-    return tuple(k for k, n in registry.numbers.items() if k != number and drag & set(n.parsed.keys))
+    return tuple(k for k in registry.numbers if k != number and drag & needed(registry, (k,)))
 
 
 def history(connection: Connection, kind: str) -> dict[str, list[dict]]:

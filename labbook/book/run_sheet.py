@@ -13,6 +13,7 @@ from labbook.book.clock import local
 from labbook.book.dialect_columns import Dialects, house_in_words
 from labbook.book.queries import RUN_TEXTS, frame
 from labbook.book.registry_rows import registry_of
+from labbook.book.run_prediction import Prediction, prediction_of
 from labbook.book.stored_view import SENTENCES
 from labbook.book.tables import run
 from labbook.book.track_pages import TrackSheet, track_of, tracks_of
@@ -28,7 +29,7 @@ class RunSheet:
 
     sentences: 'viscosity: fit of 3 readings of 2026-03-01' and the like, absent ones left out; dialects: number
     -> words, for numbers whose values are not in the house dialect (regimes always are); track: what values of the
-    run come from, None where all were typed.
+    run come from, None where all were typed; prediction: what stands behind U_model.
     """
 
     texts: dict[str, str | None]
@@ -44,6 +45,7 @@ class RunSheet:
     logged: str | None = None
     dialects: dict[str, str] = field(default_factory=dict)
     track: TrackSheet | None = None
+    prediction: Prediction | None = None
 
     def row(self) -> dict:
         """The run as one flat record, for JSON."""
@@ -58,10 +60,11 @@ class RunSheet:
             "why_absent": self.why_absent,
             "marks": self.marks,
             "track": self.track.row() if self.track is not None else None,
+            "model": self.prediction.row() if self.prediction is not None else None,
         } | ({"dialects": self.dialects} if self.dialects else {})
 
 
-_TEXTS = (*RUN_TEXTS, *SENTENCES, "marks", "confirmed", "typed")
+_TEXTS = (*RUN_TEXTS, *SENTENCES, "form", "marks", "confirmed", "typed")
 
 
 def sheets(
@@ -129,9 +132,9 @@ def sheet_from(
         {s: text for s, text in said.items() if text and not text.startswith("absent")},
         regimes_of(values, registry.regimes),
         why_absent(values | {f"u_{k}": v for k, v in u["u_"].items()}, said, texts["swimmer"] or "",
-                   texts["drive"] or "", registry),
+                   row["form"], texts["drive"] or "", registry),
         marks_of(row["marks"], row["confirmed"], values, registry), logged,
-        house_in_words(registry, registry.numbers), track=track,
+        house_in_words(registry, registry.numbers), track, prediction_of(row["form"], texts["drive"] or "", values, registry),
     )  # fmt: skip
 
 

@@ -1,131 +1,113 @@
 """The viscous beam: how an elastic tail with a free tip, moved slowly in Stokes flow, answers its base."""
 
-from dataclasses import dataclass
-from math import cos, factorial, pi, sin, sqrt
+from dataclasses import dataclass, fields
+from math import cos, factorial, pi, sin
 
 import numpy as np
 
-_SERIES_BELOW = 2.0  # Sp: the power series is exact to rounding here, the exponential form takes over above
-_SERIES_TERMS = 9
-
-
-@dataclass(frozen=True)
-class Phasor:
-    """An oscillation as its in-phase and quadrature part, Re[(p + i q) exp(i omega t)].
-
-    The parts are kept apart, not as one complex number, so that both stay accurate at small Sp and both can
-    themselves carry a complex step.
-    """
-
-    p: np.ndarray
-    q: np.ndarray
-
-    def __add__(self, other):
-        return Phasor(self.p + other.p, self.q + other.q)
-
-    def __sub__(self, other):
-        return Phasor(self.p - other.p, self.q - other.q)
-
-    def __mul__(self, other):
-        return Phasor(self.p * other.p - self.q * other.q, self.p * other.q + self.q * other.p)
-
-    def __truediv__(self, other):
-        size = other.square()
-        return Phasor((self.p * other.p + self.q * other.q) / size,
-                      (self.q * other.p - self.p * other.q) / size)
-
-    def scaled(self, factor):
-        return Phasor(self.p * factor, self.q * factor)
-
-    def square(self):
-        return self.p**2 + self.q**2
-
-    def amplitude(self):
-        return np.sqrt(self.square())
-
-    def mean_product(self, other):
-        return (self.p * other.p + self.q * other.q) / 2.0
+SERIES_BELOW = 2.0  # Sp: the power series is exact to rounding here, the exponential form takes over above
+_SERIES_TERMS = 4  # pairs: the next one is below 1e-20 at Sp = 2
+ALPHA, BETA = cos(pi / 8.0), sin(pi / 8.0)  # the wavenumber is k = (ALPHA - i BETA) Sp
 
 
 @dataclass(frozen=True)
 class Beam:
-    """How a tail with a free tip answers its base: lengths in L, slopes as they are, all phasors.
+    """How a tail with a free tip answers its base: lengths in L, slopes as they are, all complex amplitudes.
 
     h''(0) = -i Sp^4 (P h + M h') and h'''(0) = i Sp^4 (Q h + P h') for base position h and slope h';
-    the tip stands at tip_h h + tip_slope h'.
+    the tip stands at tip_h h + tip_slope h' and slopes by turn_h h + tip_h h'.
     """
 
-    P: Phasor
-    M: Phasor
-    Q: Phasor
-    tip_h: Phasor
-    tip_slope: Phasor
+    P: np.ndarray
+    M: np.ndarray
+    Q: np.ndarray
+    tip_h: np.ndarray
+    tip_slope: np.ndarray
+    turn_h: np.ndarray
 
 
 def free_tip_beam(*, Sp):
     """Answer of a tail of sperm number Sp to the motion of its base, as a Beam.
 
-    zeta_n h_t = -EI h_xxxx with h'' = h''' = 0 at the tip, solved exactly. Sp: scalar or array, real or
-    complex step, from 0 up without overflow. Source: Wiggins & Goldstein 1998, Phys. Rev. Lett. 80:3879.
+    zeta_n h_t = -EI h_xxxx with h'' = h''' = 0 at the tip, solved exactly. Sp: real scalar or array, from 0
+    up without overflow. Source: Wiggins & Goldstein 1998, Phys. Rev. Lett. 80:3879.
     """
-    Sp = np.asarray(Sp) * 1.0
-    small = Sp.real < _SERIES_BELOW
+    Sp = np.asarray(Sp, dtype=float)
+    small = Sp < SERIES_BELOW
     if np.all(small):
         return _beam_series(Sp)
     if not np.any(small):
         return _beam_exponential(Sp)
-    low, high = _beam_series(np.where(small, Sp, 1.0)), _beam_exponential(np.where(small, _SERIES_BELOW, Sp))
-    return Beam(**{key: Phasor(np.where(small, getattr(low, key).p, getattr(high, key).p),
-                               np.where(small, getattr(low, key).q, getattr(high, key).q))
-                   for key in Beam.__dataclass_fields__})
+    answer = np.empty((len(fields(Beam)), *Sp.shape), complex)
+    for rows, form in ((np.nonzero(small), _beam_series), (np.nonzero(~small), _beam_exponential)):
+        part = form(Sp[rows])
+        for whole, field in zip(answer, fields(Beam), strict=True):
+            whole[rows] = getattr(part, field.name)
+    return Beam(*answer)
+
+
+def beam_slopes(*, Sp, beam):
+    """d/dSp of P, M, Q, tip_h and tip_slope of a Beam, as a tuple; no function has to be evaluated again.
+
+    A longer tail is the same tail with a short piece put before its base, which gives a Riccati equation for
+    what the base feels (invariant imbedding: Bellman & Wing 1975, from memory). Sp as in free_tip_beam.
+    """
+    over = 1.0 / np.where(Sp == 0.0, np.inf, Sp)  # what it multiplies vanishes with Sp
+    turn = -1j * (Sp * Sp * Sp)
+    M_turn, P_turn = beam.M * turn, beam.P * turn
+    return ((beam.Q - 2.0 * beam.P) * over + M_turn * beam.P,
+            (2.0 * beam.P - 3.0 * beam.M) * over + M_turn * beam.M,
+            (1.0 - beam.Q) * over + P_turn * beam.P,
+            P_turn * beam.tip_slope,
+            (beam.tip_h - beam.tip_slope) * over + M_turn * beam.tip_slope)
 
 
 def _beam_series(Sp):
     """Entire functions of k^4 = -i Sp^4, such as cosh k cos k, by their power series."""
-    quarter, full = 4.0 * Sp**4, -(Sp**4)
-    D = _series(quarter, 0, 0.5) + Phasor(0.5, 0.0)
-    parts = (_series(quarter, 2, 1.0), _series(quarter, 3, 2.0), _series(quarter, 1, 1.0),
-             _series(full, 0, 1.0), _series(full, 1, 1.0))
-    return Beam(*(part / D for part in parts))
+    full = -((Sp * Sp) ** 2)
+    quarter = -4.0 * full
+    over = 1.0 / (series(quarter, 0) * 0.5 + 0.5)
+    tip_turn = series(full, 3) * (1j * full)
+    parts = (series(quarter, 2), 2.0 * series(quarter, 3), series(quarter, 1), series(full, 0),
+             series(full, 1), tip_turn)
+    return Beam(*(part * over for part in parts))
 
 
-def _series(y, first, factor):
-    """factor times the sum of (i y)^n/(4n + first)!, as a phasor."""
-    even = np.zeros_like(y)
-    odd = np.zeros_like(y)
-    for n in range(_SERIES_TERMS, -1, -1):  # Horner in y^2, even powers in phase, odd ones in quadrature
-        even = even * -(y**2) + 1.0 / factorial(8 * n + first)
-        odd = odd * -(y**2) + 1.0 / factorial(8 * n + 4 + first)
-    return Phasor(factor * even, factor * y * odd)
+def series(y, first):
+    """Sum of (i y)^n/(4n + first)! for real y, to rounding for y up to 64: even powers real, odd ones
+    imaginary."""
+    square = -(y * y)
+    total = np.empty(np.shape(y), complex)
+    for offset, part in ((0, total.real), (4, total.imag)):
+        part[...] = 1.0 / factorial(8 * (_SERIES_TERMS - 1) + offset + first)
+        for n in range(_SERIES_TERMS - 2, -1, -1):
+            part *= square
+            part += 1.0 / factorial(8 * n + offset + first)
+    total.imag *= y
+    return total
 
 
 def _beam_exponential(Sp):
-    """The same functions through decaying exponentials, k = Sp exp(-i pi/8), nothing larger than 1."""
-    alpha, beta = cos(pi / 8.0), sin(pi / 8.0)
-    X, Y = sqrt(2.0) * alpha * Sp, sqrt(2.0) * beta * Sp
-    ch_X, sh_X = _hyperbolic(X, X)
-    ch_Y, sh_Y = _hyperbolic(Y, X)
-    cos_X, sin_X, cos_Y, sin_Y = np.cos(X), np.sin(X), np.cos(Y), np.sin(Y)
-    k = Phasor(alpha * Sp, -beta * Sp)
-    cosh_cos = Phasor(cos_X * ch_Y + cos_Y * ch_X, sin_Y * sh_X - sin_X * sh_Y).scaled(0.5)
-    sinh_sin = Phasor(sin_Y * sh_X + sin_X * sh_Y, cos_X * ch_Y - cos_Y * ch_X).scaled(0.5)
-    near, far = Phasor(sin_X * ch_Y, cos_X * sh_Y), Phasor(sin_Y * ch_X, -cos_Y * sh_X)
-    D = (cosh_cos + Phasor(np.exp(-X), 0.0)).scaled(0.5)
-    # cosh k sin k and cos k sinh k, by sums of sines of k(1 + i) and k(1 - i)
-    cosh_sin = (near + far).scaled(0.5)
-    cos_sinh = (Phasor(near.q, -near.p) - Phasor(far.q, -far.p)).scaled(0.5)
-    x, y = alpha * Sp, beta * Sp
-    ch_x, sh_x = _hyperbolic(x, X)
-    ch_y, sh_y = _hyperbolic(y, X)
-    cosh_k, sinh_k = Phasor(ch_x * np.cos(y), -sh_x * np.sin(y)), Phasor(sh_x * np.cos(y), -ch_x * np.sin(y))
-    cos_k, sin_k = Phasor(np.cos(x) * ch_y, np.sin(x) * sh_y), Phasor(np.sin(x) * ch_y, -np.cos(x) * sh_y)
-    double = D.scaled(2.0)
-    return Beam(P=sinh_sin / (double * k * k), M=(cosh_sin - cos_sinh) / (double * k * k * k),
-                Q=(cosh_sin + cos_sinh) / (double * k), tip_h=(cosh_k + cos_k) / double,
-                tip_slope=(sinh_k + sin_k) / (double * k))
+    """The same functions through decaying exponentials, nothing larger than 1."""
+    x, y = ALPHA * Sp, BETA * Sp
+    cos_x, sin_x, cos_y, sin_y = np.cos(x), np.sin(x), np.cos(y), np.sin(y)
+    fall_x, fall_y = np.exp(-x), np.exp(-y)
+    ch_x, sh_x = 0.5 + 0.5 * fall_x * fall_x, 0.5 - 0.5 * fall_x * fall_x  # both times exp(-x)
+    ch_y, sh_y = 0.5 + 0.5 * fall_y * fall_y, 0.5 - 0.5 * fall_y * fall_y  # both times exp(-y)
+    cosh_k, sinh_k = _complex(ch_x * cos_y, -sh_x * sin_y), _complex(sh_x * cos_y, -ch_x * sin_y)
+    cos_k, sin_k = _complex(cos_x * ch_y, sin_x * sh_y), _complex(sin_x * ch_y, -cos_x * sh_y)
+    over_k = np.reciprocal(Sp) * complex(ALPHA, BETA)
+    over = 1.0 / (cosh_k * cos_k + fall_x * fall_y)
+    once = over * over_k
+    twice = once * over_k
+    cosh_sin, cos_sinh = cosh_k * sin_k, cos_k * sinh_k
+    return Beam(P=sinh_k * sin_k * twice, M=(cosh_sin - cos_sinh) * (twice * over_k),
+                Q=(cosh_sin + cos_sinh) * once, tip_h=(cosh_k * fall_y + cos_k * fall_x) * over,
+                tip_slope=(sinh_k * fall_y + sin_k * fall_x) * once,
+                turn_h=(sinh_k * fall_y - sin_k * fall_x) * over * (Sp * complex(ALPHA, -BETA)))
 
 
-def _hyperbolic(y, X):
-    """cosh y and sinh y, both times exp(-X) with X the largest exponent in play."""
-    rise, fall = np.exp(y - X), np.exp(-y - X)
-    return (rise + fall) / 2.0, (rise - fall) / 2.0
+def _complex(real, imag):
+    both = np.empty(np.shape(real), complex)
+    both.real, both.imag = real, imag
+    return both

@@ -179,6 +179,27 @@ NUMBERS: dict[str, Number] = {
             "Happel & Brenner, Low Reynolds Number Hydrodynamics (1965)",
             dict(b=2e-3, h_wall=0.02), 0.1, 1e-9, dialect="head radius: b",
         ),
+        Number(
+            "U_ratio", "U/U_model", "measured to predicted speed", "U / U_model",
+            "what was seen to what linear theory says of this swimmer",
+            "Lauga, Phys. Rev. E 75:041916 (2007), for tails; the run's sheet names the model of its form and drive",
+            # the nonlinear simulation of the SI case to its linear speed, which is 0.85 % high there (up to 3 % at
+            # 0.3 rad near the maximum: physics.tails.THETA0_CHECKED)
+            dict(U=7.37698e-5, U_model=7.43970681e-5), 1 / 1.0085, 1e-4, signed=True,
+        ),
+        Number(
+            "F_scaled", "F/(Δζ ω L_tail² θ₀²)", "scaled push",
+            "U * (zeta_t * L_tail + 6 * pi * mu * b)"
+            " / ((zeta_n - zeta_t) * omega * L_tail**2 * theta0**2)",
+            "the push that the speed tells of to the small-angle push of a tail: swimmers of any head and drag"
+            " ratio on one plot",
+            "Wiggins & Goldstein, Phys. Rev. Lett. 80:3879 (1998); Stokes's drag of a sphere as the head",
+            # L 30 mm, d 1 mm, b 2 mm, 1 Pa.s, 1 Hz, 0.3 rad: push 6.70625393e-6 N, recomputed independently
+            dict(U=7.43970681e-5, zeta_t=1.7480754, zeta_n=2.73518245, L_tail=0.030, mu=1.0, b=2e-3,
+                 omega=2 * math.pi, theta0=0.3),
+            6.70625393e-6 / ((2.73518245 - 1.7480754) * 2 * math.pi * (0.030 * 0.3) ** 2), 1e-6, signed=True,
+            dialect="rate: omega; length: L_tail; head: sphere of radius b", only_drives=("free_head_angle",),
+        ),
     )
 }
 

@@ -33,14 +33,23 @@ class Spread:
         self.values[key] = value
         self.parts[key] = {source or key: u}
 
-    def follow(self, keys: Iterable[str], function: Callable, inputs: tuple[str, ...]) -> None:
+    def follow(
+        self, keys: Iterable[str], function: Callable, inputs: tuple[str, ...], slopes: Callable | None = None
+    ) -> None:
         """Enter `keys` as function(**inputs) -> one array per key, with the parts it inherits.
 
         function must be analytic; it is called once with real arrays and once per uncertain input with
-        that input stepped along the imaginary axis.
+        that input stepped along the imaginary axis. slopes(**inputs) -> (value, {input: slope}) per key, where
+        there is one, is called instead, once.
         """
         keys = tuple(keys)
         given = {k: self.values[k] for k in inputs}
+        if slopes is not None:
+            for key, (value, by) in zip(keys, slopes(**given), strict=True):
+                self.values[key], self.parts[key] = value, {}
+                for name, slope in by.items():
+                    self._inherit(key, self.parts[name], slope)
+            return
         for key, value in zip(keys, _several(function(**given), keys), strict=True):
             self.values[key] = value
             self.parts[key] = {}
@@ -55,11 +64,14 @@ class Spread:
             for key, value in zip(keys, _several(function(**stepped), keys), strict=True):
                 if not np.iscomplexobj(value):
                     continue  # this output does not depend on the input
-                slope = value.imag / step
-                parts = self.parts[key]
-                for source, part in inherited.items():
-                    share = slope * part
-                    parts[source] = parts[source] + share if source in parts else share
+                self._inherit(key, inherited, value.imag / step)
+
+    def _inherit(self, key: str, inherited: Mapping[str, np.ndarray], slope) -> None:
+        """Add to the parts of a key those of an input, times d key/d input."""
+        parts = self.parts[key]
+        for source, part in inherited.items():
+            share = slope * part
+            parts[source] = parts[source] + share if source in parts else share
 
     def own(self, key: str) -> np.ndarray:
         """Standard uncertainty from the sources of the run alone."""

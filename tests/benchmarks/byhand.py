@@ -7,6 +7,8 @@ import sqlite3
 import numpy as np
 import pint
 
+from labbook.physics import tails
+
 
 def numbers_by_hand(columns, section, glycerol, andrade) -> dict[str, np.ndarray]:
     """Every resolved quantity and number of a block of runs, values only.
@@ -36,12 +38,18 @@ def numbers_by_hand(columns, section, glycerol, andrade) -> dict[str, np.ndarray
     zeta_n = 4 * math.pi * mu / (np.log(p) + 0.839 + 0.185 / p + 0.233 / p**2 + flat)
     zeta_t = 2 * math.pi * mu / (np.log(p) - 0.207 + 0.980 / p - 0.133 / p**2)
     EI = E * area
+    Sp, R_head = L * (zeta_n * omega / EI) ** 0.25, 6 * math.pi * mu * b
+    # a tail's force has no shorter way by hand than the function of Sp and head, asked for its values alone
+    force = tails.response(drive="free_head_angle", Sp=Sp, head=b / L, head_drag=R_head / (zeta_n * L)).force
+    scale, drag = (zeta_n - zeta_t) * omega * (L * theta0) ** 2, zeta_t * L + R_head
+    U_model = force * scale / drag
     return {
         "Re": rho * U * body / mu, "Re_omega": rho * omega * L**2 / mu, "Wo": L * np.sqrt(omega / nu),
-        "Sp": L * (zeta_n * omega / EI) ** 0.25, "St": f * A_tip / U, "Sw": omega * A_tip * body / nu,
+        "Sp": Sp, "St": f * A_tip / U, "Sw": omega * A_tip * body / nu,
         "stride": U / (f * body), "U_scaled": U / (omega * L * theta0**2), "Mn": m * B * L / EI,
         "f_ratio": 2 * math.pi * f * 8 * math.pi * mu * b**3 / (m * B), "zeta_ratio": zeta_n / zeta_t,
         "slenderness": L / (2 * a), "wall": b / h_wall, "EI": EI, "I_area": area,
+        "U_model": U_model, "U_ratio": U / U_model, "F_scaled": U * drag / scale,
     }  # fmt: skip
 
 

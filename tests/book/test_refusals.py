@@ -449,9 +449,8 @@ def test_extrapolated_is_saved_and_marked(filled):
 
 def test_a_missing_input_makes_its_numbers_absent_and_nothing_else(stocked):
     sheet = stocked.sheet(stocked.record(swimmer="reed-1", fluid="syrup", f="0.5 Hz", T="22 degC"))
-    assert {k for k in ("Re", "St", "Sw", "stride", "U_scaled", "Mn", "wall", "f_ratio")} == set(
-        sheet.why_absent
-    )
+    lost = ("Re", "St", "Sw", "stride", "U_scaled", "Mn", "wall", "f_ratio", "U_model", "U_ratio", "F_scaled")
+    assert set(lost) == set(sheet.why_absent)
     assert sheet.why_absent["Re"] == "needs U: it was not typed"
     assert sheet.why_absent["St"] == "needs A_tip: it was not typed; needs U: it was not typed"
     assert sheet.why_absent["Mn"] == "needs B: neither B nor a coil current with the rig's constant was typed"

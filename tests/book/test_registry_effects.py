@@ -89,7 +89,7 @@ def test_which_other_numbers_follow_the_drag_model(filled):
     assert takers_of_drag(filled.registry, "Sp", {"coefficient": "mu"}) == ()  # the model stays
     assert takers_of_drag(filled.registry, "Sp", {"rate": "f"}) == ()
     others = takers_of_drag(filled.registry, "Sp", {"coefficient": "cylinder_two_term"})
-    assert others == ("zeta_ratio",)
+    assert others == ("zeta_ratio", "U_ratio", "F_scaled")
     before = filled.runs()
     filled.adopt_dialect("Sp", {"coefficient": "cylinder_two_term"}, why="to see", by="wren")
     after = filled.runs()

@@ -11,7 +11,7 @@ from labbook.registry.catalogue import NUMBERS, Number, number
 
 # the numbers that the group keeps, and no others at birth
 AT_BIRTH = ["Re", "Re_omega", "Wo", "Sp", "St", "Sw", "stride", "U_scaled", "De", "Mn", "f_ratio",
-            "zeta_ratio", "slenderness", "wall"]  # fmt: skip
+            "zeta_ratio", "slenderness", "wall", "U_ratio", "F_scaled"]  # fmt: skip
 
 
 def value(key, **inputs):
@@ -20,7 +20,7 @@ def value(key, **inputs):
 
 def test_the_numbers_at_birth():
     assert list(NUMBERS) == AT_BIRTH
-    assert [key for key, row in NUMBERS.items() if row.signed] == ["Re", "St", "stride", "U_scaled"]
+    assert [key for key, row in NUMBERS.items() if row.signed] == ["Re", "St", "stride", "U_scaled", "U_ratio", "F_scaled"]
 
 
 @pytest.mark.parametrize(("U", "L_body", "Re"), [

@@ -113,3 +113,48 @@ def test_complex_step_and_refusals():
         helices.free_speed(drive="hand", omega=1.0, b=1e-6, **CELL)
     with pytest.raises(Refusal, match="lighthill"):
         helices.resistance(coefficients="mine", **CELL)
+
+
+def test_step_out_slows_a_field_driven_helix_to_its_mean_rate():
+    # overdamped rotor: at 1.25 times step-out the mean rate is 1.25 - sqrt(1.25^2 - 1) = 0.5 of step-out, by
+    # hand
+    b, mu, m_mag, B = 0.8e-6, CELL["mu"], 1e-15, 5e-3
+    a11, a12, a22 = helices.resistance(**CELL)
+    head = dict(axial=6.0 * np.pi * mu * b, spinning=8.0 * np.pi * mu * b**3)
+    limit = m_mag * B / (head["spinning"] + a22)
+    given = dict(drive="field", a11=a11, a12=a12, a22=a22, **head)
+    per_turn = a12 / (a11 + head["axial"])
+    speed = helices.speed_of(omega=limit * np.array([0.5, 1.25]), m_mag=m_mag, B=B, **given)
+    np.testing.assert_allclose(speed, per_turn * limit * 0.5, rtol=1e-12)
+    # what is not known is not taken as passed
+    for unknown in (dict(m_mag=np.nan, B=B), dict(m_mag=m_mag, B=np.nan), dict(m_mag=m_mag), {}):
+        follows = helices.speed_of(omega=3.0 * limit, **given, **unknown)
+        assert follows == pytest.approx(per_turn * 3.0 * limit, rel=1e-12)
+    with np.errstate(all="raise"):
+        step = helices.speed_of(omega=limit * (1.25 + 1e-30j), m_mag=m_mag, B=B, **given).imag / 1e-30
+    assert step == pytest.approx(per_turn * limit * (1.0 - 1.25 / 0.75), rel=1e-12)  # derivative by hand
+
+
+@pytest.mark.parametrize("pitch_ratio", TANK)
+def test_the_range_covers_the_tanks_own_speed(pitch_ratio):
+    # Rodenborn et al. 2013 [R]: U = thrust Omega/(drag + head) with what was measured; resistive-force theory
+    # is an approximation off by 0 % (no head) to a factor 2.1 (a head ten helix radii in size) at short pitch
+    R, mu, omega = 6.3e-3, 1.0, 2.0
+    helix = dict(omega=omega, R=R, pitch=pitch_ratio * R, L=0.13, a=0.397e-3, mu=mu)
+    for b in (0.0, R, 10.0 * R):
+        axial, spinning = 6.0 * np.pi * mu * b, 8.0 * np.pi * mu * b**3
+        thrust, torque, drag = TANK[pitch_ratio][0]
+        measured = thrust * mu * R**2 * omega / (drag * mu * R + axial)
+        low, high = helices.speed_range(drive="field", axial=axial, spinning=spinning, **helix)
+        assert low * 0.9995 <= measured <= high * 1.0005  # theory printed to four figures
+        plain = helices.free_speed(drive="field", b=b, **helix)
+        assert low <= plain <= high
+        # the approximation is off by what the printed numbers say: 1.00, 1.22, 2.10 at the short pitch for
+        # the three heads, 0.95 at the long one
+        (thrust_t, _, drag_t), pull = TANK[pitch_ratio][1], axial / (mu * R)
+        off = thrust_t / (drag_t + pull) / (thrust / (drag + pull))
+        assert plain / measured == pytest.approx(off, rel=1e-3)
+        assert off == pytest.approx(1.0, abs=0.06) or (pitch_ratio < 3.0 and 1.2 < off < 2.15)
+    head = dict(axial=6.0 * np.pi * mu * R, spinning=8.0 * np.pi * mu * R**3)
+    spun = helices.speed_range(drive="motor", **head, **helix)
+    assert 0.0 < spun[0] < spun[1]

@@ -5,7 +5,7 @@ import pytest
 from scipy import optimize
 
 from labbook.errors import Refusal
-from labbook.physics import rods, sections, tails
+from labbook.physics import heads, rods, sections, tail_shapes, tails
 
 # Y of Wiggins & Goldstein 1998; Lauga 2007; Yu, Lauga & Hosoi 2006 [C, exact and an independent time march].
 SP = np.array([1.0, 2.0, 3.0, 4.0, 6.0, 10.0])
@@ -160,14 +160,14 @@ def chebyshev(n):
     return (1.0 - x) / 2.0, -2.0 * D, weights / 2.0
 
 
-def collocation(drive, Sp, head, head_drag, n=22):
-    """Thrust, as -<h_t h_x> summed along the tail, and tip of i Sp^4 h = -h'''' solved by collocation."""
-    s, D, weights = chebyshev(n)
+def collocated(drive, Sp, head, head_drag, head_turn=4.0 / 3.0, n=22):
+    """Places, h along the tail and h' at its base, from i Sp^4 h = -h'''' solved by collocation."""
+    s, D, _ = chebyshev(n)
     D2, one = D @ D, np.eye(n + 1)
     D3, D4, S = D2 @ D, D2 @ D2, Sp**4
     matrix, right = (D4 / S + 1j * one).astype(complex), np.zeros(n + 1, complex)
     shear_balance = D3[0] / S + 1j * head_drag * (one[0] - head * D[0])
-    torque_row = -D2[0] / S + 1j * head_drag * head * (7.0 / 3.0 * head * D[0] - one[0])
+    torque_row = -D2[0] / S + 1j * head_drag * head * ((1.0 + head_turn) * head * D[0] - one[0])
     rows = {
         "hinged_heave": ((one[0], 1.0), (D2[0] / S, 0.0)),
         "pivoted_angle": ((one[0], 0.0), (D[0], 1.0)),
@@ -178,8 +178,14 @@ def collocation(drive, Sp, head, head_drag, n=22):
     for at, (row, value) in zip((0, 1, n - 1, n), (*rows, (D2[-1] / S, 0.0), (D3[-1] / S, 0.0)), strict=True):
         matrix[at], right[at] = row, value
     h = np.linalg.solve(matrix, right)
-    thrust = -0.5 * weights @ np.real(1j * h * np.conj(D @ h))
-    return thrust, abs(h[-1])
+    return s, h, D[0] @ h
+
+
+def collocation(drive, Sp, head, head_drag):
+    """Thrust, as -<h_t h_x> summed along the tail, and tip of the collocated tail."""
+    s, h, _ = collocated(drive, Sp, head, head_drag)
+    _, D, weights = chebyshev(len(s) - 1)
+    return -0.5 * weights @ np.real(1j * h * np.conj(D @ h)), abs(h[-1])
 
 
 @pytest.mark.parametrize("drive", tails.DRIVES)
@@ -246,3 +252,114 @@ def test_refusals():
         tails.free_speed(drive="free_head_angle", **WORKED)
     with pytest.raises(Refusal, match="torque"):
         tails.free_speed(drive="free_head_torque", theta0=0.1, **WORKED)
+
+
+@pytest.mark.parametrize("drive", tails.DRIVES)
+@pytest.mark.parametrize("Sp", [1.0, 1.9, 2.1, 5.0, 9.0])
+def test_shape_and_power_against_collocation(drive, Sp):
+    # the whole tail, not its ends; power as what the fluid takes: <h_t^2> along the tail, and the head's
+    # share
+    head, head_drag, head_turn = 0.3, 2.0, 1.1
+    s, h, slope = collocated(drive, Sp, head, head_drag, head_turn)
+    exact, angle = tail_shapes.displacement(drive=drive, Sp=Sp, s=s, head=head, head_drag=head_drag,
+                                            head_turn=head_turn)
+    size = np.max(np.abs(h))
+    np.testing.assert_allclose(exact, h, atol=3e-7 * size)  # rounding as in test_against_collocation
+    assert angle == pytest.approx(slope, abs=3e-7 * (size + abs(slope)))
+    answer = tails.response(drive=drive, Sp=Sp, head=head, head_drag=head_drag, head_turn=head_turn)
+    _, _, weights = chebyshev(len(s) - 1)
+    taken = 0.5 * weights @ np.abs(h) ** 2
+    if drive.startswith("free"):
+        centre = h[0] - head * slope
+        taken += 0.5 * head_drag * (abs(centre) ** 2 + head_turn * head**2 * abs(slope) ** 2)
+        pushed = -0.5 * np.real(1j * centre * np.conj(slope))
+        assert answer.head_push == pytest.approx(pushed, abs=1e-7 * size**2)
+    assert answer.power == pytest.approx(taken, rel=1e-6)
+
+
+def test_a_stiff_tail_takes_the_power_of_a_rigid_rod():
+    # zeta_n omega^2 theta0^2/2 times int s^2 ds = L^3/3 about the pivot; a heaved clamp moves all of it: 1/2
+    assert tails.response(drive="pivoted_angle", Sp=0.01).power == pytest.approx(1.0 / 6.0, rel=1e-9)
+    assert tails.response(drive="clamped_heave", Sp=0.01).power == pytest.approx(0.5, rel=1e-9)
+    # about a hinge a rod swings free of torque: int (1 - 3 s/2)^2 ds = 1/4
+    assert tails.response(drive="hinged_heave", Sp=0.01).power == pytest.approx(1.0 / 8.0, rel=1e-9)
+
+
+def test_the_wave_far_from_the_base_has_machins_length_and_decay():
+    # Machin 1958: wavelength 6.8009 ell, decay over 2.6131 ell [C], five figures; from 15 ell on the faster
+    # of the two waves has died by exp(-0.54 x 15) = 3e-4 of the other, and beats with it: hence over a
+    # stretch of 30 ell
+    Sp, s = 100.0, np.linspace(0.4, 0.7, 2001)
+    amplitude, _ = tail_shapes.displacement(drive="pivoted_angle", Sp=Sp, s=s)
+    phase, size = np.unwrap(np.angle(amplitude)), np.log(np.abs(amplitude))
+    ells = (s[-1] - s[0]) * Sp
+    assert 2.0 * np.pi * ells / (phase[0] - phase[-1]) == pytest.approx(6.8009, abs=5e-5)
+    assert ells / (size[0] - size[-1]) == pytest.approx(2.6131, abs=5e-5)
+
+
+@pytest.mark.parametrize("drive", tails.DRIVES)
+@pytest.mark.parametrize("Sp", [0.0, 0.01, 1.0, 1.999999, 2.0, 5.0, 40.0, 300.0])
+def test_shape_at_every_stiffness_meets_the_response(drive, Sp):
+    # displacement and response share the base's answer but not the way to the tip; no overflow, no noise
+    with np.errstate(all="raise", under="ignore"):
+        beat = tail_shapes.shape(drive=drive, Sp=Sp, **HEAD)
+    answer = tails.response(drive=drive, Sp=Sp, **HEAD)
+    assert beat.envelope[-1] == pytest.approx(answer.tip, rel=1e-12)
+    assert beat.envelope[0] == pytest.approx(answer.base, rel=1e-12, abs=1e-15)
+    assert abs(beat.angle) == pytest.approx(answer.slope, rel=1e-12)
+    assert beat.frames.shape == (12, 81)
+    assert np.all(np.abs(beat.frames) <= beat.envelope * (1.0 + 1e-12) + 1e-15)
+    # a quarter beat before the frame at phase 0 stands the imaginary part
+    np.testing.assert_allclose(beat.frames[9], np.imag(beat.amplitude), atol=1e-12 * np.max(beat.envelope))
+    centre = beat.amplitude[0] - HEAD["head"] * beat.angle
+    moved = np.real(centre * np.exp(1j * beat.phase))
+    np.testing.assert_allclose(beat.head, moved, atol=1e-15 + 1e-12 * abs(centre))
+
+
+@pytest.mark.parametrize("drive", tails.DRIVES)
+def test_slopes_are_the_complex_steps_and_the_differences(drive):
+    Sp = np.array([0.02, 0.7, 1.999, 2.001, 3.5, 20.0])
+    at = dict(Sp=Sp, head=np.full(6, 0.1), head_drag=np.full(6, 0.8), head_turn=np.full(6, 1.2))
+    value, slopes = tails.response_slopes(drive=drive, **at)
+    plain = tails.response(drive=drive, **at)
+    for field in ("force", "tip", "base", "slope", "torque", "head_push", "power"):
+        np.testing.assert_array_equal(getattr(value, field), getattr(plain, field))
+        for key in at:
+            def shifted(factor, field=field, key=key):
+                return getattr(tails.response(drive=drive, **{**at, key: at[key] * factor}), field)
+
+            here = np.nan_to_num(shifted(1.0))  # the torque of a held base is NaN throughout
+            slope = np.nan_to_num(getattr(slopes[key], field) * at[key])
+            step = np.nan_to_num(np.imag(shifted(1.0 + 1e-30j))) / 1e-30
+            # the same arithmetic, rounded in another order; slopes that vanish leave rounding of the values
+            np.testing.assert_allclose(slope + 0.0 * Sp, step + 0.0 * Sp, rtol=1e-10,
+                                       atol=1e-14 * np.max(here))
+            # central difference with relative step 1e-5: truncation near 1e-8, rounding near 1e-10
+            difference = np.nan_to_num(shifted(1.0 + 1e-5) - shifted(1.0 - 1e-5)) / 2e-5
+            np.testing.assert_allclose(step + 0.0 * Sp, difference, rtol=1e-6, atol=1e-8 * np.max(here))
+
+
+def test_several_steps_at_once_add_up():
+    # a complex step carries every input's own imaginary part
+    at = dict(Sp=2.2, head=0.1, head_drag=0.8)
+    _, slopes = tails.response_slopes(drive="free_head_angle", **at)
+    both = tails.response(drive="free_head_angle", Sp=2.2 + 3e-30j, head=0.1, head_drag=0.8 - 2e-30j).force
+    expected = 3.0 * slopes["Sp"].force - 2.0 * slopes["head_drag"].force
+    assert both.imag / 1e-30 == pytest.approx(expected, rel=1e-12)
+
+
+def test_free_speed_with_a_spheroid_and_a_wall():
+    # by hand from the response: head's centre b_long ahead, its lateral drag in the balance, its axial drag
+    # in tow
+    zeta_n, zeta_t = rods.resistive_coefficients(model=rods.HOUSE_MODEL, L=0.03, a=5e-4, mu=1.0)
+    head = heads.head_drag(mu=1.0, b=2e-3, b_long=5e-3, h_wall=0.02)
+    omega, Sp = 2.0 * np.pi, 0.03 * (zeta_n * 2.0 * np.pi / WORKED["EI"]) ** 0.25
+    answer = tails.response(drive="free_head_angle", Sp=Sp, head=1.0 / 6.0,
+                            head_drag=head.lateral / (zeta_n * 0.03))
+    push = (zeta_n - zeta_t) * 0.03 * answer.force + (head.lateral - head.axial) * answer.head_push
+    speed = tails.free_speed(drive="free_head_angle", theta0=0.2, b_long=5e-3, h_wall=0.02, **WORKED)
+    assert speed == pytest.approx(push * omega * 0.03 * 0.2**2 / (zeta_t * 0.03 + head.axial), rel=1e-12)
+    round_head = tails.free_speed(drive="free_head_angle", theta0=0.2, **WORKED)
+    assert tails.free_speed(drive="free_head_angle", theta0=0.2, b_long=2e-3, **WORKED) == pytest.approx(
+        round_head, rel=1e-14)
+    assert speed != pytest.approx(round_head, rel=0.05)
