@@ -13,10 +13,13 @@ from labbook.book import (
     ledger,
     loading,
     opening,
+    plan_proposals,
+    plan_setting,
     published_points,
     queries,
     run_sheet,
     stocking,
+    track_checking,
 )
 from labbook.book import preview as previewing
 from labbook.book.asking import Question
@@ -99,15 +102,11 @@ class Book:
     def stock(
         self, kind: str, /, *, by: str | None = None, why: str | None = None, confirm: bool = False, **cells: str
     ) -> str:
-        """Add a fluid, material, swimmer, rig or reading, or amend one with a reason; returns its code.
-
-        kind 'published' adds a point that others printed, and returns its series.
-        """
+        """Add a fluid, material, swimmer, rig, reading or published point, or amend one with a reason; returns its code
+        (a point's series)."""
         if kind == "published":
             return published_points.add_point(self.engine, _texts(cells), by or current_handle(), confirm=confirm)
-        return stocking.stock(
-            self.engine, kind, _texts(cells), by or current_handle(), why=why, confirm=confirm
-        )
+        return stocking.stock(self.engine, kind, _texts(cells), by or current_handle(), why=why, confirm=confirm)
 
     def retire(self, kind: str, code: str, *, why: str, by: str | None = None, back: bool = False) -> None:
         """Retire a fluid, material, swimmer or rig: kept, but no longer offered first."""
@@ -117,11 +116,9 @@ class Book:
         self, *, why: str | None = None, by: str | None = None, progress: Callable[[int], None] = lambda n: None,
         **cells: str,
     ) -> int:  # fmt: skip
-        """Add a number of the group's own (key, name, formula, compares, source, example, answer), or a new version
-        of one, with a reason; returns its version."""
-        return defining.define_number(
-            self.engine, _texts(cells), by or current_handle(), why=why, progress=progress
-        )
+        """Add a number of the group's own (key name formula compares source example answer), or, with a reason, a
+        new version of one; returns its version."""
+        return defining.define_number(self.engine, _texts(cells), by or current_handle(), why=why, progress=progress)
 
     def adopt_dialect(
         self, number: str, choices: Mapping[str, object], *, why: str, by: str | None = None,
@@ -147,9 +144,8 @@ class Book:
         progress: Progress = lambda what, n: None,
     ) -> Loaded:  # fmt: skip
         """Load a shelf folder, a workbook or one CSV file, whole or not at all."""
-        return self.load_tables(
-            sheets.read_tables(path), Path(path).resolve().name, by=by, confirm=confirm, progress=progress
-        )
+        name = Path(path).resolve().name
+        return self.load_tables(sheets.read_tables(path), name, by=by, confirm=confirm, progress=progress)
 
     def load_tables(
         self, tables: Sequence[sheets.Table], subject: str, *, by: str | None = None, confirm: bool = False,
@@ -162,19 +158,19 @@ class Book:
     def _load(self, tables, subject, by, confirm, progress) -> Loaded:
         # a call of its own, so that the rows are gone before the collector is back
         rows, refused = sheets.read_rows(list(tables), progress)
-        return loading.load(
-            self.engine, rows, by, subject=subject, refused=refused, confirm=confirm, progress=progress
-        )
+        return loading.load(self.engine, rows, by, subject=subject, refused=refused, confirm=confirm, progress=progress)
 
     def attach_track(
         self, code: str, content: bytes, name: str, settings: Mapping | None = None,
         accept: Sequence[str] = ("U", "A_tip", "f"), *, by: str | None = None, why: str | None = None,
+        confirm: bool = False, made: track_reducing.Made | None = None,
     ):  # fmt: skip
-        """Reduce a track file for a run, attach it and return the Reduction; settings as track_reducing has them."""
+        """Reduce a track for a run, attach it and return the Reduction; settings, made: as track_reducing has them."""
         given = attaching.conditions(self.engine, code)
-        found, made_with = track_reducing.reduce_track(content, name, settings or {}, given)
-        attaching.attach(self.engine, code, content, name, found, made_with, accept, by or current_handle(), why)
-        return found
+        made = track_reducing.reduce_track(content, name, settings or {}, given, made)
+        attaching.attach(self.engine, code, content, name, made.reduction, made.settings, accept,
+                         by or current_handle(), why, confirm=confirm)  # fmt: skip
+        return made.reduction
 
     # ---- questions
 
@@ -228,9 +224,18 @@ class Book:
         """What logging these cells would give, without logging them."""
         return self.ask(previewing.preview, cells)
 
+    def plan(self, swimmer: str, *, fluids: Sequence[str] = (), **cells: str) -> plan_setting.Plan:
+        """What a swimmer's next runs go by; planning, plan_zones and plan_inverse (of book) are asked with it."""
+        return self.ask(plan_setting.plan_of, swimmer, _texts(cells), fluids)
+
+    def propose(self, plan: plan_setting.Plan, n: int = 5, **options):
+        """The next n runs that fill a gap or pin down the maximum, as Proposals; options as in plan_proposals.propose."""
+        return self.ask(plan_proposals.propose, plan, n, **options)
+
     def check(self, progress: Callable[[int], None] = lambda n: None) -> list[str]:
         """Everything that is wrong with the book, one sentence each; an empty list is a clean book."""
-        return checking.check(self.engine, progress)
+        found = checking.check(self.engine, progress)
+        return found + track_checking.reduced_otherwise(self.engine, track_reducing.reduce_track, progress)
 
     def copy(self, target: str | Path) -> None:
         """Write a consistent copy to a new file while others may be writing."""

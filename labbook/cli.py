@@ -14,6 +14,7 @@ from labbook.book.ledger import record
 from labbook.book.records import KINDS
 from labbook.book.stocking import stock
 from labbook.cli_ask import draw, numbers, runs
+from labbook.cli_plan import plan
 from labbook.cli_print import Bar, by_option, cells_of
 from labbook.cli_reduce import reduce
 from labbook.cli_registry import budget, dialect, number, published, regime
@@ -237,5 +238,5 @@ def load(book: str, sheet: str, by: str | None, confirm: bool) -> None:
     click.echo(str(loaded))
 
 
-for _command in (runs, numbers, draw, reduce, number, regime, dialect, published, budget):
+for _command in (runs, numbers, draw, plan, reduce, number, regime, dialect, published, budget):
     main.add_command(_command)

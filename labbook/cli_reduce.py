@@ -24,6 +24,7 @@ from labbook.cli_reduce_many import (
 from labbook.cli_reduce_report import as_csv, many, report, row
 from labbook.errors import LabbookError
 from labbook.exchange.track_files import content_of
+from labbook.exchange.track_reducing import Made, reduce_track
 from labbook.exchange.track_words import axis_of, columns_of
 from labbook.registry.typed import read
 
@@ -60,12 +61,13 @@ FIT = "fit"
 @click.option("--run", "code", metavar="CODE", help="Attach the track to this run; U, A_tip and f enter it.")
 @click.option("--by-name", is_flag=True, help="Attach each track to the run that its file is named by.")
 @click.option("--book", help="The book of the runs; left out: LABBOOK_BOOK, else yours.")
+@click.option("--confirm", is_flag=True, help="With --run or --by-name: pass warnings; the run is marked confirmed.")
 @by_option
 @click.pass_context  # fmt: skip
 def reduce(
     ctx, tracks: tuple[str, ...], fps: str | None, scale: str | None, f: str | None, drift: str | None,
     still: tuple[float, float] | None, axis: str | None, columns: tuple[str, ...], trim: str, form: str,
-    jobs: int | None, code: str | None, by_name: bool, book: str | None, by: str | None,
+    jobs: int | None, code: str | None, by_name: bool, book: str | None, confirm: bool, by: str | None,
 ) -> None:  # fmt: skip
     """Speed along the swimming axis, with a 95 % interval, from tracked positions: files or folders.
 
@@ -75,8 +77,8 @@ def reduce(
     """
     if code and by_name:
         raise click.UsageError("--run and --by-name exclude each other")
-    if (book or by) and not (code or by_name):
-        raise click.UsageError("--book and --by go with --run or --by-name")
+    if (book or by or confirm) and not (code or by_name):
+        raise click.UsageError("--book, --by and --confirm go with --run or --by-name")
     files = files_of(tracks)
     single = len(files) == 1 and not Path(tracks[0]).is_dir()
     if code and len(files) != 1:
@@ -86,7 +88,7 @@ def reduce(
     wanted = Wanted(fps, scale, columns_of(columns), hertz, towards, None, still, trim)
     if code or by_name:
         with Book.open(book) as opened:
-            done = list(_attached(opened, files, code, wanted, f, axis, drift, by))
+            done = list(_attached(opened, files, code, wanted, f, axis, drift, by, confirm))
     else:
         wanted = replace(wanted, drift=drift_as_typed(drift, wanted))
         done = list(reduced_all(files, wanted, jobs or cores()))
@@ -113,7 +115,7 @@ def _written(good: list[Reduced], form: str, single: bool) -> str:
 
 def _attached(
     book: Book, files: list[Named], code: str | None, wanted: Wanted, f: str | None, axis: str | None,
-    drift: str | None, by: str | None,
+    drift: str | None, by: str | None, confirm: bool,
 ) -> Iterator[Reduced]:  # fmt: skip
     """Each track reduced for its run and attached to it, one after the other."""
     settings = {"columns": dict(wanted.columns or {}), "scale": wanted.scale, "fps": wanted.fps, "axis": axis,
@@ -123,16 +125,21 @@ def _attached(
         for named in files:
             run = code or Path(named.path).stem
             try:
-                reduction = _attach(book, run, named, settings, wanted, drift, by)
-                yield told(named.name, reduction, (f"kept with {run}",))
+                made = _attach(book, run, named, settings, wanted, drift, by, confirm)
+                yield told(named.name, made.reduction, (*made.said, f"kept with {run}"))
             except LabbookError as error:
                 yield refused(named.name, error)
             bar.step(named.name, 1)
 
 
-def _attach(book, run, named, settings, wanted, drift, by):
-    content = content_of(named.path)
+def _attach(book, run, named, settings, wanted, drift, by, confirm) -> Made:
+    content, name = content_of(named.path), Path(named.path).name
+    given = conditions(book.engine, run)
     if drift is not None:
-        moved = drift_as_typed(drift, replace(wanted, rig=conditions(book.engine, run)))
+        moved = drift_as_typed(drift, replace(wanted, rig=given))
         settings = settings | {"drift": (moved.velocity, moved.u)}
-    return book.attach_track(run, content, Path(named.path).name, settings, by=by)
+        if Path(drift).is_file():
+            settings["drift_from"] = Path(drift).name
+    made = reduce_track(content, name, settings, given)
+    book.attach_track(run, content, name, settings, by=by, confirm=confirm, made=made)
+    return made

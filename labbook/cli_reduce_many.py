@@ -13,11 +13,12 @@ from typing import NamedTuple
 import numpy as np
 
 from labbook.cli_print import Bar
-from labbook.errors import LabbookError, Refusal
+from labbook.errors import LabbookError, Refusal, Unconfirmed
 from labbook.exchange.track_files import TrackFile, read_track
+from labbook.exchange.track_reducing import drift_of_track
 from labbook.exchange.track_words import velocity_of
 from labbook.physics import tracks
-from labbook.physics.track_drift import Drift, drift_of
+from labbook.physics.track_drift import Drift
 from labbook.physics.track_paths import FreePath, free_path
 from labbook.physics.tracks import Reduction
 
@@ -83,13 +84,9 @@ def drift_as_typed(text: str | None, wanted: Wanted) -> Drift | None:
         return None
     if not Path(text).is_file():
         return Drift(*velocity_of(text))
-    usual = {"scale": wanted.scale, "fps": wanted.fps}
-    rig = dict(wanted.rig or {}) | {key: given for key, given in usual.items() if given is not None}
-    columns = {
-        role: name for role, name in (wanted.columns or {}).items() if role in ("t", "frame", "x", "y")
-    }
+    given = {"columns": wanted.columns, "scale": wanted.scale, "fps": wanted.fps}
     try:
-        return drift_of(**read_track(text, columns=columns, rig=rig).positions())
+        return Drift(*drift_of_track(text, Path(text).name, given, wanted.rig or {}))
     except Refusal as refusal:
         raise _placed(f"drift {Path(text).name}", refusal) from None
 
@@ -134,6 +131,8 @@ def told(name: str, reduction: Reduction, said: tuple[str, ...]) -> Reduced:
 def refused(name: str, error: LabbookError) -> Reduced:
     """What was refused, with the track's name before it."""
     text = str(_placed(name, error)) if isinstance(error, Refusal) else f"{name}: {error}"
+    if isinstance(error, Unconfirmed):
+        text = f"{name}: {' '.join(error.warnings)} Nothing was attached; repeat with --confirm if this is right."
     return Reduced(name, None, None, (), text)
 
 

@@ -7,13 +7,14 @@ from dataclasses import fields
 import numpy as np
 import pandas as pd
 
+from labbook.book.reduced_cells import handy, handy_unit
 from labbook.cli_print import aligned
 from labbook.cli_reduce_many import Reduced
 from labbook.exchange.outward import frame_as_csv
 from labbook.physics.track_paths import FreePath
 from labbook.physics.tracks import Closure, Reduction, closure
 from labbook.registry.units import from_si
-from labbook.registry.written import written, written_in
+from labbook.registry.written import written
 
 KEYS = (
     "U", "u_U", "U_low", "U_high", "f_beat", "u_f_beat", "amplitude", "u_amplitude", "net_per_cycle",
@@ -33,7 +34,6 @@ PARTS = {  # of a row, and which of their figures a line of CSV has
     "closure": ("ratio", "bound", "detection_limit", "closes"),
     "free_path": ("D", "u_D", "v", "u_v", "tau", "u_tau", "Pe", "curvature", "u_curvature"),
 }
-LONGER_IN = {"U": ("mm/s", "um/s", 1e-4), "A_tip": ("mm", "um", 1e-4)}  # key: unit, unit below this SI value
 
 
 def row(done: Reduced) -> dict:
@@ -75,21 +75,21 @@ def as_csv(done: Iterable[Reduced]) -> str:
 def report(done: Reduced) -> str:
     """A short text that can be read at the bench."""
     r = done.reduction
-    lines = [("speed", f"{quantity('U', r.U, r.u_U)}   95 %: {_interval(r)}   {_axis(r)}")]
+    lines = [("speed", f"{handy('U', r.U, r.u_U)}   95 %: {_interval(r)}   {_axis(r)}")]
     if r.f_beat is None:
         lines.append(("beat", f"none seen; probability of no motion {_probability(r.p_zero)}"))
     else:
         f = written(r.f_beat, r.u_f_beat, "Hz") + ("" if r.u_f_beat else " as given")
-        net = quantity("A_tip", r.net_per_cycle, r.u_net_per_cycle)
+        net = handy("A_tip", r.net_per_cycle, r.u_net_per_cycle)
         lines += [
             ("beat", f"{f}, {r.cycles:.1f} cycles"),
-            ("amplitude", f"{quantity('A_tip', r.amplitude, r.u_amplitude)} along the axis, half the beat"),
+            ("amplitude", f"{handy('A_tip', r.amplitude, r.u_amplitude)} along the axis, half the beat"),
             ("net a cycle", f"{net}; probability of none {_probability(r.p_zero)}"),
         ]  # fmt: skip
     if r.A_tip is not None:
-        lines.append(("tail tip", f"{quantity('A_tip', r.A_tip, r.u_A_tip)} peak to peak"))
+        lines.append(("tail tip", f"{handy('A_tip', r.A_tip, r.u_A_tip)} peak to peak"))
     if any((*r.drift, *r.u_drift)):
-        both = (quantity("U", v, u) for v, u in zip(r.drift, r.u_drift, strict=True))
+        both = (handy("U", v, u) for v, u in zip(r.drift, r.u_drift, strict=True))
         lines.append(("drift", f"{', '.join(both)} taken off"))
     lines.append(("left out", left_out(r)))
     if r.steadiness is not None:
@@ -109,17 +109,12 @@ def many(done: Sequence[Reduced]) -> str:
     lines = [head]
     for one in done:
         r = one.reduction
-        beat = [written(r.f_beat, r.u_f_beat, "Hz"), quantity("A_tip", r.amplitude, r.u_amplitude),
-                quantity("A_tip", r.net_per_cycle, r.u_net_per_cycle)]  # fmt: skip
+        beat = [written(r.f_beat, r.u_f_beat, "Hz"), handy("A_tip", r.amplitude, r.u_amplitude),
+                handy("A_tip", r.net_per_cycle, r.u_net_per_cycle)]  # fmt: skip
         cycles = "" if r.cycles is None else f"{r.cycles:.1f}"
-        lines.append([one.name, quantity("U", r.U, r.u_U), _interval(r), *(b or "-" for b in beat),
+        lines.append([one.name, handy("U", r.U, r.u_U), _interval(r), *(b or "-" for b in beat),
                       _probability(r.p_zero), cycles or "-", left_out(r)])  # fmt: skip
     return aligned(lines, text_columns=1)
-
-
-def quantity(key: str, value: float | None, u: float | None) -> str:
-    """A speed in mm/s or um/s, a length in mm or um, whichever suits its size."""
-    return "" if value is None else written_in(key, value, u, _unit(key, value, u))
 
 
 def left_out(r: Reduction) -> str:
@@ -135,13 +130,8 @@ def left_out(r: Reduction) -> str:
     return ", ".join(said) or "nothing"
 
 
-def _unit(key, value, u):
-    large, small, below = LONGER_IN[key]
-    return small if max(abs(value), u or 0.0) < below else large
-
-
 def _interval(r):
-    unit = _unit("U", r.U, r.u_U)
+    unit = handy_unit("U", r.U, r.u_U)
     digits = max(0, 1 - math.floor(math.log10(from_si("U", r.u_U, unit)))) if r.u_U > 0.0 else 4
     low, high = (f"{from_si('U', value, unit) + 0.0:.{min(digits, 12)}f}" for value in (r.U_low, r.U_high))
     return f"{low} to {high} {unit}"
@@ -158,7 +148,7 @@ def _probability(p):
 
 
 def _steadiness(r):
-    steady, unit = r.steadiness, _unit("U", r.U, r.u_U)
+    steady, unit = r.steadiness, handy_unit("U", r.U, r.u_U)
     cycles = _cycles(r)
     span = ""
     if len(cycles):
@@ -177,7 +167,7 @@ def _free(path: FreePath):
         if path.v is None:
             said.append("diffusion explains it, no swimming seen")
     if path.v is not None:
-        said.append(f"swims at {quantity('U', path.v, path.u_v)}")
+        said.append(f"swims at {handy('U', path.v, path.u_v)}")
     if path.tau is not None:
         said.append(f"forgets its direction in {written(path.tau, path.u_tau, 's')}")
     if path.Pe is not None:

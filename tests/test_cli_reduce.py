@@ -393,7 +393,7 @@ def test_refused_in_one_sentence(track, tmp_path, words, said):
 
 
 @pytest.mark.parametrize("words", [
-    [], ["swim.csv", "--run", "R-1", "--by-name"], ["swim.csv", "--book", "b.db"], ["swim.csv", "swim.csv", "--run", "R-1"],
+    [], ["swim.csv", "--run", "R-1", "--by-name"], ["swim.csv", "--book", "b.db"], ["swim.csv", "--confirm"], ["swim.csv", "swim.csv", "--run", "R-1"],
     ["swim.csv", "--as", "xml"], ["swim.csv", "--jobs", "0"], ["swim.csv", "--still", "1"],
 ])  # fmt: skip
 def test_wrong_usage(track, words):
@@ -464,6 +464,47 @@ def test_a_drift_track_of_a_run_takes_the_rigs_scale(bench, frames, tmp_path):
     )
     found = figures(frames, "--run", "R-0001", "--book", bench, "--drift", drift)
     assert found["drift"] == pytest.approx([1e-4, -2e-4], rel=EXACT)
+
+
+def test_a_track_of_a_run_says_what_was_read_as_one_without_does(bench, tmp_path):
+    columns = swim(unit="px", by=0.004, time="frame", tip=True) | {"frame": np.arange(N)}
+    for role, at in (("x [px]", 130), ("x [px]", 131), ("tip_x [px]", 140)):
+        columns[role][at] = np.nan
+    kept = np.setdiff1d(np.arange(N), [200, 201, 202, 300])
+    path = write(tmp_path / "R-0001.csv", {k: v[kept] for k, v in columns.items()})
+    plain = run(path, "--scale", "4.0(1) um/px", "--fps", 50, "--f", "1 Hz").stdout.splitlines()
+    of_run = run(path, "--run", "R-0001", "--book", bench).stdout.splitlines()
+    assert of_run[:-1] == plain and of_run[-1].strip() == "file         kept with R-0001"
+    told = "\n".join(of_run)
+    assert "2 cells of x hold no number" in told and "1 cells of tip_x hold no number" in told
+    assert "6 lost frames in 3 gaps, 2 unreadable rows" in told and "496 frames read" in told
+    # many at once: what was left out stands in each line
+    assert "6 lost frames in 3 gaps, 2 unreadable rows" in run(path.parent, "--by-name", "--book", bench).stdout
+
+
+def test_a_drift_track_of_a_run_is_named_on_it(bench, frames, tmp_path):
+    write(tmp_path / "tracer.csv", swim(vx=0.1, vy=-0.2, beat=0.0))
+    run(frames, "--run", "R-0001", "--book", bench, "--drift", "tracer.csv")
+    settings = sheet(bench, "R-0001").track.settings
+    assert settings["drift_from"] == "tracer.csv" and settings["drift"][0] == pytest.approx([1e-4, -2e-4], rel=EXACT)
+    with Book.open(bench) as book:
+        assert book.check() == [], "the velocity is kept, so it reduces again without the tracer"
+
+
+def test_a_track_that_is_far_off_wants_a_confirmation(bench, tmp_path):
+    """As `log` and `amend` do: book/plausibility.py, five times outside this swimmer's runs."""
+    with Book.open(bench) as book:
+        for i in range(3):
+            book.record(swimmer="reed", fluid="oil", rig="coil", f="1.00(1) Hz", U="0.4 mm/s", T="22 degC", at=f"2026-03-05T10:0{i}")
+    columns = swim(vx=30.0, vy=40.0, unit="px", by=0.004, time="frame") | {"frame": np.arange(N)}
+    path = write(tmp_path / "fast.csv", columns)
+    done = run(path, "--run", "R-0001", "--book", bench, code=1)
+    assert done.stdout == "" and len(done.stderr.splitlines()) == 1
+    assert done.stderr.startswith("fast.csv: Re = ") and "U = 50 mm/s is 125 times the largest of this swimmer's runs" in done.stderr
+    assert done.stderr.endswith("Nothing was attached; repeat with --confirm if this is right.\n")
+    assert sheet(bench, "R-0001").track is None
+    assert "kept with R-0001" in run(path, "--run", "R-0001", "--book", bench, "--confirm").stdout
+    assert "confirmed" in sheet(bench, "R-0001").marks["U"]
 
 
 def test_the_book_may_be_left_out(bench, frames, monkeypatch):

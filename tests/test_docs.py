@@ -40,15 +40,13 @@ def commands(text: str) -> list[list[str]]:
 def rows(text: str, heading: str) -> list[list[str]]:
     """The cells of the table whose header row starts with `heading`."""
     table = text.split(f"\n| {heading} |", 1)[1].split("\n\n", 1)[0].splitlines()[2:]
-    return [[cell.strip() for cell in line.strip("| ").split(" | ")] for line in table]
+    return [[cell.strip() for cell in line.removeprefix("|").removesuffix("|").split(" | ")] for line in table]
 
 
 @pytest.fixture
 def bench(tmp_path, monkeypatch):
-    """An empty folder beside a copy of the demo's sheets, where README's commands may write."""
-    (tmp_path / "seeds_demo").mkdir()
-    for sheet in (ROOT / "seeds_demo").glob("*.csv"):
-        shutil.copy(sheet, tmp_path / "seeds_demo")
+    """An empty folder beside a copy of the demo's sheets and tracks, where README's commands may write."""
+    shutil.copytree(ROOT / "seeds_demo", tmp_path / "seeds_demo", ignore=shutil.ignore_patterns("*.py*", "*.png"))
     monkeypatch.chdir(tmp_path)
     monkeypatch.setenv("LABBOOK_BY", "wren")
     monkeypatch.delenv("LABBOOK_BOOK", raising=False)
@@ -71,6 +69,9 @@ def test_every_command_of_the_readme_runs_in_order_and_so_does_its_python(bench)
     assert said["log"].strip() == "R-0921", "the code that README goes on to amend"
     assert (bench / "fig.svg").read_text(encoding="utf-8").lstrip().startswith("<svg")
     assert said["check"].startswith("nothing stale")
+    # what README prints of the track is what the command says, but for lines that it leaves out
+    (printed,) = blocks(README, "text")
+    assert len(printed.splitlines()) == 5 and set(printed.splitlines()) <= set(said["reduce"].splitlines())
     names = {}
     exec("\n".join(blocks(README, "python")), names)  # noqa: S102 (README's own, on the book made above)
     assert names["runs"]["Sp"].between(1, 3).all() and len(names["runs"]) > 10

@@ -5,6 +5,7 @@ import streamlit as st
 from labbook.api import Book
 from labbook.app import bench_track, cautions, live, series, session, today
 from labbook.book.bench_queries import counts_of_book, kinds_chosen, summary_of
+from labbook.book.cautions import at_the_bench
 from labbook.book.queries import recent
 from labbook.book.records import DRIVES
 from labbook.registry.quantities import QUANTITIES
@@ -86,7 +87,7 @@ def _choices(book: Book) -> dict[str, str]:
             chosen[name] = st.selectbox(name.capitalize(), codes, key=key, placeholder="none") or ""
             _refusal(name)
     session.note(book.ask(summary_of, chosen["swimmer"], chosen["fluid"]))
-    cautions.fold(cautions.at_the_bench(*book.ask(kinds_chosen, chosen["fluid"], chosen["rig"])))
+    cautions.fold(at_the_bench(*book.ask(kinds_chosen, chosen["fluid"], chosen["rig"])))
     return chosen
 
 

@@ -7,12 +7,13 @@ import streamlit as st
 
 from labbook.api import Book
 from labbook.app import live, session, track_fields, track_shown
-from labbook.app.track_reduced import Dropped
+from labbook.app.track_reduced import Dropped, Reduced, accepted
 from labbook.book.shelf_pages import on_shelf
-from labbook.registry.typed import reduced
+from labbook.registry.typed import printed, read, reduced
 
 PLACE = "bench"
 ATTACH = "bench:attach"
+WAITS = "bench:attach-waits"  # the run that was logged last with a track, and the track
 ENTERS = ("U", "A_tip")  # f is what was set
 
 
@@ -22,7 +23,7 @@ class OnBench:
 
     dropped: Dropped | None = None
     cells: dict[str, str] = field(default_factory=dict)
-    charts: dict[str, dict] = field(default_factory=dict)
+    reduced: Reduced = field(default_factory=Reduced)
 
 
 def offer(cells: Mapping[str, str]) -> OnBench:
@@ -30,7 +31,7 @@ def offer(cells: Mapping[str, str]) -> OnBench:
     dropped = track_fields.file_dropped(PLACE, "or drop a track")
     if dropped is None:
         return OnBench()
-    session.forget(ATTACH)
+    session.forget(ATTACH)  # what waited from the trial before is answered by the next file
     with st.expander("columns, axis, trim, drift", expanded=bool(track_fields.refusals(PLACE))):
         found = track_fields.adjusted(PLACE, dropped, _given(cells), across=3)
     if found is None:
@@ -38,12 +39,12 @@ def offer(cells: Mapping[str, str]) -> OnBench:
     dropped, shown = found
     session.note(f"U {track_shown.speed(shown.result)} · {dropped.name}: replaces a typed U when the trial is logged; "
                  "both are kept.")  # fmt: skip
-    return OnBench(dropped, _cells(shown.result), shown.charts)
+    return OnBench(dropped, _cells(shown.result), shown)
 
 
 def chart(track: OnBench) -> None:
     """The position along the axis with its fit, small."""
-    track_shown.chart(track.charts, "along", PLACE)
+    track_shown.chart(track.reduced.charts, "along", PLACE)
 
 
 def _cells(result: Mapping) -> dict[str, str]:
@@ -61,7 +62,7 @@ def _given(cells: Mapping[str, str]) -> dict[str, str]:
     given = {key: known[key] for key in ("scale", "fps") if known.get(key)}
     typed = cells.get("f", "")
     if typed and live.refused_in("f", dict(cells)) is None:
-        given["f"] = typed
+        given["f"] = printed("f", read("f", typed))  # as the run will say it
     return given
 
 
@@ -74,19 +75,34 @@ def attach(book: Book, code: str, track: OnBench) -> str:
     """Attach the waiting file to the run that was logged; returns words for the message, kept where it was refused."""
     if track.dropped is None:
         return ""
-    one = track.dropped
-    done = session.attempt(
-        lambda: book.attach_track(code, one.content, one.name, one.settings, by=session.handle()), ATTACH
-    )
-    st.session_state["bench:attach-of"] = code
     track_fields.done_with(PLACE)
-    return f", U from {one.name}" if done else ""
+    return _attach(book, code, track, False)
+
+
+def _attach(book: Book, code: str, track: OnBench, confirm: bool) -> str:
+    one, st.session_state[WAITS] = track.dropped, (code, track)
+    done = session.attempt(
+        lambda: book.attach_track(code, one.content, one.name, one.settings, by=session.handle(), confirm=confirm,
+                                  made=track.reduced.made), ATTACH,
+    )  # fmt: skip
+    if not done:
+        return ""
+    accepted(one, track.reduced)
+    return f", U from {one.name}"
 
 
 def refused() -> None:
-    """What became of a track that was not attached: its run stays, and is a link."""
+    """What became of a track that was not attached: its run stays, and is a link; a warning waits for a touch."""
+    code, track = st.session_state.get(WAITS, ("", None))
+    doubts = session.warned(ATTACH)
+    if doubts:
+        session.warn([f"{code} is logged, and its track waits for one more touch.", *doubts])
+        if st.button("It is right, attach the track", type="primary", key="bench:attach-anyway"):
+            more = _attach(session.book(), code, track, True)
+            session.keep_message(f"{code} has its track{more}")
+            st.rerun()
     for sentence in session.refused(ATTACH).values():
-        code = st.session_state.get("bench:attach-of", "")
         session.say_refused(f"{code} is logged, but its track is not attached: {sentence}")
+    if session.refused(ATTACH):
         st.page_link(st.session_state["pages"]["runs"], label=f"{code}: drop it there", icon=":material/link:",
                      query_params={"run": code})  # fmt: skip

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 import streamlit as st
 
 from labbook.book.ledger_pages import Line
+from labbook.book.reduced_cells import in_short
 
 WIDTHS = [16, 24, 42, 18]
 HEADS = ("when, who", "what was done", "before → after, and why", "runs")
@@ -54,7 +55,8 @@ def _changes(line: Line) -> str:
 
 
 def _change(change: tuple[str, str, str]) -> str:
-    column, before, after = (html.escape(c) for c in change)
+    column = html.escape(change[0])
+    before, after = (html.escape(in_short(change[0], text)) for text in change[1:])
     before = f"<del>{before}</del> → " if before else ""
     if len(after) > LONGEST:
         after = f"<details><summary>{after[:60]} …</summary>{after}</details>"

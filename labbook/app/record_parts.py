@@ -10,6 +10,7 @@ from labbook.app.record_budget import CHECK, budgets_of, part_in_words
 from labbook.app.record_track import replaced
 from labbook.book import queries
 from labbook.book.curves import viscosity_frames
+from labbook.book.reduced_cells import in_short
 from labbook.book.run_sheet import RunSheet, moment_in_words
 from labbook.charts.axes import written_formula
 from labbook.charts.drawings import swimmer_drawing
@@ -194,7 +195,7 @@ def _named(row: Number) -> str:
 def essentials(sheet: RunSheet) -> None:
     """A few facts and numbers for a narrow panel."""
     typed = [
-        (symbol(k), fact(sheet, k) + (", reduced" if sheet.typed[k][4] == REDUCED else ""))
+        (symbol(k) + (", reduced" if sheet.typed[k][4] == REDUCED else ""), fact(sheet, k))
         for k in ("f", "theta0", "B", "T", "U", "A_tip")
         if k in sheet.typed
     ]
@@ -229,4 +230,5 @@ def changes(line: dict) -> str:
         return ", ".join(
             f"{k} {v}" for k, v in after.items() if v and k in ("swimmer", "fluid", "f", "U", "T")
         )
-    return "; ".join(f"{k}: {before.get(k) or '–'} → {after.get(k) or '–'}" for k in {**before, **after})
+    sides = ((k, *(in_short(k, side[k]) if side.get(k) else "–" for side in (before, after))) for k in {**before, **after})
+    return "; ".join(f"{k}: {was} → {now}" for k, was, now in sides)

@@ -5,9 +5,9 @@ from collections.abc import Mapping
 import streamlit as st
 
 from labbook.app import session, track_fields, track_shown
-from labbook.app.track_reduced import Dropped, of_kept
+from labbook.app.track_reduced import Dropped, Reduced, accepted, of_kept
 from labbook.book.attaching import conditions
-from labbook.book.reduced_cells import REDUCIBLE
+from labbook.book.reduced_cells import DIGEST_SHOWN, REDUCIBLE, handy
 from labbook.book.run_sheet import RunSheet, moment_in_words
 from labbook.book.track_pages import TrackSheet, file_content
 from labbook.registry.typed import Typed, printed
@@ -26,7 +26,7 @@ def show(sheet: RunSheet, place: str) -> None:
         return
     st.markdown("**Track**")
     when = f"{moment_in_words(track.at)} by {track.by}"
-    session.note(f"{track.code} · {track.file} · SHA-256 {track.digest[:12]} · {when} · {settings_in_words(track)}")
+    session.note(f"{track.code} · {track.file} · SHA-256 {track.digest[:DIGEST_SHOWN]} · {when} · {settings_in_words(track)}")
     session.warn([f"{sentence[:1].upper()}{sentence[1:]}." for sentence in track.stale])
     left, right = st.columns([38, 62], gap="medium")
     with left:
@@ -57,16 +57,20 @@ def settings_in_words(track: TrackSheet) -> str:
             said.append(f"{name} {told[key]}" + (f" of the {taken[key]}" if key in taken else ""))
     said += [f"{key} {told.get(key) or 'auto'}" for key in ("axis", "trim")]
     if told.get("drift"):
-        said.append(f"drift {_drift(told['drift'])}")
+        said.append(f"drift {_drift(told['drift'])}" + (f" from {told['drift_from']}" if told.get("drift_from") else ""))
     if told.get("still"):
-        said.append("drift from {:g} to {:g} s".format(*told["still"]))
+        said.append(f"drift from the still stretch {_stretch(told['still'])}")
     return ", ".join(said)
 
 
 def _drift(told) -> str:
     if isinstance(told, str):
         return told
-    return ", ".join(track_shown.quantity("U", v, u) for v, u in zip(*told, strict=True))
+    return track_shown.velocity(told)
+
+
+def _stretch(told) -> str:
+    return told if isinstance(told, str) else "{:g} to {:g} s".format(*told)
 
 
 def _size(size: int) -> str:
@@ -101,7 +105,7 @@ def drop(sheet: RunSheet, place: str) -> str | None:
         sentence = track_shown.reversibility(reduced.result)
         if sentence:
             session.note(sentence)
-        done = _accept(sheet, place, dropped, reduced.result)
+        done = _accept(sheet, place, dropped, reduced)
     with right:
         track_shown.charts(reduced.charts, track_fields.version(place))
         track_shown.explained(reduced.result)
@@ -113,9 +117,9 @@ def _given(state: str, code: str) -> dict[str, str]:
     return conditions(session.book().engine, code)
 
 
-def _accept(sheet: RunSheet, place: str, dropped: Dropped, result: Mapping) -> str | None:
-    """Which of U, A_tip and f enter the run, and the touch that does it."""
-    at, code = track_fields.version(place), sheet.texts["code"]
+def _accept(sheet: RunSheet, place: str, dropped: Dropped, reduced: Reduced) -> str | None:
+    """Which of U, A_tip and f enter the run, and the touch that does it: two where something is far off."""
+    at, code, result = track_fields.version(place), sheet.texts["code"], reduced.result
     chosen = []
     for key, names in REDUCIBLE.items():
         there = all(result[name] for name in names) if key != "U" else bool(result["u_U"])
@@ -124,16 +128,23 @@ def _accept(sheet: RunSheet, place: str, dropped: Dropped, result: Mapping) -> s
     why = ""
     if sheet.track is not None:
         why = st.text_input("Why, for the ledger", key=f"{at}:why", placeholder=f"takes the place of {sheet.track.file}")
-    act = f"{place}:attach"
-    if st.button("Accept", type="primary", key=f"{at}:accept"):
-        done = session.attempt(
+    act, of = f"{place}:attach", (dropped.digest, str(dropped.settings), chosen)
+    if st.session_state.get(f"{act}:of") != of:  # what was said of another track or choice
+        session.forget(act)
+    waiting = session.warned(act)
+    session.warn(waiting)
+    if st.button("It is right, accept" if waiting else "Accept", type="primary", key=f"{at}:accept"):
+        st.session_state[f"{act}:of"] = of
+        if not session.attempt(
             lambda: session.book().attach_track(
-                code, dropped.content, dropped.name, dropped.settings, chosen, by=session.handle(), why=why or None
+                code, dropped.content, dropped.name, dropped.settings, chosen, by=session.handle(), why=why or None,
+                confirm=bool(waiting), made=reduced.made,
             ), act,
-        )  # fmt: skip
-        if done:
-            return f"{code}: {', '.join(chosen)} now {'come' if len(chosen) > 1 else 'comes'} from {dropped.name}; " \
-                   "what was typed is kept beside."  # fmt: skip
+        ):  # fmt: skip
+            st.rerun()
+        accepted(dropped, reduced)
+        return f"{code}: {', '.join(chosen)} now {'come' if len(chosen) > 1 else 'comes'} from {dropped.name}; " \
+               "what was typed is kept beside."  # fmt: skip
     for sentence in session.refused(act).values():
         session.say_refused(sentence)
     return None
@@ -145,14 +156,8 @@ def _offer(sheet: RunSheet, key: str, result: Mapping, there: bool) -> str:
     if not there:
         why = "as given, not from the track" if key == "f" and value is not None else "not in this track"
         return f"{SYMBOLS[key]}: {why}"
-    text = f"{value_in_words(key, value, u)}"
-    typed = typed_text(sheet, key)
+    text, typed = handy(key, value, u), typed_text(sheet, key)
     return f"{SYMBOLS[key]} {text}" + (f" (typed {typed})" if typed else " (nothing was typed)")
-
-
-def value_in_words(key: str, value: float, u: float) -> str:
-    """A reduced value in the unit that suits its size."""
-    return track_shown.quantity(key, value, u) if key in track_shown.FINER else track_shown.written(value, u, "Hz")
 
 
 def typed_text(sheet: RunSheet, key: str) -> str:

@@ -1,6 +1,5 @@
 """The table of runs: as typed on the left, numbers on the right, sorted by value however it is written."""
 
-import math
 from functools import partial
 
 import pandas as pd
@@ -9,16 +8,17 @@ from pandas.io.formats.style import Styler
 
 from labbook.app import dialect_choices, session
 from labbook.app.column_width import wide_enough
-from labbook.app.record_parts import as_typed
+from labbook.app.runs_cells import numeric, reduced_runs
 from labbook.book import queries
 from labbook.book.asking import Question
+from labbook.book.reduced_cells import REDUCIBLE
+from labbook.book.track_pages import units_before
 from labbook.charts.dialect_axis import HOUSE_ONLY, dialect_label
 from labbook.charts.palette import paper
 from labbook.registry.dialects import CHOICES
 from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES, RUN_KEYS
 from labbook.registry.regimes import regimes_of
-from labbook.registry.written import SHOWN, shown, written
 
 TEXTS = ("at", "by", "swimmer", "fluid", "material", "rig", "drive", "series", "video", "note")
 USUAL = ("at", "by", "swimmer", "fluid", "f", "theta0", "T", "U", "Sp", "Re_omega", "U_scaled", "St",
@@ -139,13 +139,14 @@ def _cells(
     keys = keys_of(columns, _registry)
     spoken = {n: c for n, c in dialects.items() if n in columns}
     found = book.frame(_asked, keys=keys, texts=texts, newest=newest, dialects=spoken)
+    before = book.ask(units_before, reduced_runs(found)) if set(columns) & set(REDUCIBLE) else {}
     frame = pd.DataFrame({"code": found["code"]})
     config: dict = {"code": st.column_config.TextColumn("run", pinned=True)}
     written_cells: dict[str, dict] = {}
     for column in columns:
         if column in keys:
             label = _heading(column, spoken, _registry)
-            label, frame[column], written_cells[column] = _numeric(found, column, label)
+            label, frame[column], written_cells[column] = numeric(found, column, label, before)
             width = wide_enough(label, written_cells[column].values())
             help_ = _label(column, _registry)
             if column in spoken:
@@ -200,43 +201,3 @@ def _text(found: pd.DataFrame, column: str) -> list[str]:
     if column == "at":
         return [t.strftime("%Y-%m-%d %H:%M") for t in found["at"]]
     return ["" if pd.isna(v) else str(v) for v in found[column]]
-
-
-def _numeric(found: pd.DataFrame, key: str, label: str) -> tuple[str, list[float], dict[float, str]]:
-    """(header, SI values, value -> text) of a column; the header has the unit where the column has one.
-
-    Two equal values that are written differently are told apart by the last bit, which no sorting sees.
-    """
-    values, texts = found[key].tolist(), []
-    units = _units(found, key)
-    unit = next(iter(units)) if len(units) == 1 else ""
-    for value, u, typed in zip(values, found[f"u_{key}"], found["typed"], strict=True):
-        if math.isnan(value):
-            texts.append("")
-        elif key in RUN_KEYS and key in typed:
-            texts.append(as_typed(typed[key]).removesuffix(f" {unit}") if unit else as_typed(typed[key]))
-        elif key in QUANTITIES:
-            texts.append(shown(key, value, u).removesuffix(f" {unit}"))
-        else:
-            texts.append(written(value, u))
-    known: dict[float, str] = {}
-    for i, text in enumerate(texts):
-        while known.get(values[i], text) != text:
-            values[i] = math.nextafter(values[i], math.inf)
-        if text:
-            known[values[i]] = text
-    return f"{label} ({unit})" if unit else label, values, known
-
-
-def _units(found: pd.DataFrame, key: str) -> set[str]:
-    """The units that a column is written in."""
-    if key not in QUANTITIES:
-        return set()
-    usual = SHOWN.get(key, QUANTITIES[key].unit)
-    if key not in RUN_KEYS:
-        return {usual} - {"1"}
-    return {
-        typed[key][1] if key in typed else usual
-        for typed, value in zip(found["typed"], found[key], strict=True)
-        if not math.isnan(value)
-    } - {"1"}

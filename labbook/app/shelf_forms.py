@@ -7,6 +7,7 @@ import streamlit as st
 
 from labbook.app import cautions, session
 from labbook.app.shelf_fields import AT_RUN, CHOOSES, COLUMNS, EXAMPLES, LABELS, ONLY_WITH, READ_OF
+from labbook.book.cautions import ADDED
 from labbook.book.ledger_pages import newest_line
 from labbook.book.records import KINDS
 from labbook.book.shelf_pages import OnShelf, every_code, offered
@@ -31,7 +32,7 @@ def add_record(kind: str) -> None:
     with left:
         _form(kind, f"add:{kind}", save, "Add to the shelf", {}, across=3)
     with right:
-        cautions.show(cautions.ADDED[kind])
+        cautions.show(ADDED[kind])
 
 
 def amend_record(item: OnShelf) -> None:

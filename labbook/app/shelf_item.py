@@ -4,6 +4,7 @@ import streamlit as st
 
 from labbook.app import cautions, ledger_rows, session, shelf_fields, shelf_forms, shelf_stiffness
 from labbook.book.bench_queries import age
+from labbook.book.cautions import of_record
 from labbook.book.curves import viscosity_frames
 from labbook.book.records import KINDS
 from labbook.book.shelf_pages import OnShelf, item_lines, modulus_frame, of_material
@@ -106,7 +107,7 @@ def page(item: OnShelf) -> None:
     with right:
         if item.kind in ("fluid", "material"):
             _facts(item)
-        cautions.fold(cautions.of_record(item.kind, item.cells))
+        cautions.fold(of_record(item.kind, item.cells))
         _acts(item)
     lines = session.book().ask(item_lines, item.kind, item.code)
     st.html(HEADING.format("Ledger"))

@@ -26,6 +26,9 @@ h3 { font-size: 1.0rem !important; padding: 0.1rem 0 !important; }
 .st-key-lb-message p { font-size: 0.86rem; line-height: 1.2; }
 .stPageLink a { min-height: 40px; }
 [class*="st-key-lb-dropzone"] [data-testid="stFileUploaderDropzoneInstructions"] { display: none; } /* the label says it */
+/* what the browser holds back is said without hovering */
+[class*="st-key-lb-dropzone"]:has([data-testid="stFileChip"][aria-invalid="true"])::after { font-size: 0.86rem;
+  color: light-dark(#B5452C, #E58468); content: "This file is not read: a page takes at most 64 MB, the command line 256 MB (labbook reduce FILE --run CODE)."; }
 .st-key-lb-last a p { text-decoration: underline; color: light-dark(#0B6E75, #4FB3B8); }
 .lb-warned { border: 1px solid #E69F00; border-radius: 0.4rem; background: rgba(230,159,0,0.12); font-size: 0.88rem;
   line-height: 1.35; padding: 0.35rem 0.7rem; }

@@ -6,7 +6,8 @@ from dataclasses import replace
 import streamlit as st
 
 from labbook.app import session
-from labbook.app.track_reduced import Dropped, Reduced, digest_of, header, of_dropped
+from labbook.app.track_reduced import Dropped, Reduced, digest_of, drift_of_dropped, header, of_dropped
+from labbook.app.track_shown import velocity
 from labbook.book.track_settings import FIT
 from labbook.errors import Refusal
 from labbook.exchange.track_columns import ROLES
@@ -15,16 +16,20 @@ from labbook.exchange.track_header import known_by_name, needs
 LARGEST_MB = 64  # what a page reads
 MOST_MB = 256  # what it lets in, to say so: beyond it Streamlit refuses, in a word that wants hovering
 NEEDED = ("t", "frame", "x", "y")
-FIELDS = ("scale", "fps", "f", "axis", "trim", "drift")
+FIELDS = ("scale", "fps", "f", "axis", "trim")
+OF_DRIFT = ("drift", "still")
 LABELS = {
-    "scale": "scale, from the rig", "fps": "frame rate, from the rig", "f": "beat, or fit", "trim": "trim, cycles",
-    "axis": "axis, ° from x to y", "drift": "drift to take off",
+    "scale": "scale, from the rig", "fps": "fps, from the rig", "f": "beat, or fit", "trim": "trim, cycles",
+    "axis": "axis, ° from x to y", "drift": "drift to take off", "still": "or still from, to",
 }  # fmt: skip
 EXAMPLES = {
     "scale": "3.2(1) um/px", "fps": "30 fps", "f": "fit", "axis": "auto", "trim": "auto", "drift": "none",
+    "still": "none",
 }  # fmt: skip
 SAID = ("Left as they stand, the camera is the rig's and f is what was set. Beat: 'fit' takes it from the track. Axis: "
-        "degrees towards the head. Trim: leading cycles to drop. Drift: of the whole picture, e.g. 0.1(1),-0.2(1) um/s.")  # fmt: skip
+        "degrees towards the head. Trim: leading cycles to drop. Drift, of the whole picture: a velocity, 0.1(1),-0.2(1) um/s; "
+        "or seconds at either end in which the swimmer stood still, 0 to 4 s; or the track of a tracer or the empty tank.")  # fmt: skip
+DRIFT_TRACK = "or the drift's own track"
 UNITS = "Type a column with its unit where the header says none, e.g. time [ms]."
 
 
@@ -38,20 +43,20 @@ def done_with(place: str) -> None:
     st.session_state[f"{place}:track-version"] = st.session_state.get(f"{place}:track-version", 0) + 1
 
 
-def file_dropped(place: str, label: str) -> Dropped | None:
+def file_dropped(place: str, label: str, name: str = "file") -> Dropped | None:
     """The file in the drop zone, without settings; None where there is none or it is too large for a page."""
     at = version(place)
-    with st.container(key=f"lb-dropzone-{place}".replace(":", "-")):
-        file = st.file_uploader(f"{label}, up to {LARGEST_MB} MB", key=f"{at}:file", max_upload_size=MOST_MB)
+    with st.container(key=f"lb-dropzone-{place}-{name}".replace(":", "-")):
+        file = st.file_uploader(f"{label}, up to {LARGEST_MB} MB", key=f"{at}:{name}", max_upload_size=MOST_MB)
     if file is None:
         return None
     if file.size > LARGEST_MB * 2**20:
         session.say_refused(too_large(file.name, file.size))
         return None
-    known = st.session_state.get(f"{at}:digest")
+    known = st.session_state.get(f"{at}:{name}:digest")
     if known is None or known[0] != file.file_id:
         with st.spinner(f"Reading {file.name} …"):
-            known = st.session_state[f"{at}:digest"] = (file.file_id, digest_of(file.getvalue()))
+            known = st.session_state[f"{at}:{name}:digest"] = (file.file_id, digest_of(file.getvalue()))
     return Dropped(file.name, file.getvalue(), known[1], {})
 
 
@@ -72,8 +77,9 @@ def adjusted(
     # the fields come first on the page, and what they are refused for is known after them: it is kept a run long
     said, reduced = refusals(place), Reduced(refused=("file", lacking or ""))
     if not lacking:
-        dropped = replace(dropped, settings=_settings(place, cells, asked, given, said, across))
-        reduced = of_dropped(dropped, given)
+        settings, refused = _settings(place, cells, asked, given, said, across)
+        dropped = replace(dropped, settings=settings)
+        reduced = Reduced(refused=("drift_track", refused)) if refused else of_dropped(dropped, given)
     now = {_place_of(reduced.refused[0]): reduced.refused[1]} if reduced.refused else {}
     if now != said:
         st.session_state[f"{version(place)}:said"] = now
@@ -128,32 +134,59 @@ def _sentence(cells: Sequence[str], asked: Mapping[str, str]) -> str | None:
 def _settings(
     place: str, cells: Sequence[str], asked: Mapping[str, str], given: Mapping[str, str], refused: Mapping[str, str],
     across: int,
-) -> dict:  # fmt: skip
-    """The settings as the fields have them, each refused at its place; what stands as given is left to the rig or run.
+) -> tuple[dict, str]:  # fmt: skip
+    """(settings as the fields have them, sentence that refuses the drift's track or ''); each field refused at its place.
 
-    given: texts of f, scale, fps as far as run and rig say them; refused: field -> sentence; across: fields a row.
+    What stands as given is left to the rig or run. given: texts of f, scale, fps as far as run and rig say them;
+    refused: field -> sentence; across: fields a row.
     """
     wanted = needs(cells, asked)
     fields = [f for f in FIELDS if f not in ("scale", "fps") or getattr(wanted, f)]
     told: dict = {"columns": dict(asked)} if asked else {}
     for start in range(0, len(fields), across):
-        row = fields[start : start + across]
-        for column, field in zip(st.columns(across), row, strict=False):
-            with column:
-                text = _field(place, field, given)
-                if field in refused:
-                    session.say_refused(refused[field])
-            if text and text != given.get(field):
-                told[field] = text
-            elif field == "f" and not text:
-                told["f"] = FIT
+        _row(place, fields[start : start + across], st.columns(across), given, refused, told)
+    drift, still, *beside = st.columns([1, 1, 2] if across > 3 else 2)
+    _row(place, OF_DRIFT, (drift, still), given, refused, told)
+    told = {k: v for k, v in told.items() if v not in ("auto", "none")}
+    with beside[0] if beside else st.container():
+        said = _drift_track(place, told, given)
     session.note(SAID)
-    return {k: v for k, v in told.items() if v not in ("auto", "none")}
+    return told, said
+
+
+def _row(place, fields, columns, given, refused, told) -> None:
+    for column, field in zip(columns, fields, strict=False):
+        with column:
+            text = _field(place, field, given)
+            if field in refused:
+                session.say_refused(refused[field])
+        if text and text != given.get(field):
+            told[field] = text
+        elif field == "f" and not text:
+            told["f"] = FIT
+
+
+def _drift_track(place: str, told: dict, given: Mapping[str, str]) -> str:
+    """The drop zone of a drift track, whose velocity enters the settings; returns the sentence that refuses it, or ''."""
+    dropped = file_dropped(place, DRIFT_TRACK, "drift-track")
+    if dropped is None:
+        return ""
+    typed = [LABELS[key] for key in OF_DRIFT if key in told]
+    if typed:
+        found = f"{dropped.name}: the drift stands in '{typed[0]}' too; give one of them."
+    else:
+        found = drift_of_dropped(dropped, told, given)
+    if isinstance(found, str):
+        session.say_refused(found)
+        return found
+    told |= {"drift": found, "drift_from": dropped.name}
+    session.note(f"Drift {velocity(found)} from {dropped.name}")
+    return ""
 
 
 def _field(place: str, field: str, given: Mapping[str, str]) -> str:
     key = f"{version(place)}:{field}"
-    usual = given.get(field, "") if field in ("scale", "fps", "f") else {"drift": "none"}.get(field, "auto")
+    usual = given.get(field, "") if field in ("scale", "fps", "f") else "none" if field in OF_DRIFT else "auto"
     if st.session_state.get(f"{key}:usual") != usual:  # the rig or the frequency was changed: its value comes in
         st.session_state[f"{key}:usual"] = st.session_state[key] = usual
     elif key not in st.session_state:  # the field was away for a while
@@ -165,4 +198,5 @@ def _field(place: str, field: str, given: Mapping[str, str]) -> str:
 
 def _place_of(field: str) -> str:
     """Where a refusal of the reduction stands: a field of this form, else the file with its columns."""
-    return {"scale_u": "scale"}.get(field, field) if field in (*FIELDS, "scale_u") else "file"
+    places = (*FIELDS, *OF_DRIFT, "drift_track")
+    return "scale" if field == "scale_u" else field if field in places else "file"

@@ -8,31 +8,20 @@ import streamlit as st
 
 from labbook.app import session
 from labbook.app.record_budget import interval_in_words
+from labbook.book.reduced_cells import handy, handy_unit
 from labbook.errors import Refusal
 from labbook.physics.tracks import closure
 from labbook.registry.units import from_si
-from labbook.registry.written import written, written_in
-
-FINER = {"U": ("mm/s", "um/s", 1e-4), "A_tip": ("mm", "um", 1e-4)}  # key: unit, unit below this SI value
-
-
-def quantity(key: str, value: float | None, u: float | None) -> str:
-    """A speed or length in the unit that suits its size; empty where absent."""
-    return "" if value is None else written_in(key, value, u, _unit(key, value, u))
-
-
-def _unit(key, value, u):
-    large, small, below = FINER[key]
-    return small if max(abs(value), u or 0.0) < below else large
+from labbook.registry.written import written
 
 
 def speed(result: Mapping) -> str:
     """'0.0512(4) mm/s, 95 %: 0.0504 to 0.0520 mm/s'."""
     U, u = result["U"], result["u_U"]
-    unit = _unit("U", U, u)
+    unit = handy_unit("U", U, u)
     low, high, spread = (float(from_si("U", one, unit)) for one in (result["U_low"], result["U_high"], u))
     interval = interval_in_words(low, high, spread) if spread > 0 else f"{low:.4g} to {high:.4g}"
-    return f"{quantity('U', U, u)}, 95 %: {interval} {unit}"
+    return f"{handy('U', U, u)}, 95 %: {interval} {unit}"
 
 
 def figures(result: Mapping) -> list[tuple[str, str]]:
@@ -42,20 +31,24 @@ def figures(result: Mapping) -> list[tuple[str, str]]:
         given = "" if result["u_f_beat"] else ", as given"
         rows += [
             ("beat", f"{written(result['f_beat'], result['u_f_beat'], 'Hz')}{given}"),
-            ("amplitude along the axis", quantity("A_tip", result["amplitude"], result["u_amplitude"])),
-            ("net motion a cycle", quantity("A_tip", result["net_per_cycle"], result["u_net_per_cycle"])),
+            ("amplitude along the axis", handy("A_tip", result["amplitude"], result["u_amplitude"])),
+            ("net motion a cycle", handy("A_tip", result["net_per_cycle"], result["u_net_per_cycle"])),
         ]  # fmt: skip
     rows.append(("probability of no net motion", probability(result["p_zero"])))
     if result["A_tip"] is not None:
-        rows.append(("A_tip, peak to peak", quantity("A_tip", result["A_tip"], result["u_A_tip"])))
+        rows.append(("A_tip, peak to peak", handy("A_tip", result["A_tip"], result["u_A_tip"])))
     cycles = "" if result["cycles"] is None else f"{result['cycles']:.1f} cycles, "
     rows.append(("used", f"{cycles}{_spaced(result['frames'])} frames"))
     rows.append(("left out", left_out(result)))
     rows.append(("axis", axis(result)))
     if any((*result["drift"], *result["u_drift"])):
-        both = (quantity("U", v, u) for v, u in zip(result["drift"], result["u_drift"], strict=True))
-        rows.append(("drift taken off", ", ".join(both)))
+        rows.append(("drift taken off", velocity((result["drift"], result["u_drift"]))))
     return rows
+
+
+def velocity(drift: tuple) -> str:
+    """'1.60(12) um/s, -0.90(12) um/s' of ((vx, vy), (ux, uy)) in m/s."""
+    return ", ".join(handy("U", v, u) for v, u in zip(*drift, strict=True))
 
 
 def left_out(result: Mapping) -> str:

@@ -10,13 +10,24 @@ import numpy as np
 from sqlalchemy import Connection, Engine, func, insert, select, update
 
 from labbook.book import chain
+from labbook.book.arrivals import Findings
 from labbook.book.clock import now
-from labbook.book.ledger import handle, reason, run_row
+from labbook.book.ledger import handle, reason, run_row, settle
 from labbook.book.opening import reading, writing
-from labbook.book.reduced_cells import REDUCIBLE, entries, let_go, track_in_use, typed_before
+from labbook.book.reduced_cells import (
+    REDUCIBLE,
+    entries,
+    handy,
+    let_go,
+    reduced_keys,
+    track_in_use,
+    typed_before,
+)
 from labbook.book.run_rows import derive_again
+from labbook.book.shelf import Typed as Document
 from labbook.book.shelf import document
 from labbook.book.tables import kept_file, rig, run, track
+from labbook.book.track_doubts import doubts
 from labbook.errors import Refusal
 from labbook.physics.tracks import Reduction
 from labbook.registry.typed import Typed, printed, read
@@ -50,14 +61,14 @@ def _kept_run(connection: Connection, code: str):
 
 def attach(
     engine: Engine, code: str, content: bytes, name: str, reduction: Reduction, settings: Mapping,
-    accept: Iterable[str], by: str, why: str | None = None,
+    accept: Iterable[str], by: str, why: str | None = None, *, confirm: bool = False,
 ) -> str:  # fmt: skip
     """Attach a reduced track to a run and return its code; the values it replaces stay with it and in the ledger.
 
-    settings: as track_settings.completed gives them, scale with its unit where the file needed one; accept: which
+    settings: those it was made with, complete, scale with its unit where the file needed one; accept: which
     of U, A_tip and f enter the run, as far as the track has them (a given f is none of the track's). A track that
     was in use is replaced, and what only it had brought goes. The same track once more changes nothing.
-    Errors: Refusal; nothing is attached then.
+    Errors: Refusal, Unconfirmed (warnings as of a typed value, that confirm=True would pass); nothing is attached then.
     """
     by, why = handle(by), reason(why) if why is not None else None
     name, digest = _name(name), hashlib.sha256(fitting(content)).hexdigest()
@@ -74,18 +85,21 @@ def attach(
         settings = json.loads(json.dumps({**settings, "file": name}))
         if earlier and earlier["file_id"] == file_id and typed == old:
             return earlier["code"]
+        before, after = _texts(old), _texts(typed)
+        touched = [k for k in {**before, **after} if before.get(k) != after.get(k)]
+        warned = doubts(connection, row, typed, touched)
+        settle(Findings(warned=warned), confirm)
         let_go(connection, row["id"], why)
         serial = (connection.scalar(select(func.max(track.c.id))) or 0) + 1
         told = {"id": serial, "code": f"T-{serial:04d}", "run_id": row["id"], "file_id": file_id, "at": now(), "by": by}
         more = {"settings": settings, "result": result, "replaced": replaced, "state": "in use"}
         connection.execute(insert(track).values(**told, **more))
-        before, after = _texts(old), _texts(typed)
-        touched = [k for k in {**before, **after} if before.get(k) != after.get(k)]
-        values = {"typed": typed, "confirmed": _confirmed(row["confirmed"], touched)}
+        values = {"typed": typed, "confirmed": _confirmed(row["confirmed"], touched, warned)}
         connection.execute(update(run).where(run.c.id == row["id"]).values(**values))
         changed = derive_again(connection, run.c.id == row["id"])
         of_track = {"track": told["code"], "file": name, "digest": digest}
         of_earlier = {"track": earlier["code"]} if earlier else {}
+        before, after = _told(before, old, document(earlier["result"]) if earlier else {}), _told(after, typed, result)
         chain.append(
             connection, by, "reduce", "run", code, before={k: before.get(k) for k in touched} | of_earlier,
             after={k: after.get(k) for k in touched} | of_track, why=why, runs=changed or [(row["id"], code)],
@@ -160,7 +174,13 @@ def _texts(typed) -> dict[str, str]:
     return {key: printed("T" if key == "T_end" else key, Typed(*entry)) for key, entry in typed.items()}
 
 
-def _confirmed(stored: str | None, touched) -> str | None:
-    """The confirmations of a run but for those of cells that were touched."""
-    kept = [one for one in json.loads(stored or "[]") if one[0] not in touched]
+def _told(texts: dict[str, str], typed: Document, result: Mapping) -> dict[str, str]:
+    """The texts for the ledger: what comes from a track with its whole uncertainty, as a page writes it."""
+    from_track = {k: handy(k, *(result[name] for name in REDUCIBLE[k])) for k in reduced_keys(typed) if result}
+    return texts | from_track
+
+
+def _confirmed(stored: str | None, touched, warned) -> str | None:
+    """The confirmations of a run but for those of cells that were touched, and the new ones."""
+    kept = [one for one in json.loads(stored or "[]") if one[0] not in touched] + warned
     return json.dumps(kept, ensure_ascii=False) if kept else None

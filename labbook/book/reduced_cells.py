@@ -8,10 +8,15 @@ from sqlalchemy import Connection, select, update
 from labbook.book.shelf import Typed as Document
 from labbook.book.shelf import document
 from labbook.book.tables import track
-from labbook.registry.typed import REDUCED, Typed, reduced
+from labbook.errors import Refusal
+from labbook.registry.quantities import QUANTITIES
+from labbook.registry.typed import REDUCED, Typed, read, reduced
+from labbook.registry.written import written_in
 
 LENGTHS = ("U", "A_tip")  # whose uncertainty has a part from the camera's scale
 REDUCIBLE = {"U": ("U", "u_U"), "A_tip": ("A_tip", "u_A_tip"), "f": ("f_beat", "u_f_beat")}  # key -> in a result
+FINER = {"U": ("mm/s", "um/s", 1e-4), "A_tip": ("mm", "um", 1e-4)}  # key -> unit, unit below this SI value
+DIGEST_SHOWN = 12  # characters of a file's digest, for people
 _LEAST_OWN = 1e-6  # of u: less is what rounding leaves of a difference of squares
 
 
@@ -31,6 +36,38 @@ def entries(result: Mapping, accepted: Iterable[str], scale: Typed | None) -> Do
     if scale is not None and found.keys() & set(LENGTHS):
         found["scale"] = list(scale._replace(origin=REDUCED))
     return found
+
+
+def in_short(key: str, text: str) -> str:
+    """A ledger's text for people: a track's value in a handy unit, the first letters of a file's digest.
+
+    What somebody typed comes back as it is. The text that the book keeps of a track's value has the run's own part of
+    u alone, so it is left out.
+    """
+    if key == "digest":
+        return text[:DIGEST_SHOWN]
+    if key not in REDUCIBLE:
+        return text
+    try:
+        found = read(key, text)
+        is_reduced = reduced(key, found.value, found.u).text == text
+    except Refusal:
+        return text
+    unit = handy_unit(key, found.value, found.u)
+    return written_in(key, found.value, None, unit) if is_reduced else text
+
+
+def handy_unit(key: str, value: float, u: float | None) -> str:
+    """The unit that suits the size of a track's speed, length or frequency (key U, A_tip or f)."""
+    if key not in FINER:
+        return QUANTITIES[key].unit
+    large, small, below = FINER[key]
+    return small if max(abs(value), u or 0.0) < below else large
+
+
+def handy(key: str, value: float | None, u: float | None) -> str:
+    """A track's speed, length or frequency (key U, A_tip or f) as a page writes it; empty where absent."""
+    return "" if value is None else written_in(key, value, u, handy_unit(key, value, u))
 
 
 def reduced_keys(typed: Document) -> list[str]:

@@ -66,6 +66,16 @@ def tracks_of(connection: Connection, codes: Sequence[str]) -> dict[str, TrackSh
     return found
 
 
+def units_before(connection: Connection, codes: Sequence[str]) -> dict[tuple[str, str], str]:
+    """(run, key) -> the unit of what was typed before a track in use took its place, of those runs."""
+    found = {}
+    query = select(run.c.code, track.c.replaced).select_from(_FROM).where(track.c.state == "in use")
+    for start in range(0, len(codes), _AT_ONCE):
+        for code, replaced in connection.execute(query.where(run.c.code.in_(codes[start : start + _AT_ONCE]))):
+            found |= {(code, key): entry[1] for key, entry in document(replaced).items() if entry}
+    return found
+
+
 def _sheet(row) -> TrackSheet:
     settings, result, replaced, typed = (document(row[c]) for c in ("settings", "result", "replaced", "typed"))
     return TrackSheet(

@@ -14,6 +14,7 @@ from labbook.errors import Refusal
 
 LOOKED_AT = 1 << 20  # bytes in which control characters are looked for
 LONGEST_HEADER = 1 << 16
+PART = 1 << 18  # bytes that stay in the cache
 _CONTROL = re.compile(rb"[\x01-\x08\x0e-\x1f]")
 FIRST_ROWS = 200  # always looked at for cells beyond the header: a decimal comma among commas makes such
 
@@ -77,10 +78,16 @@ def numbers(text: Text, places: Mapping[str, int], name: str) -> dict[str, np.nd
 
     Errors: Refusal for a row with more cells than the header, and for no rows.
     """
+    options = {
+        "sep": text.separator, "decimal": text.decimal, "header": None, "names": range(len(text.header)),
+        "usecols": sorted(set(places.values())), "index_col": False, "skipinitialspace": True,
+        "encoding_errors": "replace",
+    }  # fmt: skip
     try:
-        table = pd.read_csv(_behind(text), sep=text.separator, decimal=text.decimal, header=None,
-                            names=range(len(text.header)), usecols=sorted(set(places.values())), index_col=False,
-                            skipinitialspace=True, low_memory=False, encoding_errors="replace")  # fmt: skip
+        try:
+            table = pd.read_csv(_behind(text), dtype=float, **options)
+        except ValueError:  # a cell that is no number, or no table: as text, which takes twice as long
+            table = pd.read_csv(_behind(text), low_memory=False, **options)
     except pd.errors.EmptyDataError:
         table = pd.DataFrame()
     except (pd.errors.ParserError, ValueError):
@@ -106,7 +113,7 @@ def as_floats(column: pd.Series, decimal: str = ".") -> np.ndarray:
 def _refuse_long_rows(text, name, rows):
     """Refuse a row with cells beyond the header: pandas drops them, and those before have moved too."""
     width = len(text.header)
-    separators = text.content.count(text.separator.encode(), text.start)
+    separators = _count(text.content, text.separator, text.start)
     looked_at = None if separators > rows * (width - 1) else FIRST_ROWS
     lines = io.TextIOWrapper(_behind(text), encoding="utf-8", errors="replace", newline="")
     reader = csv.reader(lines, delimiter=text.separator, skipinitialspace=True)
@@ -119,6 +126,12 @@ def _refuse_long_rows(text, name, rows):
         raise Refusal(
             "track", name, f"line {text.line + reader.line_num} cannot be read", "export it as CSV, UTF-8"
         ) from None
+
+
+def _count(content, sign, start):
+    """How often a sign stands in the content; faster than bytes.count for one in every line."""
+    all_, sign = np.frombuffer(content, np.uint8), ord(sign)
+    return sum(np.count_nonzero(all_[at : at + PART] == sign) for at in range(start, len(all_), PART))
 
 
 def _behind(text):

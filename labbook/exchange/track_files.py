@@ -1,7 +1,6 @@
 """Tracks in: a tracker's CSV or Parquet file becomes SI arrays, with a word on what could not be read."""
 
 import io
-import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
@@ -27,8 +26,8 @@ class TrackFile:
     """A track in SI, row by row as in the file; None for what it does not hold.
 
     name: for messages; t: s; x, y, head_x, head_y, tip_x, tip_y: m; heading: rad; NaN where a cell held no
-    number. scale, fps: as typed, None where the file's own units served; scale_u: relative standard
-    uncertainty of lengths over times: that of the scale, joined by that of fps where one was stated. rows:
+    number. scale, fps: as typed, None where the file's own units served; scale_u, time_u: relative standard
+    uncertainties of lengths and of times: that of the scale, and that of fps where one was stated. rows:
     frames read; columns: role -> header in the file; unreadable: role -> cells without a number, roles that
     have such.
     """
@@ -45,6 +44,7 @@ class TrackFile:
     scale: Typed | None
     fps: Typed | None
     scale_u: float
+    time_u: float
     rows: int
     columns: dict[str, str]
     unreadable: dict[str, int]
@@ -53,9 +53,8 @@ class TrackFile:
         """What physics.tracks.reduce takes of the file, SI; a head point goes before a heading."""
         ahead = ("heading",) if self.head_x is None else ("head_x", "head_y")
         names = ("t", "x", "y", *ahead, "tip_x", "tip_y")
-        return {k: getattr(self, k) for k in names if getattr(self, k) is not None} | {
-            "scale_u": self.scale_u
-        }
+        known = {k: getattr(self, k) for k in names if getattr(self, k) is not None}
+        return known | {"scale_u": self.scale_u, "time_u": self.time_u}
 
     def positions(self) -> dict[str, np.ndarray]:
         """t, x and y alone, as physics.track_drift.drift_of takes them."""
@@ -123,13 +122,11 @@ def read_track(
         values["t"] = _times(values.pop("frame"), fps)
     elif chosen["t"].unit == "s?" and fps is not None:
         _refuse_other_clock(values["t"], chosen["t"].header, fps)
-    u = math.hypot(
-        scale.u / scale.value if scale else 0.0,
-        fps.u / fps.value if counted and fps.origin == STATED else 0.0,
-    )
     return TrackFile(
-        name, **{k: values.get(k) for k in ("t", "heading", *LENGTHS)}, scale=scale, fps=fps if counted else None,
-        scale_u=u, rows=rows, columns={role: column.header for role, column in chosen.items()},
+        name, **{k: values.get(k) for k in ("t", "heading", *LENGTHS)}, rows=rows,
+        scale=scale, scale_u=scale.u / scale.value if scale else 0.0,
+        fps=fps if counted else None, time_u=fps.u / fps.value if counted and fps.origin == STATED else 0.0,
+        columns={role: column.header for role, column in chosen.items()},
         unreadable={role: n for role, n in counts.items() if n},
     )  # fmt: skip
 
@@ -157,7 +154,7 @@ def _content(source, name):
         _refuse_large(len(content), name)
     else:
         content, name = content_of(source), name or Path(source).name
-    if not content.strip():
+    if not content or content.isspace():
         raise Refusal("track", name, "is empty")
     return content, name
 

@@ -7,7 +7,6 @@ import numpy as np
 from scipy.special import chndtrinc
 
 from labbook.errors import Refusal
-from labbook.physics import track_fit
 from labbook.physics.track_drift import pair
 from labbook.physics.track_mixture import Mixture, normal_score
 
@@ -87,21 +86,22 @@ class VelocityTest:
     p_zero: float
 
 
-def along_velocity(*, t, dt, x, y, beat, u_drift) -> VelocityTest:
+def along_velocity(*, plane, residual, u_drift) -> VelocityTest:
     """Direction of the fitted velocity, and Hotelling's test of the vector against zero.
 
     The two principal directions of the frame-to-frame scatter have independent noise. In each the speed is
     fitted with its own noise and its two-sided probability of zero turned into a normal score z; under no
     motion z1^2 + z2^2 is chi-square with two degrees of freedom, so p = exp(-(z1^2 + z2^2)/2). Testing the
     speed along its own direction as if that had been given would call 14 % of still swimmers swimming at
-    the 5 % level (chi-square of two against one degree of freedom). u_drift: (ux, uy), m/s.
+    the 5 % level (chi-square of two against one degree of freedom). plane: the track_fit.Plane of x and y;
+    residual: of both from line and beat, (2, n), m; u_drift: (ux, uy), m/s.
     """
-    residual = track_fit.plain_residual(X=track_fit.plain_columns(t=t, dt=dt, beat=beat), ys=(x, y))
-    _, directions = np.linalg.eigh(np.cov(np.diff(residual, axis=0).T))
+    steps = np.diff(residual, axis=1)
+    steps -= steps.mean(axis=1, keepdims=True)
+    _, directions = np.linalg.eigh(steps @ steps.T)
     velocity, score = np.zeros(2), 0.0
     for e in directions.T:
-        speed = track_fit.fit(t=t, dt=dt, y=e[0] * x + e[1] * y, beat=beat).speed
-        speed = speed.joined(hypot(e[0] * u_drift[0], e[1] * u_drift[1]))
+        speed = plane.speed(e).joined(hypot(e[0] * u_drift[0], e[1] * u_drift[1]))
         velocity += speed.mean * e
         score += normal_score(speed.p_zero()) ** 2
     length = hypot(*velocity)
@@ -118,8 +118,7 @@ def length_interval(*, speed: Mixture):
     """
     low, high = speed.quantile(0.025), speed.quantile(0.975)
     u = (speed.mean - low) / 1.959964
-    score = speed.mean / u
-    if score < EXACT_SCORE:
-        non_central = chndtrinc(max(score, 0.0) ** 2, 2.0, 0.975)
+    if speed.mean < EXACT_SCORE * u:
+        non_central = chndtrinc(max(speed.mean / u, 0.0) ** 2, 2.0, 0.975)
         low = u * float(np.sqrt(non_central)) if LEAST < non_central < np.inf else 0.0
-    return low, max(high, 0.0)
+    return max(low, 0.0), max(high, 0.0)

@@ -4,9 +4,11 @@ from dataclasses import dataclass
 from math import pi
 
 import numpy as np
-from scipy.fft import next_fast_len, rfft
+from scipy.fft import fft, fftfreq, next_fast_len, rfft
 from scipy.ndimage import median_filter
 from scipy.optimize import minimize_scalar
+
+from labbook.physics.track_rows import Rows, bin_starts, phasors, residuals
 
 FEWEST_CYCLES = 3.0
 NYQUIST_SHARE = 0.45  # of the frame rate: a harmonic above it is not fitted
@@ -31,12 +33,11 @@ def columns(*, t, f, harmonics):
     return out
 
 
-def slope_in_f(*, t, f, coefficients):
-    """d/df of the beat with these coefficients, shape (n,): the column that lets a linear fit know u(f)."""
-    k = np.repeat(np.arange(1, len(coefficients) // 2 + 1), 2)
+def slope_in_f(*, coefficients):
+    """Over t times the harmonics, what makes d/df of the beat: it lets a linear fit know u(f)."""
     turned = np.empty(len(coefficients))
     turned[0::2], turned[1::2] = coefficients[1::2], -coefficients[0::2]
-    return 2.0 * pi * t * (columns(t=t, f=f, harmonics=len(coefficients) // 2) @ (k * turned))
+    return 2.0 * pi * np.repeat(np.arange(1, len(coefficients) // 2 + 1), 2) * turned
 
 
 @dataclass(frozen=True, eq=False)
@@ -64,19 +65,19 @@ def widest(*, x, y):
     return float(np.abs(path[:, None] - path[None, :]).max())
 
 
-def candidates(*, t, dt, signals, most=3):
+def candidates(*, t, dt, signals, least=CANDIDATE, highest=np.inf, most=3):
     """[(f, which)] of the peaks that stand out of the signals' periodograms, the most outstanding first.
 
     t: s, nearly even, step dt; signals: list of arrays. Each signal, less its straight line, is put on an
     even grid and tapered; its periodogram is compared with the median of its own neighbourhood, half an
     octave to either side, so that a slow wobble is hardly a beat. f is good to a tenth of a cycle over the
     record, a start for `refine`; whether it is a beat at all is for track_fit to say, which knows the
-    noise.
+    noise. least: times the power around that a peak must have; highest: Hz.
     """
     grid = np.arange(t[0], t[-1] + 0.5 * dt, dt)
     n = len(grid)
     pad = next_fast_len(4 * n, real=True)
-    low, high = int(np.ceil(SEARCHED_FROM * pad / n)), int(NYQUIST_SHARE * pad)
+    low, high = int(np.ceil(SEARCHED_FROM * pad / n)), int(min(NYQUIST_SHARE, highest * dt) * pad)
     found = []
     for which, signal in enumerate(signals):
         power = _periodogram(np.interp(grid, t, median_filter(signal, size=3, mode="nearest")), pad)
@@ -84,43 +85,54 @@ def candidates(*, t, dt, signals, most=3):
         tops = low + np.flatnonzero(
             (power[low:high] >= power[low - 1 : high - 1]) & (power[low:high] > power[low + 1 : high + 1])
         )
-        tops = tops[score[tops] > CANDIDATE]
+        tops = tops[score[tops] > least]
         best = tops[np.argsort(power[tops])[::-1][:most]]
         found += [(score[k], k / (pad * dt), which) for k in best]
     return [(f, which) for _, f, which in sorted(found, reverse=True)[:most]]
 
 
-def refine(*, t, y, f, harmonics=3):
+def refine(*, t, dt, y, f, harmonics=3, reach=0.0):
     """f (Hz) by least squares of line plus harmonics, within 0.7 cycles over the record of the start f.
 
-    t: s; y: m, n points; the sum of squares is minimised over f alone, the linear part being solved for. In
-    a record of over 200 cycles it is the power at f of averages over two cycles each, which the line no
-    longer reaches.
+    t: s, steps of about dt; y: m, n points; the sum of squares is minimised over f alone, the linear part
+    being solved for. In a record of over 200 cycles it is the power at f of sums over two cycles each, which
+    the line no longer reaches; there the start may be off by `reach` (Hz).
     """
     T = t[-1] - t[0]
-    t = t - t.mean()
-    line = np.column_stack([np.ones_like(t), t / T])
-    y = y - line @ np.linalg.lstsq(line, y, rcond=None)[0]
+    line = Rows(t=t, dt=dt, origin=t[0] + 0.5 * T, unit=T)
+    y = residuals(rows=line, ys=y[None])[0]
     if T * f > MANY_CYCLES:
-        block = np.floor((t - t[0]) * (0.5 * f)).astype(np.int64)
-        turned = y * np.exp(-2j * pi * f * t)
-        sums = np.bincount(block, turned.real) + 1j * np.bincount(block, turned.imag)
-        middle = np.bincount(block, t) / np.maximum(np.bincount(block), 1)
+        starts = bin_starts(t=t, width=2.0 / f)
+        beat = Rows(t=t, dt=dt, origin=line.origin, unit=T, f=f, harmonics=1)
+        sums = phasors(rows=beat, y=y, starts=starts)
+        middle = np.add.reduceat(t, starts) / np.diff(np.append(starts, len(t))) - line.origin
+        start, f0 = _strongest(sums, np.floor((t[starts] - t[0]) * 0.5 * f + 1e-6), f, reach), f
 
         def squares(trial):
-            return -np.abs(sums @ np.exp(-2j * pi * (trial - f) * middle))
+            return -np.abs(sums @ np.exp(-2j * pi * (trial - f0) * middle))
     else:
+        X, start = line.of(slice(None)).T, f
+        t = t - line.origin
 
         def squares(trial):
-            X = np.hstack([line, columns(t=t, f=trial, harmonics=harmonics)])
-            gram, b = X.T @ X, X.T @ y
+            Z = np.hstack([X, columns(t=t, f=trial, harmonics=harmonics)])
+            gram, b = Z.T @ Z, Z.T @ y
             return -b @ np.linalg.solve(gram, b)
 
-    starts = f + np.array([-0.35, 0.0, 0.35]) / T
-    start = min(starts, key=squares)
+    start = min(start + np.array([-0.35, 0.0, 0.35]) / T, key=squares)
     found = minimize_scalar(squares, bounds=(start - 0.35 / T, start + 0.35 / T), method="bounded",
                             options={"xatol": 1e-7 / T})  # fmt: skip
     return float(found.x)
+
+
+def _strongest(sums, bins, f, reach):
+    """The frequency (Hz) within reach of f at which sums over two cycles of f, numbered `bins`, agree."""
+    row = np.zeros(int(bins[-1]) + 1, complex)
+    row[bins.astype(np.intp)] = sums
+    pad = next_fast_len(4 * len(row))
+    offset = fftfreq(pad, 2.0 / f)
+    power = np.where(np.abs(offset) <= reach, np.abs(fft(row, pad)), 0.0)
+    return f + offset[np.argmax(power)]
 
 
 def _periodogram(signal, pad):

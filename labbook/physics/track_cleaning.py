@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from labbook.errors import Refusal
+from labbook.physics.track_rows import BLOCK, median
 
 FEWEST_FRAMES = 24
 LONGEST_GAP = 1.0 / 3.0  # of the record
@@ -14,6 +15,7 @@ LONG_STEP = 1.5  # frame intervals: more is a gap
 SIDE = 4  # frames to either side that an outlier is seen against
 OUTLYING = 5.0  # standard deviations
 FAR_OUTLYING = 9.0  # the same, of the whole residual
+NORMAL = 1.4826  # standard deviations in a median absolute one
 MOST_OUTLYING = 0.3  # of the frames
 
 
@@ -39,7 +41,7 @@ class Frames:
     def where(self, keep):
         """The same with only the frames of a mask; gaps and lost are counted again."""
         t = self.t[keep]
-        gaps, lost = _gaps(t, self.dt)
+        gaps, lost = gaps_and_lost(t=t, dt=self.dt)
         columns = {name: column[keep] for name, column in self.columns.items()}
         return Frames(t, columns, self.dt, self.duplicates, self.unreadable, gaps, lost, self.sorted)
 
@@ -83,8 +85,8 @@ def clean(*, t, may_miss=(), **columns) -> Frames:
     interleaved = unsorted and np.median(steps) < 0.9 * in_order and back < MOST_CONFLICTS
     if interleaved and np.mean(steps < 0.75 * in_order) > MOST_CONFLICTS:
         raise _restarted()
-    dt = float(np.median(steps))
-    gaps, lost = _gaps(t, dt)
+    dt = median(steps)
+    gaps, lost = gaps_and_lost(t=t, dt=dt)
     if steps.max() > LONGEST_GAP * (t[-1] - t[0]) or lost > MOST_LOST * (lost + len(t)):
         raise Refusal(
             "t", f"{lost} of {lost + len(t)} frames lost", "too much of the record is missing",
@@ -93,34 +95,64 @@ def clean(*, t, may_miss=(), **columns) -> Frames:
     return Frames(t, columns, dt, duplicates, rows - int(good.sum()), gaps, lost, unsorted)
 
 
-def outlying(*, residuals, least):
-    """Mask of frames that stand out: residuals from a smooth motion, shape (n, k), frames in order.
+def gaps_and_lost(*, t, dt):
+    """(gaps, lost) of times t (s, rising): intervals over 1.5 dt, and the frames these would have held."""
+    steps = np.diff(t) / dt
+    long = steps[steps > LONG_STEP]
+    return len(long), int(np.sum(np.rint(long) - 1.0))
 
-    A frame stands out if in any column it lies more than 5 standard deviations from the median of the 8
+
+def outlying(*, residuals, least):
+    """(mask of frames that stand out, room): residuals from a smooth motion, shape (k, n), frames in order.
+
+    A frame stands out if in any row it lies more than 5 standard deviations from the median of the 8
     frames around it, or 9 from the median of all; both deviations are 1.4826 times the median absolute one,
     so that outliers do not set their own limit. The running median lets a slow wobble pass. A Gaussian
     frame stands out once in a million, so a clean track keeps its frames and its noise estimate keeps its
-    size. least: one value a column, below which nothing stands out (rounding).
+    size. least: one value a row, below which nothing stands out (rounding). room: what every residual may
+    change by without any frame coming to stand out, or ceasing to: sizes and their median change by twice
+    that at most.
     """
-    out = np.zeros(len(residuals), bool)
-    for column, floor in zip(np.asarray(residuals, float).T, least, strict=True):
-        local = column - _around(column)
-        whole = column - np.median(column)
-        out |= np.abs(local) > max(OUTLYING * _deviation(local), floor)
-        out |= np.abs(whole) > max(FAR_OUTLYING * _deviation(whole), floor)
+    out, room = np.zeros(residuals.shape[1], bool), np.inf
+    for row, floor in zip(residuals, least, strict=True):
+        for most, size in ((OUTLYING, np.abs(row - around(row=row))), (FAR_OUTLYING, np.abs(row - median(row)))):
+            limit = max(most * _deviation(size), floor)
+            out |= size > limit
+            apart = np.abs(size - limit).min() if limit < np.inf else 0.0
+            room = min(room, apart / (2.0 + 2.0 * NORMAL * most))
     if out.mean() > MOST_OUTLYING:
         raise Refusal("x", f"{out.sum()} of {len(out)} frames", "stand far from a steady beat",
                       "look whether the tracker followed one body")  # fmt: skip
+    return out, room
+
+
+def around(*, row):
+    """Median of the four frames before and the four after, without the frame itself.
+
+    Of two sorted fours, a and b, the smaller of each a1 b4, a2 b3, ... are the lower half of all eight: the
+    greatest of them and the least of the others are the middle two.
+    """
+    padded = np.pad(row, SIDE, mode="reflect")
+    out = np.empty(len(row))
+    for at in range(0, len(row), BLOCK):
+        fours = _sorted_fours(padded[at : at + BLOCK + 2 * SIDE])
+        pairs = [(a[: -SIDE - 1], b[SIDE + 1 :]) for a, b in zip(fours, fours[::-1], strict=True)]
+        low, high = np.minimum(*pairs[0]), np.maximum(*pairs[0])
+        for a, b in pairs[1:]:
+            np.maximum(low, np.minimum(a, b), out=low)
+            np.minimum(high, np.maximum(a, b), out=high)
+        np.multiply(0.5, low + high, out=out[at : at + BLOCK])
     return out
 
 
-def _around(column):
-    """Median of the four frames before and the four after, without the frame itself."""
-    padded = np.pad(column, SIDE, mode="reflect")
-    shifts = [k for k in range(2 * SIDE + 1) if k != SIDE]
-    near = np.stack([padded[k : k + len(column)] for k in shifts])
-    near.partition((SIDE - 1, SIDE), axis=0)
-    return 0.5 * (near[SIDE - 1] + near[SIDE])
+def _sorted_fours(values):
+    """Of each four neighbours the least, the second, the third and the greatest."""
+    low, high = np.minimum(values[:-1], values[1:]), np.maximum(values[:-1], values[1:])
+    second, third = np.maximum(low[:-2], low[2:]), np.minimum(high[:-2], high[2:])
+    return (
+        np.minimum(low[:-2], low[2:]), np.minimum(second, third), np.maximum(second, third),
+        np.maximum(high[:-2], high[2:]),
+    )  # fmt: skip
 
 
 def _numbers(name, column):
@@ -148,19 +180,11 @@ def _restarted():
                    "give one track with one clock")  # fmt: skip
 
 
-def _gaps(t, dt):
-    steps = np.diff(t) / dt
-    long = steps > LONG_STEP
-    return int(long.sum()), int(np.sum(np.rint(steps[long]) - 1.0))
-
-
-def _deviation(values):
-    """Robust standard deviation; pixel-rounded values, of which most are zero, fall back to the trimmed
-    one."""
-    size = np.abs(values)
-    middle = np.median(size)
+def _deviation(size):
+    """Robust standard deviation from absolute values; pixel-rounded ones, mostly 0, get the trimmed one."""
+    middle = median(size)
     if middle > 0.0:
-        return 1.4826 * middle
+        return NORMAL * middle
     inner = size[size <= np.quantile(size, 0.98)]
     spread = float(np.sqrt(np.mean(inner**2)))
     return spread if spread > 0.0 else np.inf

@@ -7,6 +7,7 @@ import numpy as np
 from labbook.errors import Refusal
 from labbook.physics import track_fit
 from labbook.physics.track_cleaning import clean
+from labbook.physics.track_points import Beat
 from labbook.physics.track_search import outliers
 
 
@@ -27,10 +28,11 @@ def drift_of(*, t, x, y, f=None) -> Drift:
     Each component by the fit that speeds are made with, serial correlation and outliers included.
     """
     frames = clean(t=t, x=x, y=y)
-    beat = track_fit.Beat(None if f is None else float(f), False)
-    ys = frames.columns["x"], frames.columns["y"]
+    beat = Beat(None if f is None else float(f), False)
+    ys = np.stack([frames.columns["x"], frames.columns["y"]])
     keep = ~outliers(t=frames.t, dt=frames.dt, ys=ys, beat=beat)
-    fits = [track_fit.fit(t=frames.t[keep], dt=frames.dt, y=y[keep], beat=beat).speed for y in ys]
+    plane = track_fit.Plane(t=frames.t[keep], dt=frames.dt, ys=ys[:, keep], beat=beat)
+    fits = [plane.speed(e) for e in np.eye(2)]
     return Drift((fits[0].mean, fits[1].mean), (fits[0].u, fits[1].u))
 
 

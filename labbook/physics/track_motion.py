@@ -6,19 +6,28 @@ import numpy as np
 
 from labbook.physics import track_axis, track_fit, track_steadiness
 from labbook.physics.track_cleaning import FEWEST_FRAMES
+from labbook.physics.track_points import LineFit
+from labbook.physics.track_rows import residuals
 from labbook.physics.track_search import outliers
 
 
 @dataclass(frozen=True, eq=False)
 class Motion:
-    """used: mask; p_zero: of the velocity vector, where that gave the axis; along, lateral: m, all frames."""
+    """used: mask; plane: fits on its frames; p_zero: of the velocity vector, where that gave the axis; along,
+    lateral: m, all frames; line: fit along the axis."""
 
     used: np.ndarray
+    plane: track_fit.Plane
     axis: track_axis.Axis
     p_zero: float | None
     along: np.ndarray
     lateral: np.ndarray
-    line: track_fit.LineFit
+    line: LineFit
+
+    @property
+    def across(self):
+        """The direction to the left of the axis."""
+        return -self.axis.direction[1], self.axis.direction[0]
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,26 +47,25 @@ class Tail:
         )
 
     def fit(self, track, motion, fitted):
-        """The tip's beat across the axis, or None where too few frames show the tip."""
+        """The Swing of the tip across the axis, or None where too few frames show the tip."""
         e = motion.axis.direction
         across = e[0] * self.y - e[1] * self.x
         good = motion.used & np.isfinite(across)
         if good.sum() < FEWEST_FRAMES or track.beat.f is None:
             return None
         t, across = track.t[good], across[good]
-        kept = ~outliers(t=t, dt=track.dt, ys=(across,), beat=track.beat)
+        kept = ~outliers(t=t, dt=track.dt, ys=across[None], beat=track.beat)
         beat = replace(track.beat, fitted=fitted)
-        return track_fit.fit(t=t[kept], dt=track.dt, y=across[kept], beat=beat)
+        return track_fit.Plane(t=t[kept], dt=track.dt, ys=across[None, kept], beat=beat).swing(track_fit.ONE)
 
 
 @dataclass(frozen=True, eq=False)
 class Track:
-    """Positions with drift taken off, and what the axis is to come from."""
+    """places: x and y with drift taken off, (2, n), m; axis, body: what the axis is to come from."""
 
     t: np.ndarray
     dt: float
-    x: np.ndarray
-    y: np.ndarray
+    places: np.ndarray
     beat: track_fit.Beat
     axis: object
     body: dict
@@ -69,37 +77,34 @@ class Track:
 
     def motion(self, used) -> Motion:
         """Axis and fit along it, on the frames of a mask."""
-        t, beat, p_zero = self.t[used], self.beat, None
+        part = slice(None) if used.all() else used
+        t, places, p_zero, more = self.t[part], self.places[:, part], None, ()
+        if self.beat.f is not None:
+            more = track_steadiness.rows(start=t[0], end=t[-1] + self.dt, f=self.beat.f)
+        plane = track_fit.Plane(t=t, dt=self.dt, ys=places, beat=self.beat, more=more)
         if self.axis is not None:
             axis = track_axis.given(axis=self.axis)
         elif self.body:
             axis = track_axis.from_body(**{k: column[used] for k, column in self.body.items()})
         else:
-            test = track_axis.along_velocity(t=t, dt=self.dt, x=self.x[used], y=self.y[used], beat=beat,
-                                             u_drift=self.u_drift)  # fmt: skip
+            residual = residuals(rows=track_fit.plain_rows(t=t, dt=self.dt, beat=self.beat), ys=places)
+            test = track_axis.along_velocity(plane=plane, residual=residual, u_drift=self.u_drift)
             axis, p_zero = test.axis, test.p_zero
-        motion = self._along(axis, p_zero, used)
-        if p_zero is not None and motion.line.speed.mean < 0.0:  # within rounding of rest: turn the axis round
-            motion = self._along(track_axis.turned(axis=axis), p_zero, used)
-        return motion
-
-    def _along(self, axis, p_zero, used):
-        e, t, beat = axis.direction, self.t[used], self.beat
-        along, lateral = e[0] * self.x + e[1] * self.y, e[0] * self.y - e[1] * self.x
-        more = ()
-        if beat.f is not None:
-            more = track_steadiness.columns(start=t[0], end=t[-1] + self.dt, f=beat.f)
-        line = track_fit.fit(t=t, dt=self.dt, y=along[used], beat=beat, more=more)
-        return Motion(used, axis, p_zero, along, lateral, line)
+        line = plane.along(axis.direction)
+        if p_zero is not None and line.speed.mean < 0.0:  # within rounding of rest: turn the axis round
+            axis = track_axis.turned(axis=axis)
+            line = plane.along(axis.direction)
+        (ex, ey), (x, y) = axis.direction, self.places
+        return Motion(used, plane, axis, p_zero, ex * x + ey * y, ex * y - ey * x, line)
 
 
 def frequency(*, track, motion, tip):
-    """(f, u_f) in Hz: the given one, or the surest of the fits along, across and of the tip; u 0 without noise."""
+    """(f, u_f) in Hz: the given one, or the surest of the fits along, across and of the tip; u 0 without
+    noise."""
     if not track.beat.fitted:
         return track.beat.f, 0.0
-    used = motion.used
-    across = track_fit.fit(t=track.t[used], dt=track.dt, y=motion.lateral[used], beat=track.beat)
-    known = [one.f for one in (motion.line, across, tip) if one is not None and one.f is not None]
+    swings = motion.line.swing, motion.plane.swing(motion.across), tip
+    known = [one.f for one in swings if one is not None and one.f is not None]
     if not known:
         return track.beat.f, 0.0
     best = min(known, key=lambda one: one.u)

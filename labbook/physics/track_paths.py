@@ -9,8 +9,10 @@ from scipy.stats import t as student
 from labbook.errors import Refusal
 from labbook.physics import track_fit
 from labbook.physics.track_cleaning import clean
+from labbook.physics.track_rows import averages
 
 LAGS = 40
+FEWEST_LAGS = 5  # with any displacement: fewer tell nothing of its growth
 LONGEST_LAG = 0.1  # of the record
 BLOCKS = 10  # of the jackknife
 SURE = 2.0  # standard uncertainties that a fitted figure must stand clear of zero
@@ -71,20 +73,24 @@ def free_path(*, t, x, y, f=None) -> FreePath:
     the number of separate intervals; uncertainties are a jackknife's over ten stretches. Propulsion counts
     where v^2 stands two uncertainties clear of zero and persistence where it also lies within the lags;
     Peclet number: Bechinger et al., Rev. Mod. Phys. 88:045006 (2016). A path with a mean velocity has a v
-    too: drift is taken off beforehand.
+    too: drift is taken off beforehand. Lags without any displacement (positions rounded to pixels) are left
+    out. Refuses positions that hardly ever change.
     """
     frames = clean(t=t, x=x, y=y)
     t, (x, y) = frames.t, (frames.columns["x"], frames.columns["y"])
     if f is not None:
-        beat = track_fit.Beat(float(f), False)
-        middle = 0.5 * (t[0] + t[-1])
-        x, y = (one - track_fit.beat_at(t=t, dt=frames.dt, y=one, beat=beat, middle=middle) for one in (x, y))
+        x, y = track_fit.without_beat(t=t, dt=frames.dt, ys=np.stack([x, y]), f=float(f))
     path, dt, lags = _on_grid(t, x, y, None)
     sums, counts = _by_block(path, lags)
     lag, total, number = lags * dt, sums.sum(axis=0), counts.sum(axis=0)
-    msd = total / number
+    msd, remaining = total / number, (total - sums) / (number - counts)
+    moves = np.minimum(msd, remaining.min(axis=0)) > 0.0
+    if moves.sum() < FEWEST_LAGS:
+        raise Refusal(
+            "x", None, "the positions hardly ever change", "look whether the tracker followed a body"
+        )
+    lag, msd, remaining = lag[moves], msd[moves], remaining[:, moves]
     whole = _fitted(lag, msd, None)
-    remaining = [(total - s) / (number - n) for s, n in zip(sums, counts, strict=True)]
     (D, v2, tau, noise2), (u_D, u_v2, u_tau, _) = (
         whole,
         _jackknife([_fitted(lag, one, whole) for one in remaining]),
@@ -197,10 +203,8 @@ def _curvature(t, x, y, dt):
     The mean turn and its standard error hold for a direction that diffuses; for one that is merely noisy
     they err on the safe side.
     """
-    _, places, _ = track_fit.averages(
-        t=t, columns=np.column_stack([x, y]), width=(t[-1] - t[0] + dt) / (STEPS + 1)
-    )
-    step = np.diff(places[:, 0] + 1j * places[:, 1])
+    _, places, _ = averages(t=t, rows=np.stack([x, y]), width=(t[-1] - t[0] + dt) / (STEPS + 1))
+    step = np.diff(places[0] + 1j * places[1])
     if len(step) < STEPS // 2 or np.any(step == 0.0):
         return None, None
     turn = np.angle(step[1:] / step[:-1])

@@ -7,16 +7,19 @@ of 2.4 mm peak to peak, seen by the rig's camera (21.4(1) um/px, 30 frames a sec
 import hashlib
 import io
 import math
+import re
 from html import unescape
 
 import numpy as np
 import pytest
+import streamlit as st
 
 from labbook.api import Book
 from labbook.app import live, track_fields
 from labbook.book.queries import ledger_lines
 from labbook.book.track_pages import file_content
 from labbook.charts.strips import strips
+from labbook.exchange import track_reducing
 
 F, FPS, PIXEL = 0.56, 30, 21.4e-6  # Hz, 1/s, m/px
 U, TIP, ANGLE, NOISE = 80e-6, 2.4e-3, 20.0, 1e-5
@@ -26,15 +29,17 @@ CELLS = {"swimmer": "rush-05", "fluid": "sil12500-a", "f": "0.56 Hz", "theta0": 
          "U": TYPED, "A_tip": "2.62(8) mm"}  # fmt: skip
 
 
-def track(header="frame,x,y,tip_x,tip_y", frames=FRAMES, speed=U) -> bytes:
-    """The motion as a tracker writes it, in pixels."""
+def track(header="frame,x,y,tip_x,tip_y", frames=FRAMES, speed=U, drift=(0.0, 0.0), still=0) -> bytes:
+    """The motion as a tracker writes it, in pixels; drift: m/s of everything; still: frames before it starts to move."""
     rng = np.random.default_rng(5)
-    t = np.arange(frames) / FPS
+    t = np.maximum(np.arange(frames) - still, 0) / FPS
     along = speed * t + 4e-4 * np.sin(2 * np.pi * F * t)
     x, y = (0.003 + along * g(math.radians(ANGLE)) + rng.normal(0, NOISE, frames) for g in (math.cos, math.sin))
     # across the axis, behind the body
     tip = 0.5 * TIP * np.sin(2 * np.pi * F * t + 0.5)
     tip_x, tip_y = x - 0.02 - tip * math.sin(math.radians(ANGLE)), y + tip * math.cos(math.radians(ANGLE))
+    moved = [v * np.arange(frames) / FPS for v in drift]
+    x, tip_x, y, tip_y = x + moved[0], tip_x + moved[0], y + moved[1], tip_y + moved[1]
     rows = zip(range(frames), *(one / PIXEL for one in (x, y, tip_x, tip_y)), strict=True)
     return (header + "\n" + "".join(f"{i},{a:.3f},{b:.3f},{c:.3f},{d:.3f}\n" for i, a, b, c, d in rows)).encode()
 
@@ -95,8 +100,9 @@ def words(page):
 def test_a_track_is_reduced_with_the_rigs_camera_and_the_runs_frequency(page):
     drop(page, track())
     assert {w.label: w.value for w in page.at.text_input if w.label in track_fields.LABELS.values()} == {
-        "scale, from the rig": "21.4(1) um/px", "frame rate, from the rig": "30 fps", "beat, or fit": "0.56 Hz",
+        "scale, from the rig": "21.4(1) um/px", "fps, from the rig": "30 fps", "beat, or fit": "0.56 Hz",
         "axis, ° from x to y": "auto", "trim, cycles": "auto", "drift to take off": "none",
+        "or still from, to": "none",
     }  # fmt: skip
     text = words(page)
     # 80 um/s; the scale alone gives u = 80 x 0.1/21.4 = 0.37 um/s, the noise less than a tenth of that
@@ -157,12 +163,13 @@ def test_only_what_is_ticked_enters(page, target):
 
 WRONG = [
     ("scale, from the rig", "21.4", "has no unit"),
-    ("frame rate, from the rig", "30 mm", "mm is a length"),
+    ("fps, from the rig", "30 mm", "mm is a length"),
     ("beat, or fit", "2 kg", "kg is a mass"),
     ("axis, ° from x to y", "north", "cannot be read as an angle"),
     ("trim, cycles", "many", "neither auto nor a number of cycles"),
     ("trim, cycles", "15", "must keep three"),
     ("drift to take off", "fast", "cannot be read as a velocity"),
+    ("or still from, to", "early", "cannot be read as two times"), ("or still from, to", "4 to 6 s", "at the start or the end"),
 ]  # fmt: skip
 
 
@@ -221,7 +228,7 @@ def test_a_file_with_units_asks_for_no_scale(page):
             for line in text[1:]]  # fmt: skip
     drop(page, "\n".join([text[0].replace("px", "um"), *rows]).encode())
     labels = [w.label for w in page.at.text_input]
-    assert "scale, from the rig" not in labels and "frame rate, from the rig" not in labels
+    assert "scale, from the rig" not in labels and "fps, from the rig" not in labels
     assert "80.0" in words(page)
 
 
@@ -253,6 +260,131 @@ def test_a_track_is_replaced_with_a_reason_and_the_first_typed_value_stays(page,
     assert f"reduced, typed {TYPED}" in words(page)
     with Book.open(target) as book:
         assert book.ask(ledger_lines, code=newest(target)).iloc[0]["why"] == "cut to this trial"
+
+
+# ---- drift
+
+DRIFT = (9e-6, -6e-6)  # m/s
+
+
+def tracer(header="frame,x,y") -> bytes:
+    """A passive particle in the same film, with the same noise."""
+    rng = np.random.default_rng(6)
+    x, y = (0.001 + v * np.arange(FRAMES) / FPS + rng.normal(0, NOISE, FRAMES) for v in DRIFT)
+    return (header + "\n" + "".join(f"{i},{a / PIXEL:.3f},{b / PIXEL:.3f}\n" for i, (a, b) in enumerate(zip(x, y, strict=True)))).encode()
+
+
+def drop_drift(page, content, name="tracer.csv"):
+    page.at.file_uploader[1].set_value((name, content, "text/csv"))
+    return page.run()
+
+
+def test_the_drift_comes_from_a_tracers_own_track(page, target):
+    drop(page, track(drift=DRIFT))
+    assert "80.0(4) um/s" not in words(page)
+    drop_drift(page, tracer())
+    # 30 s of white noise of 10 um: u = 1e-5 sqrt(12/900)/30 = 0.04 um/s (a straight line's slope), and a little more
+    assert re.search(r"Drift (8\.9|9\.0)\d\(\d\) um/s, -(5\.9|6\.0)\d\(\d\) um/s from tracer\.csv", words(page))
+    assert "80.0(4) um/s" in words(page) and "drift taken off" in words(page)
+    page.press("Accept")
+    run = sheet(target)
+    assert abs(run.values["U"] - U) < 2 * run.u["U"]
+    assert run.track.settings["drift"][0] == pytest.approx(DRIFT, abs=2e-7) and run.track.settings["drift_from"] == "tracer.csv"
+    assert "um/s from tracer.csv" in words(page)
+    with Book.open(target) as book:
+        assert book.check() == []
+
+
+def test_the_drift_comes_from_a_still_stretch(page, target):
+    drop(page, track(frames=FRAMES + 300, drift=DRIFT, still=300))
+    field(page, "or still from, to").set_value("0 to 9.9 s")
+    page.run()
+    assert "drift taken off" in words(page)
+    page.press("Accept")
+    run = sheet(target)
+    # 10 s of white noise: u of the drift is 1e-5 sqrt(12/300)/10 = 0.2 um/s
+    assert abs(run.values["U"] - U) < 3 * run.u["U"] < 2e-6
+    assert "drift from the still stretch 0 to 9.9 s" in words(page)
+    with Book.open(target) as book:
+        assert book.check() == []
+
+
+def test_the_drift_is_a_given_vector(page, target):
+    drop(page, track(drift=DRIFT))
+    field(page, "drift to take off").set_value("9.0(1),-6.0(1) um/s")
+    page.run()
+    assert "80.0(4) um/s" in words(page) and "9.00(10) um/s, -6.00(10) um/s" in words(page)
+    page.press("Accept")
+    assert sheet(target).track.settings["drift"] == "9.0(1),-6.0(1) um/s"
+
+
+@pytest.mark.parametrize(("content", "said"), [
+    (b"", "is empty"), (b"\x89PNG\x00\x01", "neither text nor Parquet"), (tracer("n,a,b"), "the track has no column x"),
+    (b"frame,x,y\n1,2,3\n", "at least 24"),
+])  # fmt: skip
+def test_a_bad_drift_track_is_one_sentence_and_nothing_is_accepted(page, content, said):
+    drop(page, track())
+    drop_drift(page, content)
+    (sentence,) = page.said()
+    assert said in sentence and "Accept" not in [b.label for b in page.at.button]
+
+
+def test_one_drift_only(page):
+    drop(page, track())
+    field(page, "drift to take off").set_value("9.0(1),-6.0(1) um/s")
+    drop_drift(page, tracer())
+    (sentence,) = page.said()
+    assert "tracer.csv: the drift stands in 'drift to take off' too; give one of them." in sentence
+    field(page, "drift to take off").set_value("none")
+    page.run()
+    assert page.said() == [] and "Accept" in [b.label for b in page.at.button]
+
+
+# ---- one press, two where it is far off
+
+
+@pytest.fixture
+def reductions(monkeypatch):
+    """How often a track was reduced, from now on."""
+    made, real = [], track_reducing.reduction
+    monkeypatch.setattr(track_reducing, "reduction", lambda *a, **k: made.append(1) or real(*a, **k))
+    st.cache_data.clear()
+    return made
+
+
+def test_accepting_reduces_nothing_again(page, reductions):
+    drop(page, track())
+    drop_drift(page, tracer())
+    before = len(reductions)
+    assert before == 2  # without its drift, and with it
+    page.press("Accept")
+    assert "come from reed.csv" in page.at.success[0].value
+    assert charts(page) == ["path", "steps", "along_frames", "residual_frames"] and len(reductions) == before
+
+
+def test_a_speed_that_is_far_off_wants_a_second_touch(page, target):
+    drop(page, track(speed=8e-3))
+    page.press("Accept")
+    warned = "\n".join(t for t in page.texts() if "lb-warned" in t)
+    assert "times the largest of this swimmer" in warned and "a wrong scale or frame rate?" in warned
+    assert sheet(target).track is None
+    # another choice is another question
+    field(page, "trim, cycles").set_value("2")
+    page.run()
+    assert "lb-warned" not in page.words() and "It is right, accept" not in [b.label for b in page.at.button]
+    page.press("Accept")
+    page.press("It is right, accept")
+    assert sheet(target).values["U"] == pytest.approx(8e-3, rel=0.01) and "confirmed" in sheet(target).marks["U"]
+
+
+def test_the_ledger_says_it_as_people_write_it(page, open_page, target):
+    content = track()
+    drop(page, content)
+    page.press("Accept")
+    digest = hashlib.sha256(content).hexdigest()
+    for shown in (words(page), words(open_page(target, "ledger"))):
+        assert "80.0(4) um/s" in shown and digest[:12] in shown and digest not in shown
+        assert not re.search(r"\de-\d+ m/s", shown)
 
 
 def test_a_void_run_takes_no_track(open_page, target):
@@ -330,6 +462,24 @@ def test_a_track_that_is_refused_leaves_the_run_and_says_so_with_a_link(bench, t
     (sentence,) = bench.said()
     assert sentence.startswith('<div') and f"{code} is logged, but its track is not attached:" in sentence
     assert bench.links()[f"{code}: drop it there"] == f"run={code}"
+
+
+def test_logging_reduces_nothing_again(bench, target, reductions):
+    on_bench(bench, track())
+    bench.press("Log trial")
+    assert sheet(target).track.file == "reed.csv" and len(reductions) == 1
+
+
+def test_a_track_that_is_far_off_waits_for_a_touch_when_its_trial_is_logged(bench, target):
+    on_bench(bench, track(speed=8e-3), "fast.csv")
+    bench.press("Log trial")
+    code = newest(target)
+    warned = unescape("\n".join(t for t in bench.texts() if "lb-warned" in t))
+    assert f"{code} is logged, and its track waits for one more touch." in warned and "times the largest of this swimmer" in warned
+    assert sheet(target, code).track is None
+    bench.press("It is right, attach the track")
+    assert newest(target) == code and sheet(target, code).track.file == "fast.csv"
+    assert "U from fast.csv" in bench.at.success[0].value and "lb-warned" not in bench.words()
 
 
 def test_nothing_is_attached_where_nothing_is_logged(bench, target):

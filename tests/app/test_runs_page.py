@@ -11,7 +11,7 @@ import pytest
 from click.testing import CliRunner
 
 from labbook.api import Book
-from labbook.app import runs, runs_table
+from labbook.app import runs, runs_cells, runs_table
 from labbook.app.column_width import wide_enough
 from labbook.book import addresses, queries
 from labbook.book.asking import Question
@@ -323,7 +323,7 @@ def test_equal_values_written_differently_keep_both_texts(book):
     runs = book.frame(Question(), keys=("U",), texts=("code", "typed"), newest=3)
     runs["U"], runs["u_U"] = [1e-3] * 3, [1e-4] * 3
     runs["typed"] = [{"U": [text, "mm/s", 1e-3, 1e-4, "stated"]} for text in ("1.0(1)", "1.00(10)", "1.0(1)")]
-    label, values, texts = runs_table._numeric(runs, "U", "U")
+    label, values, texts = runs_cells.numeric(runs, "U", "U", {})
     assert label == "U (mm/s)"
     assert [texts[v] for v in values] == ["1.0(1)", "1.00(10)", "1.0(1)"]
 
@@ -412,7 +412,7 @@ def test_mixed_units_stay_in_the_cells(book):
     runs = book.frame(Question(), keys=("U",), texts=("code", "typed"), newest=2)
     runs["U"] = [1e-3, 2e-3]
     runs["typed"] = [{"U": ["1.0", "mm/s", 1e-3, 0, "digits"]}, {"U": ["2000 um/s", "um/s", 2e-3, 0, "digits"]}]
-    label, values, texts = runs_table._numeric(runs, "U", "U")
+    label, values, texts = runs_cells.numeric(runs, "U", "U", {})
     assert label == "U"
     assert [texts[v] for v in values] == ["1.0 mm/s", "2000 um/s"]
 

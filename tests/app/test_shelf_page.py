@@ -6,7 +6,8 @@ import pytest
 from streamlit.testing.v1 import AppTest
 
 from labbook import Book
-from labbook.app import cautions, shelf_loading
+from labbook.app import shelf_loading
+from labbook.book import cautions
 from labbook.book.ledger_pages import newest_line
 from labbook.errors import Refusal
 

@@ -4,6 +4,7 @@ import hashlib
 import json
 import math
 import multiprocessing
+import re
 import sqlite3
 from contextlib import closing
 from dataclasses import replace
@@ -21,7 +22,10 @@ from labbook.book.bench_queries import cells_again
 from labbook.book.budgets import budgets, simulate
 from labbook.book.derive import STALE_DAYS
 from labbook.book.queries import ledger_lines
+from labbook.book.reduced_cells import in_short
 from labbook.book.track_pages import file_content, track_of, tracks_table
+from labbook.errors import Unconfirmed
+from labbook.exchange import track_reducing
 from labbook.registry.typed import REDUCED, read, reduced
 
 SCALE, U_SCALE = 3.2e-6, 0.1e-6  # the rig's '3.2(1) um/px'
@@ -255,6 +259,147 @@ def test_check_finds_a_flipped_byte_in_a_kept_file(attached, by_hand):
 def test_check_finds_a_track_and_a_run_that_disagree(attached, by_hand, change, said):
     by_hand(attached, change)
     assert any(said in sentence for sentence in attached.check())
+
+
+# every kind of figure that a result has; 'changed by hand' is a change well outside what another machine makes of it
+STORED = [("p_zero", "0.5"), ("drift", "json('[1e-5, 0.0]')"), ("U", "5.11e-5"), ("u_U", "2e-6"), ("U_low", "4e-5"),
+          ("net_per_cycle", "1e-5"), ("amplitude", "3e-4"), ("u_amplitude", "2e-5"), ("cycles", "11.5"), ("frames", "499"),
+          ("lost", "3"), ("axis", "json('[0.0, 1.0]')"), ("axis_from", "'body'"), ("excursion", "9e-4"), ("u_A_tip", "null"),
+          ("steadiness", "null"), ("steadiness.p_trend", "1e-3"), ("steadiness.per_cycle[2]", "6e-5"),
+          ("colour", "'red'")]  # fmt: skip
+
+
+@pytest.mark.parametrize(("figure", "value"), STORED)
+def test_check_reduces_again_and_finds_any_figure_that_was_changed(attached, by_hand, figure, value):
+    by_hand(attached, f"UPDATE track SET result = json_set(result, '$.{figure}', {value})")
+    said = [sentence for sentence in attached.check() if "reduces to" in sentence]
+    name = figure.split(".")[0]
+    assert said == [f"R-0001: {name} of track T-0001 is not what its file reduces to: changed by hand, or reduced by "
+                    "another labbook"]  # fmt: skip
+
+
+def test_check_reduces_replaced_tracks_too_and_bears_what_another_machine_makes_of_a_figure(attached, by_hand):
+    attached.attach_track("R-0001", track_file(speed=80e-6), "b.csv", {"axis": 0})
+    (u,), = by_hand(attached, "SELECT json_extract(result, '$.u_U') FROM track WHERE id = 1")
+    for change, n in ((1e-4 * u, 0), (0.01 * u, 1)):  # of the speed: where a fit may end, a hundredth of its u
+        by_hand(attached, "UPDATE track SET result = json_set(result, '$.U', json_extract(result, '$.U') + ?) WHERE id = 1", change)
+        assert ["U of track T-0001" in sentence for sentence in attached.check()] == [True] * n
+
+
+@pytest.mark.parametrize("change", [
+    "UPDATE track SET settings = json_set(settings, '$.axis', 'north')", "UPDATE track SET settings = json_set(settings, '$.columns.y', 'tip_y [px]')",
+    "UPDATE track SET settings = json_set(settings, '$.trim', '1')", "UPDATE track SET settings = json_set(settings, '$.drift', 'none')",
+])  # fmt: skip
+def test_check_finds_settings_that_give_something_else(attached, by_hand, change):
+    by_hand(attached, change)
+    assert any("T-0001" in sentence and ("reduces to" in sentence or "reduced again" in sentence) for sentence in attached.check())
+
+
+# ---- a reduction that is made already
+
+
+@pytest.fixture
+def reductions(monkeypatch):
+    """How often a track was reduced."""
+    made, real = [], track_reducing.reduction
+
+    def counted(*a, **k):
+        made.append(1)
+        return real(*a, **k)
+
+    monkeypatch.setattr(track_reducing, "reduction", counted)
+    return made
+
+
+def test_a_reduction_that_was_looked_at_is_not_made_again(book, reductions):
+    settings = {"axis": "0", "drift": ((1e-6, 0.0), (1e-7, 1e-7))}
+    made = track_reducing.reduce_track(track_file(), "a.csv", settings, attaching.conditions(book.engine, "R-0001"))
+    assert book.attach_track("R-0001", track_file(), "a.csv", settings, made=made) is made.reduction
+    assert len(reductions) == 1
+    assert book.check() == [] and len(reductions) == 2, "the check reduces anew"
+
+
+@pytest.mark.parametrize("other", [
+    {"content": track_file(speed=60e-6)}, {"settings": {"axis": "10"}}, {"settings": {"axis": "0", "trim": "1"}},
+    {"code": "R-0002"}, {"rig": "3.3(1) um/px"}, {"f": "0.51 Hz"},
+])  # fmt: skip
+def test_a_reduction_of_anything_else_is_not_taken(book, reductions, other):
+    told = {"content": track_file(), "settings": {"axis": "0", "f": "0.5 Hz"}, "code": "R-0001"}
+    made = track_reducing.reduce_track(told["content"], "a.csv", told["settings"], attaching.conditions(book.engine, "R-0001"))
+    if "rig" in other:
+        book.stock("rig", code="coil-1", scale=other["rig"], why="measured again")
+    if "f" in other:
+        book.amend("R-0001", f=other["f"], why="misread")
+    told |= {k: v for k, v in other.items() if k in told}
+    found = book.attach_track(told["code"], told["content"], "a.csv", told["settings"], made=made, confirm=True)
+    assert found is not made.reduction and len(reductions) == 2
+    assert book.sheet(told["code"]).track.result["U"] == found.U and book.check() == []
+
+
+# ---- far from the swimmer's other runs
+
+
+def test_a_track_that_is_far_off_is_warned_about_as_a_typed_speed_is(book):
+    """Both ask book/plausibility.py: five times outside what this swimmer's kept runs span, as amend says it."""
+    for at in range(3):  # with R-0002 and R-0003 enough to compare with
+        book.record(swimmer="reed-1", fluid="syrup", f="0.50 Hz", theta0="0.30 rad", U="0.05 mm/s", T="22.0 degC",
+                    at=f"2026-03-07T10:0{at}")  # fmt: skip
+    before = rows_of(book)
+    with pytest.raises(Unconfirmed) as typed:
+        book.amend("R-0001", U="5.10(1) mm/s", why="a try")
+    with pytest.raises(Unconfirmed) as found:
+        book.attach_track("R-0001", track_file(speed=5.1e-3), "a.csv", {"axis": 0})
+    assert found.value.fields == typed.value.fields == ["U", "U"]
+    said = "times the largest of this swimmer's runs: another run's track, or a wrong scale or frame rate?"
+    assert all(said in sentence for sentence in found.value.warnings) and rows_of(book) == before
+    book.attach_track("R-0001", track_file(speed=5.1e-3), "a.csv", {"axis": 0}, confirm=True)
+    sheet = book.sheet("R-0001")
+    assert sheet.values["U"] == pytest.approx(5.1e-3, rel=1e-3) and sheet.marks["U"] == ["reduced", "confirmed"]
+    # the next track does away with the doubt, and its own speed is no surprise
+    book.attach_track("R-0001", track_file(), "b.csv", {"axis": 0})
+    assert book.sheet("R-0001").marks["U"] == ["reduced"] and book.check() == []
+
+
+def test_a_value_outside_its_usual_range_is_warned_about_too(book):
+    from_far = track_file(speed=40.0)  # m/s: nothing that swims does so
+    with pytest.raises(Unconfirmed, match=r"U: 4\d\d\d\d?\d?.* mm/s lies outside the usual"):
+        book.attach_track("R-0004", from_far, "a.csv", {"axis": 0, "scale": "3.2(1) um/px", "fps": "20 fps", "f": "0.5 Hz"})
+
+
+def test_only_what_the_track_moves_is_doubted(book):
+    """R-0001's Sp is made odd and confirmed; its speed says nothing of that."""
+    with pytest.raises(Unconfirmed, match="Sp = .* times the largest"):
+        book.amend("R-0001", f="2 kHz", why="so it was")
+    book.amend("R-0001", f="2 kHz", why="so it was", confirm=True)
+    book.attach_track("R-0001", track_file("um"), "a.csv", {"axis": 0, "f": "0.5 Hz"}, ("U",))
+    assert book.sheet("R-0001").track.accepted == ["U"] and "confirmed" in book.sheet("R-0001").marks["f"]
+
+
+# ---- what the ledger says
+
+
+def test_the_ledger_says_what_a_track_brought_as_people_write_it(attached):
+    attached.attach_track("R-0001", track_file(speed=80e-6, tip=False), "b.csv", {"axis": 0})
+    lines = attached.ask(ledger_lines, newest=2)
+    first, second = lines.iloc[1], lines.iloc[0]
+    # u = 51 um/s 0.1/3.2 = 1.6 um/s and 80 um/s 0.1/3.2 = 2.5 um/s: the camera's scale, beside which the noise is nothing
+    assert first["before"]["U"] == "0.051(3) mm/s" and re.fullmatch(r"5[01]\.\d\(16\) um/s", first["after"]["U"])
+    assert second["before"]["U"] == first["after"]["U"]
+    assert second["after"]["U"].startswith(("80(3)", "80.0(25)")) and second["before"]["A_tip"] == "2.00(6) mm"
+    attached.amend("R-0001", why="the stopwatch was right", U="0.051(3) mm/s")
+    was = attached.ask(ledger_lines, newest=1).iloc[0]["before"]["U"]
+    # the book's own text has the run's part of u alone, and would say more digits than are known
+    assert re.fullmatch(r"(79\.9\d|80(\.0\d)?) um/s", in_short("U", was)) and was.endswith("e-5 m/s")
+
+
+@pytest.mark.parametrize(("key", "text"), [("U", "0.051(3) mm/s"), ("U", "5.10(12)e-5 m/s"), ("note", "1.23(4)e-5 m/s"),
+                                           ("U", "fast"), ("T", "2.345(123)e1 K")])  # fmt: skip
+def test_what_a_person_typed_is_not_shortened(key, text):
+    assert in_short(key, text) == text
+
+
+def test_a_digest_is_shown_in_short():
+    assert in_short("digest", "0123456789abcdef" * 4) == "0123456789ab"
 
 
 # ---- refused: nothing is attached

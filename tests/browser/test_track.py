@@ -28,17 +28,25 @@ TICKS = """() => [...document.querySelectorAll('[class*="st-key-lb-track-path"] 
             return [text.textContent, at.x + at.width / 2, at.y + at.height / 2] })"""
 
 
-def track() -> bytes:
-    """The motion as a tracker writes it: frames and pixels."""
+def track(speed: float = U, drift: tuple[float, float] = (0.0, 0.0)) -> bytes:
+    """The motion as a tracker writes it: frames and pixels; drift: m/s of the whole picture."""
     rng = np.random.default_rng(8)
     t = np.arange(1200) / FPS
     # it starts from rest, and is up to speed when the first beat is over
-    along = U * np.where(t < 1 / F, 0.5 * F * t**2, t - 0.5 / F) + 4e-4 * np.sin(2 * np.pi * F * t)
+    along = speed * np.where(t < 1 / F, 0.5 * F * t**2, t - 0.5 / F) + 4e-4 * np.sin(2 * np.pi * F * t)
     tip = 0.5 * TIP * np.sin(2 * np.pi * F * t + 0.5)
     x, y = (0.003 + along * g(ANGLE) + rng.normal(0, 1e-5, len(t)) for g in (math.cos, math.sin))
+    x, y = x + drift[0] * t, y + drift[1] * t
     columns = (x, y, x - 0.02 - tip * math.sin(ANGLE), y + tip * math.cos(ANGLE))
     rows = zip(range(len(t)), *(one / PIXEL for one in columns), strict=True)
     return ("frame,x,y,tip_x,tip_y\n" + "".join(f"{i},{a:.3f},{b:.3f},{c:.3f},{d:.3f}\n" for i, a, b, c, d in rows)).encode()
+
+
+def tracer(drift: tuple[float, float]) -> bytes:
+    """A particle that only drifts, in the same film."""
+    rng = np.random.default_rng(9)
+    x, y = (0.001 + v * np.arange(900) / FPS + rng.normal(0, 1e-5, 900) for v in drift)
+    return ("frame,x,y\n" + "".join(f"{i},{a / PIXEL:.3f},{b / PIXEL:.3f}\n" for i, (a, b) in enumerate(zip(x, y, strict=True)))).encode()
 
 
 @pytest.fixture(scope="module")
@@ -64,8 +72,11 @@ def typed(tab, label: str, text: str) -> None:
     expect(field).to_have_value(text)
 
 
-def drop(tab, content: bytes, name: str = "reed.csv") -> None:
-    tab.locator("input[type=file]").set_input_files({"name": name, "mimeType": "text/csv", "buffer": content})
+def drop(tab, content: bytes, name: str = "reed.csv", zone: int = 0) -> None:
+    """Into the track's own zone, or (1) that of its drift."""
+    settled(tab)  # a page that is still running would mount the zone anew, and lose the file
+    place = tab.locator("input[type=file]").nth(zone)
+    place.set_input_files({"name": name, "mimeType": "text/csv", "buffer": content})
 
 
 def heights(tab) -> dict[str, float]:
@@ -92,9 +103,17 @@ def test_a_track_is_dropped_adjusted_accepted_and_its_point_moves(page, served, 
     # a film by mistake: one sentence, and the page goes on
     large = tmp_path / "film.csv"
     large.write_bytes(b"t,x,y\n" + b"1,2,3\n" * 11_500_000)
-    tab.locator("input[type=file]").set_input_files(large)
+    tab.locator("input[type=file]").first.set_input_files(large)
     expect(tab.get_by_text("film.csv has 66 MB, and this page takes 64;", exact=False)).to_be_visible(timeout=WAIT)
     shot(tab, "track-large-1024-light")
+    huge = tmp_path / "two-hours.csv"
+    with huge.open("wb") as file:  # beyond what is let in at all: the page alone can say it
+        file.truncate(2 * 2**30)
+    tab.locator("input[type=file]").first.set_input_files(huge)
+    expect(tab.locator('[class*="st-key-lb-dropzone"] [aria-invalid="true"]')).to_be_visible(timeout=WAIT)
+    said = tab.evaluate("""() => getComputedStyle(document.querySelector('[class*="st-key-lb-dropzone"]'), '::after').content""")
+    assert "This file is not read: a page takes at most 64 MB" in said
+    shot(tab, "track-huge-1024-light")
     drop(tab, content)
     expect(tab.get_by_text("that of the velocity", exact=False)).to_be_visible(timeout=WAIT)
     expect(tab.get_by_label("scale, from the rig", exact=True)).to_have_value("21.4(1) um/px")
@@ -140,6 +159,40 @@ def test_a_track_is_dropped_adjusted_accepted_and_its_point_moves(page, served, 
     assert after[code] - before[code] == pytest.approx(line[0] * math.log(float(value) / 0.0309), abs=0.5)
     assert before[code] - after[code] > 3
     assert run.values["A_tip"] == pytest.approx(TIP, rel=0.01) and run.track.settings["trim"] == "1"
+    assert tab.problems == []
+
+
+def test_a_drift_track_and_a_speed_that_is_far_off(page, served, made, shot):
+    book, _ = made
+    with Book.open(book) as opened:
+        code = opened.record(**CELLS, at="2026-11-30T15:00", confirm=True)
+    drift = (9e-6, -6e-6)
+    tab = page(width=1600, height=1000)
+    tab.goto(f"{served(book)}/runs?run={code}")
+    tab.get_by_role("button", name="Drop a track").click()
+    expect(tab.get_by_text("Nothing enters the run before", exact=False)).to_be_visible(timeout=WAIT)
+    # 200 times as fast as this swimmer: a touch more, and nothing before it
+    drop(tab, track(speed=200 * U), "fast.csv")
+    tab.get_by_role("button", name="Accept", exact=True).click()
+    expect(tab.get_by_text("times the largest of this swimmer's runs", exact=False).first).to_be_visible(timeout=WAIT)
+    expect(tab.get_by_role("button", name="It is right, accept")).to_be_visible(timeout=WAIT)
+    shot(tab, "track-far-off-1600-light")
+    with Book.open(book) as opened:
+        assert opened.sheet(code).track is None
+    tab.reload()  # another file, and with it the drift of a tracer in the same film
+    tab.get_by_role("button", name="Drop a track").click()
+    expect(tab.get_by_text("Nothing enters the run before", exact=False)).to_be_visible(timeout=WAIT)
+    drop(tab, track(drift=drift))
+    expect(tab.get_by_role("button", name="Accept", exact=True)).to_be_visible(timeout=WAIT)
+    drop(tab, tracer(drift), "tracer.csv", zone=1)
+    expect(tab.get_by_text(re.compile(r"^Drift .* from tracer.csv$"))).to_be_visible(timeout=WAIT)
+    settled(tab)
+    shot(tab, "track-drift-1600-light")
+    tab.get_by_role("button", name="Accept", exact=True).click()
+    expect(tab.get_by_text("come from reed.csv", exact=False).first).to_be_visible(timeout=WAIT)
+    with Book.open(book) as opened:
+        run = opened.sheet(code)
+        assert abs(run.values["U"] - U) < 3 * run.u["U"] < 2e-6 and run.track.settings["drift_from"] == "tracer.csv"
     assert tab.problems == []
 
 
