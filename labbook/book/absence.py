@@ -6,6 +6,7 @@ from collections.abc import Mapping
 
 from labbook.book.block_model import PREDICTED, model_for
 from labbook.book.block_spread import FOLLOWS
+from labbook.registry.catalogue import ROTATING_DRIVES
 from labbook.registry.group import Registry
 from labbook.registry.quantities import QUANTITIES, RUN_KEYS, SWIMMER_KEYS
 
@@ -41,7 +42,8 @@ def _absent(value) -> bool:
 
 def _number(row, values, sentences, swimmer, drive, follows) -> str:
     if row.only_drives and drive not in row.only_drives:
-        return f"only for a rotating drive, and this run's is {drive}"
+        drives = "a rotating drive" if row.only_drives == ROTATING_DRIVES else " or ".join(row.only_drives)
+        return f"only for {drives}, and this run's is {drive}"
     missing = _roots(row.inputs, values, follows)
     if not missing and row.not_zero and _consistent_with_zero(row.not_zero, values):
         return f"not defined ({row.not_zero} consistent with 0)"

@@ -191,8 +191,8 @@ NUMBERS: dict[str, Number] = {
             "F_scaled", "F/(Δζ ω L_tail² θ₀²)", "scaled push",
             "U * (zeta_t * L_tail + 6 * pi * mu * b)"
             " / ((zeta_n - zeta_t) * omega * L_tail**2 * theta0**2)",
-            "the push that the speed tells of to the small-angle push of a tail: swimmers of any head and drag"
-            " ratio on one plot",
+            "the push that the speed tells of to the small-angle push of a tail: swimmers of other heads and drag"
+            " ratios come closer together than by U_scaled, not onto one curve",
             "Wiggins & Goldstein, Phys. Rev. Lett. 80:3879 (1998); Stokes's drag of a sphere as the head",
             # L 30 mm, d 1 mm, b 2 mm, 1 Pa.s, 1 Hz, 0.3 rad: push 6.70625393e-6 N, recomputed independently
             dict(U=7.43970681e-5, zeta_t=1.7480754, zeta_n=2.73518245, L_tail=0.030, mu=1.0, b=2e-3,

@@ -158,7 +158,7 @@ QUANTITIES: dict[str, Quantity] = {
         Quantity("zeta_t", "ζ_t", "tangential resistive coefficient per length", "Pa.s", "M L^-1 T^-1"),
         Quantity("A22", "A₂₂", "rotational resistance of the helix about its axis", "N.m.s",
                  "M L^2 T^-1", sign="not negative"),
-        Quantity("U_model", "U_model", "speed that theory predicts", "m/s", "L T^-1", sign="any"),
+        Quantity("U_model", "U_model", "speed that theory predicts", "m/s", "L T^-1", SPEEDS, sign="any"),
     )
 }
 

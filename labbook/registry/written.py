@@ -46,7 +46,7 @@ def written_in(key: str, value: float | None, u: float | None, unit: str) -> str
 
 # the unit a value is shown in when nobody typed one
 SHOWN = {
-    "mu": "mPa.s", "E": "MPa", "T": "degC", "theta0": "deg", "U": "mm/s", "L_tail": "mm", "L_body": "mm",
+    "mu": "mPa.s", "E": "MPa", "T": "degC", "theta0": "deg", "U": "mm/s", "U_model": "mm/s", "L_tail": "mm", "L_body": "mm",
     "d": "mm", "w": "mm", "t": "mm", "D": "mm", "d_in": "mm", "b": "mm", "b_long": "mm", "h0": "mm",
     "A_tip": "mm", "h_wall": "mm", "D_tank": "mm", "R_helix": "mm", "pitch": "mm", "B": "mT", "nu": "cSt",
     "current_to_B": "mT/A", "scale": "um/px", "glycerol": "wt%", "grade": "cSt",

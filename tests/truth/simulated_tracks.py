@@ -44,7 +44,6 @@ KINDS = {
     "wobble, tau 0.3 beat": Kind(wobble=SIGMA, tau=0.3),
     "wobble, tau 1 beat": Kind(wobble=SIGMA, tau=1.0),
     "wobble and white": Kind(white=0.3 * SIGMA, wobble=SIGMA, tau=0.3),
-    "white and weak wobble": Kind(white=SIGMA, wobble=0.4 * SIGMA, tau=0.15, fraction=True),
     "white, fractional cycle": Kind(white=SIGMA, fraction=True),
     "wobble, fractional cycle": Kind(wobble=SIGMA, fraction=True),
     "white, 5 % lost": Kind(white=SIGMA, lost=0.05),
@@ -55,6 +54,7 @@ KINDS = {
     "wobble, drift": Kind(wobble=SIGMA, drift=0.02, fraction=True),
 }
 HARDER = {
+    "white and weak wobble": Kind(white=SIGMA, wobble=0.4 * SIGMA, tau=0.15, fraction=True),
     "white as large as wobble": Kind(white=SIGMA, wobble=SIGMA, tau=0.3, fraction=True),
     "random walk": Kind(wobble=SIGMA, tau=np.inf, fraction=True),
     "random walk and white": Kind(white=0.5 * SIGMA, wobble=SIGMA, tau=np.inf, fraction=True),
