@@ -18,6 +18,7 @@ from labbook.cli_plan import plan
 from labbook.cli_print import Bar, by_option, cells_of
 from labbook.cli_reduce import reduce
 from labbook.cli_registry import budget, dialect, number, published, regime
+from labbook.cli_trend import trend
 from labbook.demo import make_demo
 from labbook.errors import LabbookError, Refusal, Unconfirmed
 from labbook.exchange import sheets as sheet_files
@@ -238,5 +239,5 @@ def load(book: str, sheet: str, by: str | None, confirm: bool) -> None:
     click.echo(str(loaded))
 
 
-for _command in (runs, numbers, draw, plan, reduce, number, regime, dialect, published, budget):
+for _command in (runs, numbers, draw, trend, plan, reduce, number, regime, dialect, published, budget):
     main.add_command(_command)

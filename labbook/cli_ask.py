@@ -13,9 +13,11 @@ from labbook.book.queries import key_counts, refuse_unknown, regime_counts
 from labbook.charts.axes import house_words
 from labbook.charts.dialect_axis import dialect_title
 from labbook.charts.files import save
+from labbook.charts.theory import NOTHING, Theory
 from labbook.charts.trend import trend
 from labbook.charts.trend_shared import SHARED
 from labbook.cli_print import TABLE_KEYS, aligned, runs_table
+from labbook.cli_theory import refuse_axes, theory_under
 from labbook.errors import Refusal
 from labbook.exchange.outward import frame_as_csv, sheets_as_json
 from labbook.registry.catalogue import Number
@@ -148,12 +150,13 @@ def _number_row(row: Number, registry: Registry, runs: int) -> dict:
 @click.option("--bars", type=click.Choice(list(BARS_BY_WORD)), default="own", show_default=True,
               help="Own, shared or all of u; band: own bars, and how far each group may move together.")  # fmt: skip
 @click.option("--no-published", is_flag=True, help="Without the points that others printed.")
+@click.option("--theory", is_flag=True, help="With what theory says: F_scaled or U_scaled over Sp, U_ratio over anything.")
 @click.option("--linear", is_flag=True, help="Linear axes instead of logarithmic ones.")
 @_dialect
 @_question_options
 def draw(
-    book: str, x: str, y: str, output: str, colour: str, bars: str, no_published: bool, linear: bool,
-    dialects: tuple[str, ...], **options,
+    book: str, x: str, y: str, output: str, colour: str, bars: str, no_published: bool, theory: bool,
+    linear: bool, dialects: tuple[str, ...], **options,
 ) -> None:  # fmt: skip
     """Draw one number or quantity against another into a file, e.g. draw bench.db Sp stride -o fig.svg.
 
@@ -163,6 +166,8 @@ def draw(
         registry = opened.registry
         for key in (x, y):
             check_key(key, registry)
+        if theory:
+            refuse_axes(x, y)
         opened.ask(refuse_unknown, question)
         table = opened.frame(question, keys=tuple(dict.fromkeys((x, y))), texts=("code", colour), dialects=spoken)
         away = {k: dialects for k, dialects in spoken.items() if table.attrs["dialects"][k] != "house"}
@@ -171,9 +176,10 @@ def draw(
         # bands are read in the house dialect
         regimes = [r for r in registry.regimes.values() if not set(r.numbers) & set(away)]
         others = None if no_published else opened.ask(points, x, y, spoken)
+        under = theory_under(opened, question, table, x, y, colour=colour, log=not linear, dialects=spoken) if theory else Theory(NOTHING)
         drawn = trend(table, x=x, y=y, group=colour, log_x=not linear, log_y=not linear, bars=BARS_BY_WORD[bars],
                       width=760, height=520, numbers=registry.numbers, regimes=regimes, published=others,
-                      **titles)  # fmt: skip
+                      curve=under.frame, curve_words=under.words, **titles)  # fmt: skip
         if not drawn.drawn + drawn.published:
             raise Refusal("draw", f"{x} {y}", "no run that was found has both", "look at `labbook runs`")
         try:

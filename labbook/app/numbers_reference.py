@@ -105,11 +105,12 @@ def _words(number: Number, registry: Registry) -> None:
     if number.not_zero:
         lines.append(f"Not defined where {number.not_zero} is consistent with 0.")
     if number.only_drives:
-        lines.append(f"For the drives {' and '.join(number.only_drives)} only.")
+        drives = "drive" if len(number.only_drives) == 1 else "drives"
+        lines.append(f"For the {drives} {' and '.join(number.only_drives)} only.")
     if number.signed:
         lines.append("Keeps the sign of U.")
     told = [" ".join(lines), f"Source: {number.source}."]
-    if number.key not in registry.own:
+    if number.dialect and number.key not in registry.own:
         told.insert(1, f"House dialect: {number.dialect}.{_departs(number, registry)}")
     if others := other_dialects(number.key, registry):
         told.append(f"Other dialects: {'; '.join(others)}.")

@@ -5,7 +5,14 @@ from collections.abc import Callable
 
 import streamlit as st
 
-from labbook.app import record_budget, record_readings, record_track, session, track_fields
+from labbook.app import (
+    record_budget,
+    record_prediction,
+    record_readings,
+    record_track,
+    session,
+    track_fields,
+)
 from labbook.app import record_parts as parts
 from labbook.book import ledger
 from labbook.book.bench_queries import cells_again
@@ -40,6 +47,7 @@ def _narrow(sheet: RunSheet, place: str) -> None:
     if sheet.regimes:
         session.tags(sheet.regimes)
     parts.essentials(sheet)
+    record_prediction.line(sheet)
     record_budget.show(sheet, place, narrow=True)
     st.page_link(
         st.session_state["pages"]["runs"],
@@ -66,6 +74,7 @@ def _whole(sheet: RunSheet, place: str) -> None:
     with right:
         parts.numbers(sheet)
         parts.picture(sheet, place)
+        record_prediction.show(sheet, place)
     record_track.show(sheet, place)
     st.markdown("**Ledger**")
     parts.ledger(code)

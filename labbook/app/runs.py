@@ -6,7 +6,7 @@ from urllib.parse import urlencode
 import streamlit as st
 
 from labbook.api import Book
-from labbook.app import dialect_choices, filters, record, runs_table, session
+from labbook.app import dialect_choices, filters, record, runs_repeats, runs_table, session
 from labbook.book import addresses, queries
 from labbook.book.asking import Question
 from labbook.book.easing import eased
@@ -37,6 +37,8 @@ def page() -> None:
         _nothing(asked)
     else:
         _table(state, asked, columns, dialects, found, bool(opened), registry)
+    if found and not opened:
+        runs_repeats.folded(state, asked, registry)
     if opened:
         record.show(opened, place=PLACE)
 

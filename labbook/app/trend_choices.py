@@ -5,7 +5,7 @@ from dataclasses import dataclass, field
 import streamlit as st
 
 from labbook.app import dialect_choices, session
-from labbook.charts import theory
+from labbook.charts import theory_axes
 from labbook.charts.trend_shared import SHARED
 from labbook.registry.dialects import CHOICES as DIALECT_CHOICES
 from labbook.registry.group import Registry
@@ -61,10 +61,8 @@ class Choices:
         return tuple(dict.fromkeys((self.x, self.y)))
 
     def why_no_curve(self, registry: Registry) -> str:
-        """Why the theory has no curve on these axes; '' where it has one."""
-        if (self.x, self.y) != theory.AXES:
-            return "its curve is that of U_scaled over Sp"
-        return theory.why_no_curve(registry.coefficient, self.spoken(registry))
+        """Why theory draws nothing on these axes; '' where it does."""
+        return theory_axes.why_none(self.x, self.y, registry.coefficient, self.spoken(registry))
 
     def spoken(self, registry: Registry) -> dict[str, dict[str, object]]:
         """The dialect of each axis that has any, every choice named."""

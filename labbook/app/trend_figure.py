@@ -13,7 +13,9 @@ from labbook.book.clock import local, now
 from labbook.book.plotting import PlotRows
 from labbook.charts.dialect_axis import HOUSE_ONLY, axis_words, dialect_label, dialect_title
 from labbook.charts.files import png_bytes, svg_bytes
+from labbook.charts.theory import Theory
 from labbook.charts.trend import Trend, trend
+from labbook.charts.trend_fit_marks import FitMarks, with_marks
 from labbook.exchange.outward import frame_as_csv
 from labbook.registry.group import Registry
 
@@ -22,9 +24,9 @@ TEXTS = ("code", "at", "by", "swimmer", "fluid", "material", "series", "state")
 
 
 def drawn_as(
-    plotted: PlotRows, choices: Choices, registry: Registry, curve, published, *, dark: bool, **more
+    plotted: PlotRows, choices: Choices, registry: Registry, theory: Theory | None, published, *, dark: bool, **more
 ) -> Trend:  # fmt: skip
-    """The chart of the rows as chosen, with a curve and others' points or None; `more` goes to charts.trend."""
+    """The chart of the rows as chosen, with theory and others' points or None; `more` goes to charts.trend."""
     titles = {}
     for axis, key in (("x", choices.x), ("y", choices.y)):
         if key in registry.numbers:
@@ -34,9 +36,9 @@ def drawn_as(
     regimes = [r for r in registry.regimes.values() if not choices.dialects.keys() & set(r.numbers)]
     return trend(
         plotted.frame.rename(columns={"by": "person"}), x=choices.x, y=choices.y, group=choices.colour,
-        log_x=choices.log_x, log_y=choices.log_y, bars=choices.bars, bands=choices.bands, curve=curve,
-        dark=dark, left_out=plotted.left_out, numbers=registry.numbers, regimes=regimes,
-        published=published, **titles, **more,
+        log_x=choices.log_x, log_y=choices.log_y, bars=choices.bars, bands=choices.bands,
+        curve=theory.frame if theory else None, curve_words=theory.words if theory else (), dark=dark,
+        left_out=plotted.left_out, numbers=registry.numbers, regimes=regimes, published=published, **titles, **more,
     )  # fmt: skip
 
 
@@ -47,15 +49,17 @@ class Figure:
     plotted: PlotRows
     choices: Choices
     asked: Question
-    curve: pd.DataFrame | None
+    theory: Theory | None
     published: pd.DataFrame | None
     book: Book
     registry: Registry
+    fits: FitMarks | None = None
 
     def drawn(self) -> Trend:
-        return drawn_as(
-            self.plotted, self.choices, self.registry, self.curve, self.published, dark=False, **FIGURE
+        drawn = drawn_as(
+            self.plotted, self.choices, self.registry, self.theory, self.published, dark=False, **FIGURE
         )
+        return with_marks(drawn, self.fits, dark=False)
 
     def svg(self) -> bytes:
         drawn = self.drawn()

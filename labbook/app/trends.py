@@ -6,21 +6,23 @@ import html
 import pandas as pd
 import streamlit as st
 
-from labbook.app import filters, record, session
+from labbook.app import filters, record, session, trend_statistics
 from labbook.app.trend_choices import Choices, chosen, controls
 from labbook.app.trend_figure import Figure, drawn_as, save
+from labbook.app.trend_theory import theory_of
 from labbook.book import queries
 from labbook.book.asking import Question
 from labbook.book.plotting import PlotRows, plot_frame
 from labbook.book.published_points import points
-from labbook.charts import theory
 from labbook.charts.dialect_axis import HOUSE_ONLY
+from labbook.charts.theory import Theory
+from labbook.charts.theory_axes import has_theory
 from labbook.charts.trend import SPACE, Trend, caption, counted
+from labbook.charts.trend_fit_marks import with_marks
 from labbook.charts.trend_published import NO_RUN
 from labbook.registry.group import Registry
 
 CHART = "trends:chart"
-THEORY_FROM = 2000  # newest runs that the curve's swimmer is the median of
 # pixels of the chart on the smallest screen, with and without a run beside it: what its lettering must fit
 ALONE, BESIDE = {"width": 760, "height": 480}, {"width": 520, "height": 480}
 
@@ -57,20 +59,23 @@ def page() -> None:
         with places[0]:
             controls(choices, registry, others=bool(len(others) or others.attrs["lost"]))
         with places[1]:
-            curve = _curve(state, plotted, asked, choices, registry)
+            theory = theory_of(state, plotted, asked, choices, registry)
             shown = others if choices.published else None
             drawn = _on_screen(state, filters.cache_key(asked), choices, run or None, session.is_dark(),
-                               plotted, curve, shown, registry)  # fmt: skip
+                               plotted, theory, shown, registry)  # fmt: skip
+            fits = trend_statistics.on_chart(asked, choices)
+            drawn = with_marks(drawn, fits, dark=session.is_dark())
             _title(asked, drawn)
             _chart(drawn)
-            _below(drawn, choices, registry)
+            _below(drawn, choices, registry, theory)
         if run:
             with places[2]:
                 st.button("Close", icon=":material/close:", key="trends:close", on_click=_close,
                           width="stretch")  # fmt: skip
                 record.show(run, place="trends", narrow=True)
         with places[0]:
-            save(Figure(plotted, choices, asked, curve, shown, session.book(), registry))
+            save(Figure(plotted, choices, asked, theory, shown, session.book(), registry, fits))
+        trend_statistics.folded(asked, choices, registry)
 
 
 def _empty_book() -> None:
@@ -92,37 +97,13 @@ def _published(state: str, x: str, y: str, dialects) -> pd.DataFrame:
     return session.book().ask(points, x, y, dialects)
 
 
-@st.cache_data(max_entries=24, show_spinner="Drawing the curve …")
-def _theory_runs(state: str, asked: str, _asked: Question):
-    """The newest runs of the question, with what the curve takes from them."""
-    return session.book().frame(
-        _asked, keys=theory.INPUTS, texts=("drive",), spread=False, newest=THEORY_FROM
-    )
-
-
 @st.cache_resource(max_entries=24, show_spinner=False)
 def _on_screen(
-    state: str, asked: str, choices: Choices, picked, dark, _plotted, _curve, _shown, _registry
+    state: str, asked: str, choices: Choices, picked, dark, _plotted, _theory, _shown, _registry
 ) -> Trend:  # fmt: skip
     """The chart of the page, kept for the reruns that change nothing in it."""
     size = BESIDE if picked else ALONE
-    return drawn_as(_plotted, choices, _registry, _curve, _shown, dark=dark, picked=picked, **size)
-
-
-def _curve(state: str, plotted: PlotRows, asked: Question, choices: Choices, registry: Registry):
-    """The theory for these axes over the span of the runs, or None."""
-    if not choices.theory or choices.why_no_curve(registry):
-        return None
-    seen = plotted.frame.dropna(subset=[choices.x, choices.y])
-    seen = seen[(seen["state"] != "void") & (seen[choices.x] > 0)]
-    seen = seen[seen[choices.y] > 0] if choices.log_y else seen
-    if seen.empty:
-        return None
-    low, high = float(seen[choices.x].min()), float(seen[choices.x].max())
-    runs = _theory_runs(state, filters.cache_key(asked), asked)
-    spoken = choices.spoken(registry)
-    curve = theory.tail_curve(runs, low, high, spoken=spoken, coefficient=registry.coefficient)
-    return curve if len(curve) else None
+    return drawn_as(_plotted, choices, _registry, _theory, _shown, dark=dark, picked=picked, **size)
 
 
 # ---- the chart and the lines around it
@@ -154,14 +135,14 @@ def _chart(drawn: Trend) -> None:
         session.note("That mark stands for several runs: narrow the filter until they stand apart.")
 
 
-def _below(drawn: Trend, choices: Choices, registry: Registry) -> None:
+def _below(drawn: Trend, choices: Choices, registry: Registry, theory: Theory | None) -> None:
     notes = drawn.caption.removeprefix(caption(drawn.drawn, drawn.left_out)[:-1]).removeprefix(".").strip()
     total = drawn.drawn + sum(drawn.left_out.values())
     session.note(f"{_spaced(drawn.drawn)} of {counted(total)} drawn. {notes}")
     lines = [HOUSE_ONLY] if choices.dialects else []
-    why = choices.why_no_curve(registry)
-    if why and choices.theory and (choices.x, choices.y) == theory.AXES:
-        lines.append(f"no theory here: {why}")
+    if choices.theory and has_theory(choices.x, choices.y):
+        why = theory.why if theory else choices.why_no_curve(registry)
+        lines += [f"no theory here: {why}"] if why else []
     if lines:
         session.note("; ".join(lines))
 

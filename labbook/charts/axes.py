@@ -86,7 +86,8 @@ def title(key: str, dialect: str = HOUSE, numbers: Mapping[str, Number] = NUMBER
 def house_words(keys: Iterable[str], numbers: Mapping[str, Number] = NUMBERS) -> str:
     """The numbers among some keys with the house dialect of each, in sentences; '' where none is a number."""
     named = [
-        f"{title(key, numbers=numbers)} ({numbers[key].dialect})" for key in dict.fromkeys(keys) if key in numbers
+        title(key, numbers=numbers) + (f" ({numbers[key].dialect})" if numbers[key].dialect else "")
+        for key in dict.fromkeys(keys) if key in numbers
     ]
     return f"{'. '.join(named)}." if named else ""
 

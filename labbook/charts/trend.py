@@ -1,6 +1,6 @@
 """The group's plot: one number against another across runs, with bars, bands, a curve and the run in hand."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import altair as alt
@@ -15,6 +15,7 @@ from labbook.charts import (
     trend_marks,
     trend_published,
     trend_shared,
+    trend_theory,
 )
 from labbook.charts.bands import bands_of
 from labbook.charts.palette import OTHER, series, theme
@@ -53,6 +54,7 @@ def trend(
     picked: str | None = None,
     in_hand: Mapping[str, float] | None = None,
     curve: pd.DataFrame | None = None,
+    curve_words: Sequence[str] = (),
     dark: bool = False,
     width: int | str = "container",
     height: int = 380,
@@ -72,7 +74,8 @@ def trend(
     bars: whose standard uncertainty is drawn, 'own', 'shared', 'total' or 'none'; 'shared band' draws the own
     one and, behind the marks, how far each group's runs may move together (not for binned rows).
     picked: code of the run ringed in rust; in_hand: x, y, u_x, u_y of the new run, a rust dot.
-    curve: columns x, y and, where known, low, high (a band) and label.
+    curve: columns x, y and, where known, low, high (a band), label and family (the group whose colour it has);
+    curve_words: sentences about it for the caption.
     x_title, y_title, x_label, y_label: replace the registry's titles and symbols (another dialect).
     left_out: runs the caller already dropped, by reason.
     numbers, regimes: the book's own rows in place of those at birth.
@@ -128,9 +131,13 @@ def trend(
     if families:
         behind, told = _shared(plane, shown, names, group)
         layers += behind
+    hues = {n: s.colour for n, s in trend_marks.looks_of(names, dark).items()}
+    if curve is not None and len(curve):
+        layers += trend_theory.theory_bands(plane, curve, hues)
     layers += trend_marks.marks(plane, shown, names=names, group=group, u_x=u_x, u_y=u_y, bars=bars != "none")
     if curve is not None and len(curve):  # over the marks, which would hide it where there are many
-        layers += trend_layers.curves(plane, curve)
+        layers += trend_theory.theory_lines(plane, curve, hues)
+        told += curve_words
     if bands:
         layers += trend_layers.band_names(plane, bands_of(x, *plane.x_domain, regimes),
                                           bands_of(y, *plane.y_domain, regimes))

@@ -1,10 +1,9 @@
-"""The trend's plane and what lies around its marks: bands, curves, the ring and the run in hand."""
+"""The trend's plane and what lies around its marks: bands, the ring and the run in hand."""
 
 from dataclasses import dataclass
 
 import altair as alt
 import numpy as np
-import pandas as pd
 
 from labbook.charts import axes
 from labbook.charts.bands import Band
@@ -16,7 +15,6 @@ from labbook.charts.palette import (
     text_width,
 )
 
-MOST_CURVE_POINTS = 240
 NARROWEST = 400  # pixels: what a chart that fills its column has at least
 # a row's own colour outside any channel: a second use of a channel tears its legend apart in some versions
 HUE = {"expr": "datum.hue"}
@@ -124,38 +122,6 @@ def band_names(plane: Plane, upright: list[Band], level: list[Band]) -> list[alt
             .encode(x=alt.value("width"), y=plane.up("low"))
             for kind, look in looks
         ]
-    return layers
-
-
-def curves(plane: Plane, curve: pd.DataFrame) -> list[alt.Chart]:
-    """Theory: a line in ink per label, over its band where low and high are given."""
-    labels = curve["label"].astype(str) if "label" in curve.columns else pd.Series("", index=curve.index)
-    banded = {"low", "high"} <= set(curve.columns)
-    rows = []
-    for name, part in curve.groupby(labels, sort=False):
-        part = part[np.isfinite(part["x"]) & np.isfinite(part["y"])]
-        for key, log in (("x", plane.log_x), ("y", plane.log_y)):
-            part = part[part[key] > 0] if log else part
-        part = part.sort_values("x").iloc[:: max(1, -(-len(part) // MOST_CURVE_POINTS))]
-        for row in part.to_dict("records"):
-            point = {"x": short(row["x"]), "y": short(row["y"]), "curve": name}
-            if banded and np.isfinite(row["low"]) and np.isfinite(row["high"]):
-                # on a log axis a lower limit at or below zero lies under the frame
-                floor = plane.y_domain[0] / 10 if plane.log_y else -np.inf
-                point |= {"low": short(max(row["low"], floor)), "high": short(max(row["high"], floor))}
-            rows.append(point)
-    chart, ink, layers = alt.Chart(inline(rows), name="curve"), paper(plane.dark).muted, []
-    if banded:
-        layers.append(
-            alt.Chart(inline(rows), name="curve_band")
-            .mark_area(opacity=0.22, color=ink, clip=True, tooltip=None)
-            .encode(x=plane.across("x"), y=plane.up("low"), y2="high", detail="curve:N")
-        )
-    line = chart.mark_line(color=ink, strokeWidth=1.6, clip=True, tooltip=None)
-    names = list(dict.fromkeys(labels))
-    legend = alt.Legend(orient="bottom", columns=1, symbolSize=400)
-    dash = alt.StrokeDash("curve:N", sort=names, title=None, legend=legend) if any(names) else alt.Undefined
-    layers.append(line.encode(x=plane.across("x"), y=plane.up("y"), detail="curve:N", strokeDash=dash))
     return layers
 
 
