@@ -8,7 +8,7 @@ import numpy as np
 
 from labbook.charts.beat_frame import Frame, frame_for, scale_bar
 from labbook.charts.beat_tips import Tip, room_for, texts, tip_layers
-from labbook.charts.palette import Paper, paper, theme
+from labbook.charts.palette import NO_PADDING, Paper, paper, theme
 from labbook.charts.trend_layers import inline
 from labbook.errors import Refusal
 from labbook.physics.tail_shapes import TailShape
@@ -55,7 +55,7 @@ def beat_chart(
     ]
     slider = alt.binding_range(min=0, max=360, step=5, name="phase of the beat, °  ")
     chart = alt.layer(*layers).add_params(alt.param(name=PHASE, value=0, bind=slider))
-    return chart.properties(width=width, height=frame.height).configure(**theme(dark))
+    return chart.properties(width=width, height=frame.height, padding=NO_PADDING).configure(**theme(dark))
 
 
 def _length(swimmer: Mapping, key: str) -> float:

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 import altair as alt
 import numpy as np
 
-from labbook.charts.palette import SMALL_SIZE, paper, text_width, theme
+from labbook.charts.palette import NO_PADDING, SMALL_SIZE, paper, text_width, theme
 from labbook.charts.trend_layers import inline
 from labbook.errors import Refusal
 
@@ -246,4 +246,4 @@ def _layers(sheet: Sheet, notes: list[str], dark: bool, width: int) -> alt.Layer
             .mark_text(align=align, baseline="middle", color=colours.ink, fontSize=SMALL_SIZE, tooltip=None)
             .encode(x=x(), y=y(), text="text:N")
         )
-    return alt.layer(*layers).properties(width=width, height=HEIGHT).configure(**theme(dark))
+    return alt.layer(*layers).properties(width=width, height=HEIGHT, padding=NO_PADDING).configure(**theme(dark))

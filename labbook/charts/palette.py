@@ -7,6 +7,8 @@ from labbook.registry.regimes import Regime
 FONT = "Source Sans, Source Sans Pro, DejaVu Sans, sans-serif"
 LABEL_SIZE = 12
 TITLE_SIZE = 13
+# to scale on the page too: left to itself Streamlit takes 20 pixels of the height, and a circle is flattened
+NO_PADDING = {"left": 0, "right": 0, "top": 0, "bottom": 0}
 SMALL_SIZE = 11
 # mean advance of a letter per font size: on the wide side, so that a label judged to fit does fit
 LETTER_WIDTH = 0.58

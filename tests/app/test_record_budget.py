@@ -101,11 +101,12 @@ def test_a_wide_input_is_marked_and_the_check_says_that_first_order_misleads(ope
     sentence = "θ₀ carries 33 %: first order may mislead; check by Monte Carlo"
     (table,) = [t for t in page.texts() if "<th>formula</th>" in t]
     marked = [row for row in unescape(table).split("<tr>") if sentence in row]
-    assert len(marked) == 1 and "U/(ω L_tail θ₀²)" in marked[0]
-    assert html(page).count(sentence) == 1  # Sp, which is shown, does not have it among its inputs
+    assert [row.split("</b>")[0] for row in marked] == [
+        "<td><b>scaled speed", "<td><b>measured to predicted speed", "<td><b>F/(Δζ ω L_tail² θ₀²)"]  # fmt: skip
+    assert html(page).count(sentence) == 3  # Sp, which is shown, does not have it among its inputs
     choice(page).set_value("U_scaled")
     page.run()
-    assert html(page).count(sentence) == 2
+    assert html(page).count(sentence) == 4
     page.press(CHECK)
     assert any("lb-warned" in t and "First order misleads: it gives" in t for t in page.texts())
     assert "First order is borne out" not in html(page)
