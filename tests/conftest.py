@@ -27,12 +27,20 @@ def pytest_ignore_collect(collection_path, config):
     return True if inside and not config.getoption("benchmarks") else None
 
 
+def pytest_xdist_auto_num_workers(config):
+    """As many workers as cores, four at most, which is what the memory of a small machine bears; benchmarks have the
+    machine to themselves."""
+    return 0 if config.getoption("benchmarks") else min(4, os.cpu_count() or 1)
+
+
 def pytest_collection_modifyitems(items):
     """The browser goes last: it is slow, and its event loop would be in the way of others."""
     items.sort(key=lambda item: TESTS / "browser" in item.path.parents)
 
 
 def _unrun(config) -> list:
+    if hasattr(config, "workerinput"):  # a worker reports to the one that counts
+        return []
     stats = config.pluginmanager.get_plugin("terminalreporter").stats
     return stats.get("skipped", []) + stats.get("xfailed", [])
 
