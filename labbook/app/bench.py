@@ -3,7 +3,7 @@
 import streamlit as st
 
 from labbook.api import Book
-from labbook.app import bench_track, cautions, live, series, session, today
+from labbook.app import bench_plan, bench_track, cautions, live, series, session, today
 from labbook.book.bench_queries import counts_of_book, kinds_chosen, summary_of
 from labbook.book.cautions import at_the_bench
 from labbook.book.queries import recent
@@ -36,6 +36,7 @@ def page() -> None:
         _empty(book)
         return
     _take_over()
+    bench_plan.row()
     if st.session_state.get("bench:as-series"):
         series.grid(_choices(book))
     else:
@@ -101,12 +102,13 @@ def _form(book: Book) -> tuple[dict[str, str], bench_track.OnBench]:
     _fields(SET, cells, 4)
     _fields(SEEN, cells, 2)
     track = bench_track.offer(cells)
-    with st.expander("more: coil current, walls, drive, series, time"):
+    with st.expander("more: current, walls, drive, series, time, planned sheet"):
         _fields(MORE, cells, 3)
         _fields(TEXTS, cells, 3)
         cells["drive"] = st.selectbox(
             "drive", DRIVES, index=None, key="bench:drive", placeholder="as usual for this swimmer"
         ) or ""  # fmt: skip
+        bench_plan.drop()
     waiting = _waiting(cells)
     live.warnings(cells | track.cells, waiting)
     cells["note"] = st.text_input("Note", key="bench:note", placeholder="anything odd about this trial") or ""
@@ -164,7 +166,7 @@ def _log(book: Book, cells: dict[str, str], confirmed: bool, track: bench_track.
             session.spend_token(PLACE)
             st.session_state["bench:last"] = codes[0]
             st.session_state["bench:seen-logged"] = True
-            more = bench_track.attach(book, codes[0], track)
+            more = bench_track.attach(book, codes[0], track) + bench_plan.ticked(given, codes[0])
             session.keep_message(f"{codes[0]} is logged: {cells['swimmer']} in {cells['fluid']}, {cells['f']}{more}")
         st.rerun()
     if second.button("Series …", key="bench:to-series", width="stretch"):

@@ -13,6 +13,7 @@ from labbook.registry.typed import printed, read, reduced
 
 PLACE = "bench"
 ATTACH = "bench:attach"
+OPENED = "bench:track-opened"
 WAITS = "bench:attach-waits"  # the run that was logged last with a track, and the track
 ENTERS = ("U", "A_tip")  # f is what was set
 
@@ -32,7 +33,9 @@ def offer(cells: Mapping[str, str]) -> OnBench:
     if dropped is None:
         return OnBench()
     session.forget(ATTACH)  # what waited from the trial before is answered by the next file
-    with st.expander("columns, axis, trim, drift", expanded=bool(track_fields.refusals(PLACE))):
+    if track_fields.refusals(PLACE):  # and it stays open when they are mended
+        st.session_state[OPENED] = True
+    with st.expander("columns, axis, trim, drift", expanded=st.session_state.get(OPENED, False)):
         found = track_fields.adjusted(PLACE, dropped, _given(cells), across=3)
     if found is None:
         return OnBench(dropped)

@@ -4,13 +4,14 @@ from pathlib import Path
 
 import streamlit as st
 
-from labbook.app import bench, ledger, numbers, runs, session, shelf, style, trends
+from labbook.app import bench, ledger, numbers, plan, runs, session, shelf, style, trends
 from labbook.errors import LabbookError
 
 PAGES = (
     (bench.page, "Bench", "bench"),
     (runs.page, "Runs", "runs"),
     (trends.page, "Trends", "trends"),
+    (plan.page, "Plan", "plan"),
     (shelf.page, "Shelf", "shelf"),
     (numbers.page, "Numbers", "numbers"),
     (ledger.page, "Ledger", "ledger"),

@@ -101,26 +101,41 @@ def plan_map(plan: Plan, levels=(), f_span=None, mu_span=None) -> PlanMap:
 def good_viscosities(plan: Plan, Sp: float) -> str:
     """One sentence: which viscosities put the swimmer at this Sp with nothing to say against it."""
     mu = _spaced((1e-3, 1e2), GOOD_POINTS)
-    shelf, ids = (
-        fluids_of_viscosity(plan, mu, median_density(derived(plan, 1.0, [x.id for x in plan.fluids]))),
-        np.arange(1, GOOD_POINTS + 1),
-    )
-    f = frequency_for(plan, Sp, ids, shelf)
+    f, verdict, against = _along(plan, Sp, mu)
     if not np.isfinite(f).any():
         return ""
-    verdict, against = judged(plan, derived(plan, f, ids, shelf=shelf), f)
     good = np.flatnonzero(verdict == GOOD)
     if len(good):
-        low, high = mu[good[0]], mu[good[-1]]
+        ends = [_last_good(plan, Sp, mu[at], mu[beyond] if 0 <= beyond < len(mu) else mu[at], f[at])
+                for at, beyond in ((good[0], good[0] - 1), (good[-1], good[-1] + 1))]  # fmt: skip
+        (low, f_low), (high, f_high) = ends
         return (
-            f"Sp = {Sp:.3g} has nothing against it from {low:.2g} to {high:.2g} Pa.s, at "
-            f"{f[good[-1]]:.2g} to {f[good[0]]:.2g} Hz"
+            f"Sp = {Sp:.3g} has nothing against it from {low:.3g} to {high:.3g} Pa.s, at "
+            f"{f_high:.3g} to {f_low:.3g} Hz"
         )
     fewest = int(np.argmin([len(a) + 10 * (v != "doubtful") for a, v in zip(against, verdict, strict=True)]))
     return (
         f"no viscosity puts {plan.swimmer.code} at Sp = {Sp:.3g} without a doubt; the least stands against "
         f"{mu[fewest]:.2g} Pa.s at {f[fewest]:.2g} Hz: {'; '.join(against[fewest])}"
     )
+
+
+def _along(plan: Plan, Sp: float, mu: np.ndarray):
+    """(f, verdict, against) at this Sp in fluids of these viscosities, at the shelf's median density."""
+    rho = median_density(derived(plan, 1.0, [x.id for x in plan.fluids]))
+    shelf, ids = fluids_of_viscosity(plan, mu, rho), np.arange(1, len(mu) + 1)
+    f = frequency_for(plan, Sp, ids, shelf)
+    return f, *judged(plan, derived(plan, f, ids, shelf=shelf), f)
+
+
+def _last_good(plan: Plan, Sp: float, good: float, bad: float, f_good: float) -> tuple[float, float]:
+    """(mu, f) of the last viscosity without an objection on the way from a good one to one that is not."""
+    if good == bad:
+        return good, f_good
+    mu = np.geomspace(good, bad, GOOD_POINTS)
+    f, verdict, _ = _along(plan, Sp, mu)
+    last = int(np.argmax(verdict != GOOD)) - 1
+    return float(mu[last]), float(f[last])
 
 
 def _zones(plan: Plan, found: Derived, grid, f, mu) -> tuple[list[Zone], list[str]]:

@@ -16,6 +16,7 @@ from labbook.registry.quantities import QUANTITIES
 HOUSE = "house dialect"
 _SUPERSCRIPTS = str.maketrans("0123456789-", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻")
 LONGEST_TITLE = 48  # letters in a line of an axis title
+LONGEST_FORMULA = 60  # letters: a longer definition stands in the caption alone
 
 
 def written_formula(node) -> str:
@@ -74,8 +75,8 @@ def title(key: str, dialect: str = HOUSE, numbers: Mapping[str, Number] = NUMBER
     """The axis title of a key: symbol, definition and dialect of a number, name and unit of a quantity."""
     if key in numbers:
         row = numbers[key]
-        formula = written_formula(row.parsed.tree)
-        head = f"{row.name} {formula}" if row.symbol == formula else f"{row.symbol} = {formula}"
+        head = _defined(row)
+        head = head if len(head) <= LONGEST_FORMULA else f"{row.name} {row.symbol}"
         return f"{head}, {dialect}" if dialect else head
     symbol = label(key, numbers)
     row = QUANTITIES[key]
@@ -83,10 +84,16 @@ def title(key: str, dialect: str = HOUSE, numbers: Mapping[str, Number] = NUMBER
     return f"{symbol} {row.name} ({unit})" if unit else f"{symbol} {row.name}"
 
 
+def _defined(row: Number) -> str:
+    """A number with its definition."""
+    formula = written_formula(row.parsed.tree)
+    return f"{row.name} {formula}" if row.symbol == formula else f"{row.symbol} = {formula}"
+
+
 def house_words(keys: Iterable[str], numbers: Mapping[str, Number] = NUMBERS) -> str:
     """The numbers among some keys with the house dialect of each, in sentences; '' where none is a number."""
     named = [
-        title(key, numbers=numbers) + (f" ({numbers[key].dialect})" if numbers[key].dialect else "")
+        _defined(numbers[key]) + (f", {HOUSE} ({numbers[key].dialect})" if numbers[key].dialect else "")
         for key in dict.fromkeys(keys) if key in numbers
     ]
     return f"{'. '.join(named)}." if named else ""

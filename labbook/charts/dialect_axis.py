@@ -69,7 +69,8 @@ def axis_words(keys: Iterable[str], spoken: Mapping[str, Choices], registry: Reg
         elif key in registry.numbers:
             title = dialect_title(key, spoken.get(key, {}), registry.choices(key) or None, registry.numbers)
             told = key in spoken or key in registry.house  # the title names its choices already
-            said.append(title if told else f"{title} ({registry.numbers[key].dialect})")
+            dialect = registry.numbers[key].dialect
+            said.append(title if told or not dialect else f"{title} ({dialect})")
     return f"{'. '.join(said)}." if said else ""
 
 

@@ -9,6 +9,7 @@ from labbook.physics import rods, tails, walls
 from labbook.physics.predictions import model_of
 
 HELIX_PITCH_CHECKED = 9.8  # pitch/R_helix of the tank's long helix, where thrust and drag came out within 6 %
+STOUTEST = 8.0  # L/(2a) from which a bent rod is taken for slender (common practice, no source)
 ANIMALS_FROM = 10.0  # Re of the smallest larvae in the scaling (from memory)
 
 
@@ -87,6 +88,7 @@ def _tail(of, key, drag_model):
         beyond = ~rods.within_range(model=drag_model, L=of("L_tail"), a=of("a")) & np.isfinite(slender)
         trusted = f"{row.p_low:g} to {row.p_high:g}" if np.isfinite(row.p_high) else f"{row.p_low:g} and more"
         yield "slenderness", f"L_tail/(2a) is outside {trusted}, the range of {row.key}", beyond
+    yield ("stout", f"L_tail is less than {STOUTEST:g} diameters: theory takes the tail for slender", slender < STOUTEST)
     if not free:
         yield ("held base", "the base is held: what holds it must add no drag along the axis",
                np.isfinite(of("L_tail")))  # fmt: skip

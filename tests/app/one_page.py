@@ -12,7 +12,7 @@ def script(name):
     import streamlit as st
 
     pages = {}
-    for path in ("bench", "runs", "trends", "shelf", "numbers", "ledger"):
+    for path in ("bench", "runs", "trends", "plan", "shelf", "numbers", "ledger"):
         function = importlib.import_module(f"labbook.app.{path}").page if path == name else (lambda: None)
         pages[path] = st.Page(function, title=path, url_path=path, default=path == name)
     st.session_state["pages"] = pages

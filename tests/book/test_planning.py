@@ -6,13 +6,15 @@ computed with an independent solution for the project's physics sheet.
 """
 
 import math
+import re
 
 import numpy as np
 import pytest
 
+from labbook.book.plan_deriving import derived, fluids_of_viscosity
 from labbook.book.plan_inverse import batches_near, inverse
-from labbook.book.plan_limits import DOUBTFUL, FORBIDDEN, GOOD
-from labbook.book.plan_targets import optimum, reach, viscosity_for
+from labbook.book.plan_limits import DOUBTFUL, FORBIDDEN, GOOD, judged
+from labbook.book.plan_targets import frequency_for, optimum, reach, viscosity_for
 from labbook.book.plan_zones import good_viscosities, plan_map
 from labbook.book.planning import BEYOND, at_frequency, best_first, in_common, to_run
 from labbook.errors import Refusal
@@ -445,3 +447,19 @@ def test_questions_that_have_no_answer_are_refused(filled):
     ):
         with pytest.raises(Refusal, match=said):
             refused()
+
+
+def test_fluids_without_objection_lie_inside_the_range_that_is_said(filled):
+    plan = filled.plan("reed-1")
+    for Sp in (1.2, 1.5, 2.0):
+        said = good_viscosities(plan, Sp)
+        if "nothing against it" not in said:
+            continue
+        low, high = (float(x) for x in re.search(r"from (\S+) to (\S+) Pa.s", said).groups())
+        mu = np.geomspace(low / 1.5, min(1.5 * high, 100.0), 61)  # no oil beyond is asked for
+        shelf = fluids_of_viscosity(plan, mu, 1000.0)
+        f = frequency_for(plan, Sp, np.arange(1, 62), shelf)
+        verdict, _ = judged(plan, derived(plan, f, np.arange(1, 62), shelf=shelf), f)
+        inside = (mu >= low * 1.05) & (mu <= high / 1.05)
+        outside = (mu < low / 1.3) | (mu > high * 1.3)  # the density is another one here
+        assert (verdict[inside] == GOOD).all() and not (verdict[outside] == GOOD).any()

@@ -222,7 +222,7 @@ def test_bench_and_record_stand_with_a_track_in_both_sizes_and_themes(page, serv
     settled(tab)
     log = tab.get_by_role("button", name="Log trial")
     assert log.bounding_box()["y"] + log.bounding_box()["height"] <= size[1], "Log trial stands on the screen"
-    expect(tab.locator(".st-key-lb-track-along-bench svg, .st-key-lb-track-along-bench canvas").first).to_be_visible()
+    expect(tab.locator(".st-key-lb-track-along-bench svg, .st-key-lb-track-along-bench canvas").first).to_be_visible(timeout=WAIT)
     shot(tab, f"track-bench-{name}")
     log.click()
     expect(tab.get_by_text(f"U from {name}.csv", exact=False)).to_be_visible(timeout=WAIT)
