@@ -8,7 +8,7 @@ import sys
 from pathlib import Path
 
 import pytest
-from click.testing import CliRunner
+from terminal import run
 
 from labbook import Book
 from labbook.cli import main
@@ -34,14 +34,6 @@ def _environment(monkeypatch, tmp_path):
     monkeypatch.setenv("LABBOOK_BY", "tester")
     monkeypatch.delenv("LABBOOK_BOOK", raising=False)
     monkeypatch.setenv("XDG_DATA_HOME", str(tmp_path / "data"))
-
-
-def run(*words, code=0):
-    """The finished command; its exit code must be the one given, and no traceback may show."""
-    done = CliRunner().invoke(main, [str(w) for w in words])
-    assert done.exception is None or isinstance(done.exception, SystemExit), done.exception
-    assert done.exit_code == code, (done.stdout, done.stderr)
-    return done
 
 
 @pytest.fixture

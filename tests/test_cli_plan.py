@@ -5,17 +5,7 @@ import io
 import json
 
 import pytest
-from click.testing import CliRunner
-
-from labbook.cli import main
-
-
-def run(*words, code=0):
-    """The finished command; its exit code must be the one given, and no traceback may show."""
-    done = CliRunner().invoke(main, [str(w) for w in words])
-    assert done.exception is None or isinstance(done.exception, SystemExit), done.exception
-    assert done.exit_code == code, (done.stdout, done.stderr)
-    return done
+from terminal import run
 
 
 @pytest.fixture(scope="module")

@@ -11,10 +11,9 @@ import math
 
 import numpy as np
 import pytest
-from click.testing import CliRunner
+from terminal import run as command
 
 from labbook import Book
-from labbook.cli import main
 from labbook.physics import tracks
 
 KEYS = ["U", "u_U", "U_low", "U_high", "f_beat", "u_f_beat", "amplitude", "u_amplitude", "net_per_cycle",
@@ -34,11 +33,8 @@ def _environment(monkeypatch, tmp_path):
 
 
 def run(*words, code=0):
-    """The finished command; its exit code must be the one given, and no traceback may show."""
-    done = CliRunner().invoke(main, ["reduce", *map(str, words)])
-    assert done.exception is None or isinstance(done.exception, SystemExit), done.exception
-    assert done.exit_code == code, (done.stdout, done.stderr)
-    return done
+    """`labbook reduce` with these words."""
+    return command("reduce", *words, code=code)
 
 
 def figures(*words):

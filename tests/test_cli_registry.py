@@ -6,9 +6,7 @@ import json
 import re
 
 import pytest
-from click.testing import CliRunner
-
-from labbook.cli import main
+from terminal import run
 
 OWN = ("key=inv_stride", "name=beats per length", "formula=f * L_body / U", "compares=beat to advance",
        "source=own definition", "example=f = 2 Hz, L_body = 30 mm, U = 12 mm/s", "answer=5.00")  # fmt: skip
@@ -18,14 +16,6 @@ OWN = ("key=inv_stride", "name=beats per length", "formula=f * L_body / U", "com
 def _who(monkeypatch):
     monkeypatch.setenv("LABBOOK_BY", "tester")
     monkeypatch.delenv("LABBOOK_BOOK", raising=False)
-
-
-def run(*words, code=0):
-    """The finished command; its exit code must be the one given, and no traceback may show."""
-    done = CliRunner().invoke(main, [str(w) for w in words])
-    assert done.exception is None or isinstance(done.exception, SystemExit), done.exception
-    assert done.exit_code == code, (done.stdout, done.stderr)
-    return done
 
 
 @pytest.fixture

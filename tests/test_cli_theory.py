@@ -3,23 +3,13 @@
 import re
 
 import pytest
-from click.testing import CliRunner
-
-from labbook.cli import main
+from terminal import run
 
 
 @pytest.fixture(autouse=True)
 def _who(monkeypatch):
     monkeypatch.setenv("LABBOOK_BY", "tester")
     monkeypatch.delenv("LABBOOK_BOOK", raising=False)
-
-
-def run(*words, code=0):
-    """The finished command; its exit code must be the one given, and no traceback may show."""
-    done = CliRunner().invoke(main, [str(w) for w in words])
-    assert done.exception is None or isinstance(done.exception, SystemExit), done.exception
-    assert done.exit_code == code, (done.stdout, done.stderr)
-    return done
 
 
 ROD = ("form=flexible tail", "material=sil", "L_body=34 mm", "L_tail=30.0(1) mm", "d=1.00(1) mm", "b=2.00(2) mm")

@@ -1,7 +1,5 @@
 """Plan: the next run. A map of f and viscosity, what each fluid gives, proposals, which tail to build."""
 
-import time
-
 import streamlit as st
 
 from labbook.app import plan_controls, plan_next, plan_shown, plan_sizes, session
@@ -20,7 +18,6 @@ from labbook.app.plan_proposed import key_of_next, next_runs, usual_plane
 from labbook.book.plan_zones import PlanMap
 from labbook.physics.tails import THETA0_CHECKED
 
-LEAVE = 0.01  # seconds in which the map is sent before the rest of the page takes the interpreter
 LOOKED_FOR = "plan:looked-for"  # what the proposals that were drawn last depend on
 
 
@@ -49,7 +46,6 @@ def page() -> None:
         known = st.session_state.get(LOOKED_FOR) == key
         found = next_runs(key, answered) if known else None
         chart = plan_shown.draw(st, answered, aim, seen, found, key)
-    time.sleep(LEAVE)
     table, unreachable = fluids_table(answered.key, aim.Sp, aim.f, answered.plan)
     with head:
         for sentence in (*said, *wrong):

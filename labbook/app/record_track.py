@@ -30,10 +30,7 @@ def show(sheet: RunSheet, place: str) -> None:
     session.warn([f"{sentence[:1].upper()}{sentence[1:]}." for sentence in track.stale])
     left, right = st.columns([38, 62], gap="medium")
     with left:
-        session.table(("", ""), track_shown.figures(track.result))
-        sentence = track_shown.reversibility(track.result)
-        if sentence:
-            session.note(sentence)
+        track_shown.told(track.result)
         st.download_button(
             f"The file as it was dropped ({_size(track.size)})",
             lambda: session.book().ask(file_content, track.digest), track.file, "application/octet-stream",
@@ -101,10 +98,7 @@ def drop(sheet: RunSheet, place: str) -> str | None:
     dropped, reduced = found
     left, right = st.columns([38, 62], gap="medium")
     with left:
-        session.table(("", ""), track_shown.figures(reduced.result))
-        sentence = track_shown.reversibility(reduced.result)
-        if sentence:
-            session.note(sentence)
+        track_shown.told(reduced.result)
         done = _accept(sheet, place, dropped, reduced)
     with right:
         track_shown.charts(reduced.charts, track_fields.version(place))

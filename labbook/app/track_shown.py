@@ -24,6 +24,14 @@ def speed(result: Mapping) -> str:
     return f"{handy('U', U, u)}, 95 %: {interval} {unit}"
 
 
+def told(result: Mapping) -> None:
+    """The figures of a reduced track, and of a control whether its path closes."""
+    session.table(("", ""), figures(result))
+    sentence = reversibility(result)
+    if sentence:
+        session.note(sentence)
+
+
 def figures(result: Mapping) -> list[tuple[str, str]]:
     """(name, words) of everything a reduction says, absent things left out."""
     rows = [("speed along the axis", speed(result))]

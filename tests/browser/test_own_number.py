@@ -6,6 +6,7 @@ import shutil
 import numpy as np
 import pytest
 from playwright.sync_api import expect
+from steps import settled, typed
 
 from labbook import Book
 
@@ -21,20 +22,6 @@ FIELDS = {
 def book(demo_book, tmp_path):
     """A demo book of this test's own."""
     return shutil.copy(demo_book, tmp_path / "own.db")
-
-
-def typed(tab, label: str, text: str) -> None:
-    """Type into a field and leave it; the page has run again when the field still holds the text."""
-    field = tab.get_by_label(label, exact=True)
-    field.fill(text)
-    field.press("Tab")
-    settled(tab)
-    expect(field).to_have_value(text)
-
-
-def settled(tab) -> None:
-    tab.wait_for_timeout(250)
-    expect(tab.get_by_test_id("stStatusWidget")).to_have_count(0, timeout=WAIT)
 
 
 def save(tab) -> None:

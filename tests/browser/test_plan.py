@@ -9,10 +9,10 @@ import shutil
 
 import pytest
 from playwright.sync_api import expect
+from steps import WAIT, settled
 
 from labbook import Book
 
-WAIT = 30_000
 SWIMMER = "sedge-05"
 MAP = ".st-key-lb-plan-map"
 SIZES = [((1024, 768), "light"), ((1024, 768), "dark"), ((1600, 1000), "light"), ((1600, 1000), "dark")]
@@ -32,13 +32,6 @@ WRITTEN = """([box, layer]) => [...document.querySelectorAll(`${box} .${layer}_m
 @pytest.fixture(scope="module")
 def book(demo_book, tmp_path_factory):
     return shutil.copy(demo_book, tmp_path_factory.mktemp("plan") / "plan.db")
-
-
-def settled(tab) -> None:
-    """Wait until the page has run again."""
-    tab.wait_for_timeout(400)
-    expect(tab.get_by_test_id("stStatusWidget")).to_have_count(0, timeout=WAIT)
-    tab.wait_for_timeout(200)
 
 
 def drawn(tab, layer: str, box: str = MAP) -> list[tuple[float, float]]:

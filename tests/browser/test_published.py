@@ -10,11 +10,11 @@ from urllib.parse import parse_qs, urlsplit
 import numpy as np
 import pytest
 from playwright.sync_api import expect
+from steps import WAIT, typed
 
 from labbook import Book
 from labbook.book.asking import Question
 
-WAIT = 30_000
 CITATION = "Pond & Weir, Invented Letters 3, 14 (2019)"
 # an invented print, with f where the house has omega
 TYPED = {"series *": "pond-2019", "citation *": CITATION, "value of x *": "2.00(10)", "dialect of x": "rate:f",
@@ -31,21 +31,6 @@ WORDS = (
 def book(demo_book, tmp_path):
     """A demo book of this test's own."""
     return shutil.copy(demo_book, tmp_path / "published.db")
-
-
-def typed(tab, label: str, text: str) -> None:
-    """Type into a field and leave it; the page has run again when the field still holds the text."""
-    field = tab.get_by_label(label, exact=True)
-    field.fill(text)
-    field.press("Tab")
-    settled(tab)
-    expect(field).to_have_value(text)
-
-
-def settled(tab) -> None:
-    """Wait until the page has run again."""
-    tab.wait_for_timeout(250)
-    expect(tab.get_by_test_id("stStatusWidget")).to_have_count(0, timeout=WAIT)
 
 
 def titled(tab, words: str) -> None:

@@ -11,11 +11,11 @@ import shutil
 import numpy as np
 import pytest
 from playwright.sync_api import expect
+from steps import WAIT, settled, typed
 
 from labbook import Book
 from labbook.book.asking import Question
 
-WAIT = 30_000
 F, FPS, PIXEL = 0.56, 30, 21.4e-6
 U, TIP, ANGLE = 40e-6, 2.4e-3, math.radians(20)
 CELLS = {"swimmer": "rush-05", "fluid": "sil12500-a", "rig": "eye-1", "f": "0.56 Hz", "theta0": "0.200(6) rad",
@@ -56,20 +56,6 @@ def made(demo_book, tmp_path_factory):
     with Book.open(path) as book:
         book.stock("rig", code="eye-1", kind="camera", scale="21.4(1) um/px", fps="30 fps", calibrated="2026-11-20")
         return path, book.record(**CELLS, confirm=True)
-
-
-def settled(tab) -> None:
-    """Wait until the page has run again."""
-    tab.wait_for_timeout(300)
-    expect(tab.get_by_test_id("stStatusWidget")).to_have_count(0, timeout=WAIT)
-
-
-def typed(tab, label: str, text: str) -> None:
-    field = tab.get_by_label(label, exact=True)
-    field.fill(text)
-    field.press("Tab")
-    settled(tab)
-    expect(field).to_have_value(text)
 
 
 def drop(tab, content: bytes, name: str = "reed.csv", zone: int = 0) -> None:

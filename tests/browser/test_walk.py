@@ -6,6 +6,7 @@ import shutil
 
 import pytest
 from playwright.sync_api import expect
+from steps import settled
 
 from labbook import Book
 from labbook.book.asking import Question
@@ -30,12 +31,6 @@ def typed(page, cells: dict[str, str]) -> None:
         field.fill(text)
         field.press("Tab")
         expect(field).to_have_value(text)
-
-
-def settled(page) -> None:
-    """Wait until the server's script has run."""
-    page.wait_for_timeout(250)
-    expect(page.get_by_test_id("stStatusWidget")).to_have_count(0, timeout=15_000)
 
 
 def newest_code(path) -> str:
