@@ -100,5 +100,6 @@ def test_drives_in_one_batch_do_not_mix(worked):
     worked.record(swimmer="reed", fluid="oil", code="R-3", at="2026-03-02T12:00", f="1 Hz", theta0="0.3 rad", T="25 degC",
                   drive="pivoted_angle")  # fmt: skip
     assert worked.check() == []
+    assert worked.sheet("R-3").why_absent["F_scaled"] == "only for free_head_angle, and this run's is pivoted_angle"
     before = {c: worked.sheet(c).values["U_model"] for c in ("R-1", "R-2", "R-3")}
     assert len(set(before.values())) == 3 and before["R-1"] == pytest.approx(LINEAR, rel=1e-8)

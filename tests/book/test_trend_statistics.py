@@ -128,7 +128,8 @@ def test_an_error_belongs_to_the_batch_the_fluid_the_swimmer_or_the_rig(book):
         return len(pairs), len({owner for owner, _ in pairs}), len({name for _, name in pairs})
 
     pairs, owners, batches = owners_of("E", runs.material)
-    assert pairs == owners >= batches == 7, "no set of readings is of two batches (six rubbers and the steel)"
+    # six rubbers and the steel; a batch that was measured again has sets that err apart
+    assert pairs == owners > batches == 7, "no set of readings is of two batches"
     # one modulus moves several swimmers, a tail's length one, a reading of viscosity whoever swam in it
     for source, by, wide in (("E", runs.material, True), ("mu_readings", runs.fluid, True),
                              ("L_tail", runs.swimmer, False)):  # fmt: skip

@@ -103,3 +103,10 @@ def test_every_axis_has_ticks_inside(low, high):
 )
 def test_tick_labels(value, text):
     assert axes.tick_label(value) == text
+
+
+def test_a_definition_too_long_for_an_axis_stands_in_the_caption_alone():
+    title, caption = axes.title("F_scaled"), axes.house_words(["F_scaled"])
+    assert title == "scaled push F/(Δζ ω L_tail² θ₀²), house dialect"
+    assert "ζ_t L_tail + 6π μ b" in caption and "sphere of radius b" in caption
+    assert "=" in axes.title("Sp") and "L_tail" in axes.title("Sp"), "the others keep theirs"

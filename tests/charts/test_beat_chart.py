@@ -44,6 +44,7 @@ def per_metre(spec):
 def test_both_directions_have_one_scale_and_the_picture_holds_all(spec):
     domains = {axis: layer(spec, "envelope")["encoding"][axis]["scale"]["domain"] for axis in ("x", "y")}
     assert domains == {"x": [0, spec["width"]], "y": [0, spec["height"]]}  # a unit is a pixel either way
+    assert len(spec["padding"]) == 4 and not any(spec["padding"].values()), "nor does the page take any of them"
     tail = rows(spec, "tail")
     assert tail[-1]["x"] - tail[0]["x"] == pytest.approx(0.030 * per_metre(spec), abs=0.02)
     for name in ("frames", "head"):

@@ -51,6 +51,8 @@ def test_both_scales_have_one_pixel_per_unit(samples):
     encoding = samples.layer(spec, "shapes")["encoding"]
     assert encoding["x"]["scale"]["domain"] == [0, spec["width"]] == [0, 500]
     assert encoding["y"]["scale"]["domain"] == [0, spec["height"]]
+    # where none is stated Streamlit takes 20 pixels of the height, and the circle of a head is flat (seen in a browser)
+    assert set(spec["padding"]) == {"left", "right", "top", "bottom"} and not any(spec["padding"].values())
 
 
 def test_a_helix_keeps_radius_and_pitch(samples):

@@ -150,9 +150,10 @@ def test_missing_inputs_are_named_and_give_no_number():
     (dict(theta0=0.31), "angle"), (dict(Re_omega=0.1), "inertia"), (dict(Re_omega=1.1), "not creeping"),
     (dict(L_tail=1.9e-3, a=5e-4), "slenderness"), (dict(h_wall=5.9e-3), "wall at head"),
     (dict(D_tank=9.9e-3), "wall at head"), (dict(h_wall=0.029), "wall at tail"),
-    (dict(b_long=8e-3, h_wall=0.02), "wall at head"), (dict(L_tail=0.11), "slenderness")])
+    (dict(b_long=8e-3, h_wall=0.02), "wall at head"), (dict(L_tail=0.11), "slenderness"),
+    (dict(L_tail=7.9e-3, a=5e-4), "stout")])
 def test_doubts_begin_at_the_stated_limits(change, key):
-    # 0.3 rad; Re_omega 0.1 and 1; slenderness 2 to 100; h_wall = 3 b; D_tank = 5 b; a tail length
+    # 0.3 rad; Re_omega 0.1 and 1; slenderness 2 to 100, stout below 8; h_wall = 3 b; D_tank = 5 b; a tail length
     safe = SWIMMER | dict(Re_omega=0.099, h_wall=0.031, D_tank=0.062)
     drive = dict(form="flexible tail", drive="free_head_angle")
     assert prediction_doubts.reasons(**drive, values=safe) == []
