@@ -489,3 +489,17 @@ def test_nothing_is_attached_where_nothing_is_logged(bench, target):
     bench.press("Log trial")
     assert newest(target) == before
     assert "U 80.0(4) um/s" in words(bench)  # the file waits
+
+
+def test_the_fold_opens_at_a_refused_field_and_stays_open_when_it_is_mended(bench):
+    on_bench(bench, track())
+
+    def fold():
+        return next(e for e in bench.at.expander if e.label == "columns, axis, trim, drift").proto.expanded
+
+    assert not fold()
+    axis = next(i for i in bench.at.text_input if str(i.key).startswith("bench:") and str(i.key).endswith("axis"))
+    axis.set_value("abc").run()
+    assert fold() and "'abc'" in words(bench)
+    next(i for i in bench.at.text_input if i.key == axis.key).set_value("-1").run()
+    assert fold() and "'abc'" not in words(bench)

@@ -6,6 +6,7 @@ import pytest
 from labbook.book.asking import Question
 from labbook.book.budgets import budgets, simulate
 from labbook.physics.undulation import swimming_speed
+from labbook.registry.written import shown
 
 # the SI case: L 30 mm, d 1 mm, E 1.5 MPa, b 2 mm, 1 Pa.s, 1 Hz, 0.3 rad, coefficients of the spheroid; its linear
 # speed and tip, and the nonlinear simulation's speed, were computed independently of this project
@@ -31,6 +32,7 @@ def test_the_worked_case(worked):
     sheet = worked.sheet("R-1")
     assert sheet.values["U_model"] == pytest.approx(LINEAR, rel=1e-8)
     assert sheet.values["U_ratio"] == pytest.approx(73.8e-6 / LINEAR, rel=1e-8)
+    assert shown("U_model", sheet.values["U_model"]) == "0.0744 mm/s", "in the unit of U"
     assert sheet.prediction.A_tip == pytest.approx(TIP, rel=1e-8)
     assert abs(sheet.values["U_model"] / NONLINEAR - 1) < 0.01  # what the model's own uncertainty stands for
     assert "small-angle theory" in sheet.prediction.says and "lateral balance" in sheet.prediction.source
